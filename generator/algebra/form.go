@@ -1,0 +1,1009 @@
+package algebra
+
+import (
+	"math/big"
+	"sort"
+	"strings"
+)
+
+// FormOp tells what a Form is.
+type FormOp uint8
+
+// The kinds of printed nodes.
+const (
+	FormNumber   FormOp = iota // Num, a non-negative rational
+	FormSymbol                 // Name
+	FormSum                    // Args; a negative summand is a FormNeg
+	FormProduct                // Args
+	FormQuotient               // Args[0] / Args[1]
+	FormPower                  // Args[0] ^ Args[1]
+	FormRoot                   // square root of Args[0]
+	FormNeg                    // -Args[0]
+	FormCall                   // Name(Args...)
+	FormDiff                   // derivative of function Name in Vars, at Args if not nil
+	FormIntegral               // integral of Args[0] over Name from Args[1] to Args[2]
+	FormImag                   // the imaginary unit
+)
+
+// Form is an expression arranged for reading: a tree that any printer
+// (source text, Unicode, TeX, MathML, program code) renders without further
+// algebra.
+type Form struct {
+	Op    FormOp
+	Num   *big.Rat
+	Name  string
+	Latex string // the user's own TeX for a symbol or function
+	Args  []*Form
+	Vars  []string // FormDiff: variable names with repetition
+	text  string
+}
+
+func (f *Form) isOne() bool  { return f.Op == FormNumber && f.Num.Cmp(big.NewRat(1, 1)) == 0 }
+func (f *Form) isZero() bool { return f.Op == FormNumber && f.Num.Sign() == 0 }
+
+func numForm(q rat) *Form {
+	if q.sign() < 0 {
+		return &Form{Op: FormNeg, Args: []*Form{numForm(q.neg())}}
+	}
+	return &Form{Op: FormNumber, Num: q.rational()}
+}
+
+func negForm(f *Form) *Form {
+	if f.Op == FormNeg {
+		return f.Args[0]
+	}
+	if f.isZero() {
+		return f
+	}
+	return &Form{Op: FormNeg, Args: []*Form{f}}
+}
+
+func sumForm(fs []*Form) *Form {
+	switch len(fs) {
+	case 0:
+		return numForm(ratZero)
+	case 1:
+		return fs[0]
+	}
+	return &Form{Op: FormSum, Args: fs}
+}
+
+func productForm(fs []*Form) *Form {
+	switch len(fs) {
+	case 0:
+		return numForm(ratOne)
+	case 1:
+		return fs[0]
+	}
+	return &Form{Op: FormProduct, Args: fs}
+}
+
+func quotientForm(n, d []*Form) *Form {
+	if len(d) == 0 {
+		return productForm(n)
+	}
+	return &Form{Op: FormQuotient, Args: []*Form{productForm(n), productForm(d)}}
+}
+
+// Form arranges e for reading: the shortest of several arrangements
+// (factored, expanded, collected by derivatives or by a common kernel).
+func (e Expr) Form() *Form {
+	b := &former{r: e.n.r, memo: map[string]*Form{}}
+	return b.expr(e, 0)
+}
+
+// former builds forms; memo avoids arranging the same expression twice.
+type former struct {
+	r    *Ring
+	memo map[string]*Form
+}
+
+const maxFormDepth = 6
+
+func (b *former) expr(e Expr, depth int) *Form {
+	if e.IsZero() {
+		return numForm(ratZero)
+	}
+	key := e.key()
+	if f, ok := b.memo[key]; ok {
+		return f
+	}
+	f := b.arrange(e, depth)
+	b.memo[key] = f
+	return f
+}
+
+// arrange tries the arrangements and keeps the shortest.
+func (b *former) arrange(e Expr, depth int) *Form {
+	r := b.r
+	num, den, ok := b.realParts(e)
+	if !ok {
+		return b.complex(e, depth)
+	}
+	best := b.factored(num, den, depth)
+	if depth < maxFormDepth && len(num) > 1 {
+		if len(den) == 0 {
+			best = shorter(best, b.expanded(num))
+		}
+		if len(num) <= 400 {
+			best = shorter(best, b.byDerivatives(e, num, depth))
+		}
+		if len(num) <= 40 {
+			best = shorter(best, b.unrationalised(e, num, depth))
+		}
+	}
+	_ = r
+	return best
+}
+
+func shorter(a, b *Form) *Form {
+	if b == nil || len(b.String()) >= len(a.String()) {
+		return a
+	}
+	return b
+}
+
+// realParts multiplies numerator and denominator by units so that both are
+// real when they contain exp(i m).
+func (b *former) realParts(e Expr) (poly, []polyFactor, bool) {
+	r := b.r
+	den := make([]polyFactor, len(e.n.den))
+	trig := hasCis(e.n.num)
+	for i, f := range e.n.den {
+		den[i] = polyFactor{f.f.p, f.e}
+		trig = trig || hasCis(f.f.p)
+	}
+	if !trig {
+		for _, t := range e.n.num {
+			if !t.c.isReal() {
+				return nil, nil, false
+			}
+		}
+		return e.n.num, den, true
+	}
+	x := e
+	for i, f := range den {
+		if !hasCis(f.p) {
+			continue
+		}
+		s, ok := r.symmetrise(f.p)
+		if !ok {
+			return nil, nil, false
+		}
+		den[i].p = s
+		x = x.Mul(r.fromPoly(s).powNat(f.e))
+	}
+	num := x
+	for i, f := range den {
+		if !hasCis(e.n.den[i].f.p) {
+			num = num.Mul(r.fromPoly(f.p).powNat(f.e))
+		}
+	}
+	if len(num.n.den) > 0 || !r.conjPoly(num.n.num).equal(num.n.num) {
+		return nil, nil, false
+	}
+	return num.n.num, den, true
+}
+
+// complex prints real and imaginary parts; no result of a real model is
+// complex, so it serves intermediate steps only.
+func (b *former) complex(e Expr, depth int) *Form {
+	r := b.r
+	var den []*Form
+	for _, f := range e.n.den {
+		den = append(den, b.power(b.sum(f.f.p, depth+1, true), r.Int(int64(f.e)), depth))
+	}
+	var ts []*Form
+	for _, t := range e.n.num {
+		m := b.product(t.m, ratOne, depth)
+		if !t.c.re.isZero() {
+			ts = append(ts, b.scaled(t.c.re, m))
+		}
+		if !t.c.im.isZero() {
+			ts = append(ts, b.scaled(t.c.im, productForm([]*Form{{Op: FormImag}, m})))
+		}
+	}
+	return quotientForm([]*Form{sumForm(ts)}, den)
+}
+
+func (b *former) scaled(c rat, f *Form) *Form {
+	g := f
+	if !c.abs().isOne() {
+		g = productForm([]*Form{numForm(c.abs()), f})
+	}
+	if c.sign() < 0 {
+		return negForm(g)
+	}
+	return g
+}
+
+// content splits num into rational content, monomial content without
+// exp(i m), and the rest.
+func (b *former) content(num poly) (rat, *mono, poly) {
+	r := b.r
+	m := r.monoContent(num)
+	var keep []power
+	for _, q := range m.p {
+		if q.k.kind != kindCis {
+			keep = append(keep, q)
+		}
+	}
+	m = r.internMono(keep)
+	q := r.divMono(num, m)
+	c := ratOne
+	if hasCis(q) {
+		// numContent may be complex: use the content of the sines and cosines.
+		g := ratZero
+		for _, t := range b.trigAngles(q) {
+			g = ratGCD(ratGCD(g, t.c.re), t.c.im)
+		}
+		c = g
+	} else {
+		c = numContent(q).re
+	}
+	q = q.scale(coefRat(c.inv()))
+	return c, m, q
+}
+
+func ratGCD(a, b rat) rat {
+	if a.isZero() {
+		return b.abs()
+	}
+	if b.isZero() {
+		return a.abs()
+	}
+	g := new(big.Int).GCD(nil, nil, new(big.Int).Mul(new(big.Int).Abs(a.num()), b.den()), new(big.Int).Mul(new(big.Int).Abs(b.num()), a.den()))
+	return fromBig(new(big.Rat).SetFrac(g, new(big.Int).Mul(a.den(), b.den())))
+}
+
+// factored is content times factors over the denominator's factors.
+func (b *former) factored(num poly, den []polyFactor, depth int) *Form {
+	r := b.r
+	c, m, q := b.content(num)
+	p := &prod{b: b, c: c, depth: depth}
+	p.mono(m)
+	if !q.isConst() {
+		for _, f := range b.factors(q) {
+			if f.e == 0 { // a sign
+				p.c = p.c.neg()
+				continue
+			}
+			s := b.sum(f.p, depth, true)
+			if s.Op == FormNeg && f.e%2 == 1 {
+				p.c, s = p.c.neg(), s.Args[0]
+			}
+			p.form(s, f.e)
+		}
+	} else if len(q) == 1 {
+		p.c = p.c.mul(q[0].c.re)
+	}
+	for _, f := range den {
+		dc, dm, dq := b.content(f.p)
+		for i := 0; i < f.e; i++ {
+			p.c = p.c.mul(dc.inv())
+		}
+		p.mono(r.monoPow(dm, mkExpo(int64(-f.e), 1)))
+		s := b.sum(dq, depth, true)
+		if s.Op == FormNeg && f.e%2 == 1 {
+			p.c, s = p.c.neg(), s.Args[0]
+		}
+		p.form(s, -f.e)
+	}
+	return p.build()
+}
+
+// factors splits a content-free polynomial; with exp(i m) present every
+// factor must be real on its own. A factor with exponent 0 stands for -1.
+func (b *former) factors(q poly) []polyFactor {
+	r := b.r
+	if len(q) > 200 {
+		return []polyFactor{{q, 1}}
+	}
+	if !hasCis(q) {
+		fs := r.splitPoly(q)
+		prod := poly{{r.one, coefOne}}
+		for _, f := range fs {
+			prod = r.mulPoly(prod, r.powPoly(f.p, f.e))
+		}
+		switch {
+		case prod.equal(q):
+			return fs
+		case prod.neg().equal(q):
+			return append(fs, polyFactor{})
+		}
+		return []polyFactor{{q, 1}}
+	}
+	_, _, z := r.primitive(q)
+	fs := r.splitPoly(z)
+	if len(fs) < 2 && !(len(fs) == 1 && fs[0].e > 1) {
+		return []polyFactor{{q, 1}}
+	}
+	prod := poly{{r.one, coefOne}}
+	for i := range fs {
+		s, ok := r.symmetrise(fs[i].p)
+		if !ok {
+			return []polyFactor{{q, 1}}
+		}
+		fs[i].p = s
+		prod = r.mulPoly(prod, r.powPoly(s, fs[i].e))
+	}
+	u := r.fromPoly(q).over(r.fromPoly(prod))
+	c, ok := u.rational()
+	if !ok || !c.abs().isOne() {
+		return []polyFactor{{q, 1}}
+	}
+	if c.sign() < 0 {
+		fs = append(fs, polyFactor{})
+	}
+	return fs
+}
+
+// sum prints a polynomial as a sum; collect also tries to group it by one of
+// its kernels.
+func (b *former) sum(p poly, depth int, collect bool) *Form {
+	best := b.expanded(p)
+	if !collect || len(p) < 3 || len(p) > 40 || depth >= maxFormDepth || hasCis(p) {
+		return best
+	}
+	for _, k := range p.kernels() {
+		exps, cs := b.r.split(p, k)
+		if len(exps) < 2 && len(exps[0:1]) == 1 || len(exps) == len(p) {
+			continue
+		}
+		var ts []*Form
+		for i, e := range exps {
+			t := b.expr(b.r.fromPoly(cs[i]), depth+2)
+			neg := t.Op == FormNeg
+			if neg {
+				t = t.Args[0]
+			}
+			q := &prod{b: b, c: ratOne, depth: depth}
+			q.mono(b.r.kernelMono(k, e))
+			if t.Op == FormQuotient {
+				q.form(t.Args[0], 1)
+				q.form(t.Args[1], -1)
+			} else {
+				q.form(t, 1)
+			}
+			g := q.build()
+			if neg {
+				g = negForm(g)
+			}
+			ts = append(ts, g)
+		}
+		best = shorter(best, positiveFirst(ts))
+	}
+	return best
+}
+
+// positiveFirst puts a positive summand in front, so that a sum starts with
+// a minus sign only when it must.
+func positiveFirst(ts []*Form) *Form {
+	if len(ts) > 1 && ts[0].Op == FormNeg {
+		for i, t := range ts {
+			if t.Op != FormNeg {
+				copy(ts[1:i+1], ts[:i])
+				ts[0] = t
+				return sumForm(ts)
+			}
+		}
+		// All negative: one minus sign in front.
+		for i := range ts {
+			ts[i] = ts[i].Args[0]
+		}
+		return negForm(sumForm(ts))
+	}
+	return sumForm(ts)
+}
+
+// expanded prints term by term.
+func (b *former) expanded(p poly) *Form {
+	if hasCis(p) {
+		return b.trigSum(p)
+	}
+	ts := append(poly(nil), p...)
+	sort.SliceStable(ts, func(i, j int) bool { return displayLess(ts[i].m, ts[j].m) })
+	fs := make([]*Form, len(ts))
+	for i, t := range ts {
+		fs[i] = b.product(t.m, t.c.re, 0)
+	}
+	return positiveFirst(fs)
+}
+
+// displayLess orders summands: descending powers of the declared symbols in
+// order of declaration, then functions, constants last.
+func displayLess(a, b *mono) bool {
+	da, db := totalDegree(a), totalDegree(b)
+	if c := da.cmp(db); c != 0 {
+		return c > 0
+	}
+	return compareMono(a, b) > 0
+}
+
+// totalDegree in the variables (not the parameters).
+func totalDegree(m *mono) rat {
+	d := ratZero
+	for _, q := range m.p {
+		if q.k.kind == kindSymbol && !q.k.attr.Parameter && q.k.rank >= 0 {
+			d = d.add(q.e.rat())
+		}
+	}
+	return d
+}
+
+func (b *former) product(m *mono, c rat, depth int) *Form {
+	p := &prod{b: b, c: c, depth: depth}
+	p.mono(m)
+	return p.build()
+}
+
+// byDerivatives groups the numerator by derivatives of named functions and
+// reduces each coefficient on its own.
+func (b *former) byDerivatives(e Expr, num poly, depth int) *Form {
+	derivative := func(k *kernel) bool {
+		if k.kind != kindFunc {
+			return false
+		}
+		for _, d := range k.deriv {
+			if d > 0 {
+				return true
+			}
+		}
+		return false
+	}
+	parts := e.splitBy(derivative)
+	if len(parts) < 2 {
+		return nil
+	}
+	var ts []*Form
+	for _, t := range parts {
+		f := b.expr(t.coef, depth+2)
+		if !t.fn.IsOne() {
+			p := &prod{b: b, c: ratOne, depth: depth}
+			neg := f.Op == FormNeg
+			if neg {
+				f = f.Args[0]
+			}
+			if f.Op == FormQuotient {
+				p.form(f.Args[0], 1)
+				p.form(f.Args[1], -1)
+			} else {
+				p.form(f, 1)
+			}
+			if len(t.fn.n.den) > 0 {
+				return nil
+			}
+			p.mono(t.fn.n.num[0].m)
+			f = p.build()
+			if neg {
+				f = negForm(f)
+			}
+		}
+		ts = append(ts, f)
+	}
+	return positiveFirst(ts)
+}
+
+// unrationalised tries to put a square root back into the denominator where
+// that is shorter: (sqrt(2) v + b)/(2 v^2 - b^2) is 1/(sqrt(2) v - b).
+func (b *former) unrationalised(e Expr, num poly, depth int) *Form {
+	r := b.r
+	if len(e.n.den) == 0 || !hasAlgebraic(num) {
+		return nil
+	}
+	_, _, q := b.content(num)
+	conj, ok := r.conjugate(q)
+	if !ok {
+		return nil
+	}
+	rest := e.Mul(r.fromPoly(conj))
+	if len(rest.n.num) >= len(num) || rest.Size() >= e.Size() {
+		return nil
+	}
+	f := b.expr(rest, depth+1)
+	c := b.sum(conj, depth+1, true)
+	neg := false
+	for _, p := range []**Form{&f, &c} {
+		if (*p).Op == FormNeg {
+			neg, *p = !neg, (*p).Args[0]
+		}
+	}
+	n, d := f, []*Form{c}
+	if f.Op == FormQuotient {
+		n = f.Args[0]
+		if f.Args[1].Op == FormProduct {
+			d = append(append([]*Form(nil), f.Args[1].Args...), c)
+		} else {
+			d = []*Form{f.Args[1], c}
+		}
+	}
+	g := quotientForm([]*Form{n}, d)
+	if neg {
+		if s := flipSum(c); s != nil {
+			d[len(d)-1] = s
+			return quotientForm([]*Form{n}, d)
+		}
+		g = negForm(g)
+	}
+	return g
+}
+
+// trigSum turns conjugate pairs of exp(i m) back into sines and cosines: of
+// sums of angles, or products over the separate angles, whichever is shorter.
+func (b *former) trigSum(p poly) *Form {
+	x := b.expanded(b.trigAngles(p))
+	if y, ok := b.trigProducts(p); ok {
+		x = shorter(x, b.expanded(y))
+	}
+	return x
+}
+
+func (r *Ring) trigKernel(name string, angle Expr) *kernel {
+	return r.intern(&kernel{kind: kindTrig, name: name, args: []Expr{angle}})
+}
+
+// trigAngles writes a real Laurent polynomial in exp(i m) with sines and
+// cosines of combined angles.
+func (b *former) trigAngles(p poly) poly {
+	r := b.r
+	acc := r.accumulate(len(p))
+	for _, t := range p {
+		var rest []power
+		angle := r.zero
+		for _, q := range t.m.p {
+			if q.k.kind == kindCis {
+				angle = angle.Add(q.k.args[0].Mul(r.ratExpr(q.e.rat())))
+			} else {
+				rest = append(rest, q)
+			}
+		}
+		m := r.internMono(rest)
+		if angle.IsZero() {
+			acc.add(m, t.c)
+			continue
+		}
+		// c e^{ia} + conj(c) e^{-ia}: each of the two gives half.
+		re, im := t.c.re, t.c.im
+		if angle.leadsNegative() {
+			angle, im = angle.Neg(), im.neg()
+		}
+		if !re.isZero() {
+			acc.add(r.monoMul(m, r.kernelMono(r.trigKernel("cos", angle), expo{1, 1})), coefRat(re))
+		}
+		if !im.isZero() {
+			acc.add(r.monoMul(m, r.kernelMono(r.trigKernel("sin", angle), expo{1, 1})), coefRat(im.neg()))
+		}
+	}
+	return acc.poly()
+}
+
+// trigProducts does the same one angle at a time, which keeps products such
+// as sin(a)*cos(b).
+func (b *former) trigProducts(p poly) (poly, bool) {
+	r := b.r
+	var cis []*kernel
+	for _, k := range p.kernels() {
+		if k.kind == kindCis {
+			cis = append(cis, k)
+		}
+	}
+	if len(cis) < 2 || len(cis) > 4 {
+		return nil, false
+	}
+	for _, k := range cis {
+		acc := r.accumulate(len(p))
+		for _, t := range p {
+			e := t.m.degree(k)
+			m := r.monoWithout(t.m, k)
+			if e.isZero() {
+				acc.add(m, t.c)
+				continue
+			}
+			angle := k.args[0].Mul(r.ratExpr(e.rat()))
+			s := coefOne
+			if angle.leadsNegative() {
+				angle, s = angle.Neg(), s.neg()
+			}
+			// e^{ia} = cos a + i sin a
+			acc.add(r.monoMul(m, r.kernelMono(r.trigKernel("cos", angle), expo{1, 1})), t.c)
+			acc.add(r.monoMul(m, r.kernelMono(r.trigKernel("sin", angle), expo{1, 1})), t.c.mul(coefI).mul(s))
+		}
+		p = acc.poly()
+	}
+	for _, t := range p {
+		if !t.c.isReal() {
+			return nil, false
+		}
+	}
+	return p, true
+}
+
+// prod gathers the factors of a product by base before they are laid out.
+type prod struct {
+	b     *former
+	c     rat
+	depth int
+	fs    []prodFactor
+}
+
+type prodFactor struct {
+	class int // constants, parameters, variables, functions, derivatives, others
+	k     *kernel
+	form  *Form
+	e     rat
+	sym   Expr // symbolic part of the exponent, if valid
+	nonng bool // known non-negative
+}
+
+func (p *prod) mono(m *mono) {
+	r := p.b.r
+	exponent := r.zero // of exp
+	symbolic := map[string]Expr{}
+	base := map[string]Expr{}
+	var order []string
+	for _, q := range m.p {
+		switch q.k.kind {
+		case kindExp:
+			exponent = exponent.Add(q.k.args[0].Mul(r.ratExpr(q.e.rat())))
+		case kindPow:
+			key := q.k.args[0].key()
+			if _, ok := symbolic[key]; !ok {
+				symbolic[key] = r.zero
+				base[key] = q.k.args[0]
+				order = append(order, key)
+			}
+			symbolic[key] = symbolic[key].Add(q.k.args[1].Mul(r.ratExpr(q.e.rat())))
+		}
+	}
+	for _, q := range m.p {
+		if q.k.kind == kindExp || q.k.kind == kindPow {
+			continue
+		}
+		e := q.e.rat()
+		if q.k.kind != kindPrime {
+			key := r.kernelExpr1(q.k).key()
+			if s, ok := symbolic[key]; ok {
+				// v^a v^(m) is v^(a + m)
+				symbolic[key] = s.Add(r.ratExpr(e))
+				continue
+			}
+		}
+		p.fs = append(p.fs, prodFactor{class: displayClass(q.k), k: q.k, form: p.b.kernel(q.k, p.depth), e: e, nonng: q.k.signAlone().Is(NonNegative)})
+	}
+	for _, key := range order {
+		p.fs = append(p.fs, prodFactor{class: 7, form: p.b.expr(base[key], p.depth+1), e: ratOne, sym: symbolic[key]})
+	}
+	if !exponent.IsZero() {
+		f := &Form{Op: FormCall, Name: "exp", Args: []*Form{p.b.expr(exponent, p.depth+1)}}
+		p.fs = append(p.fs, prodFactor{class: 8, form: f, e: ratOne})
+	}
+}
+
+func (p *prod) form(f *Form, e int) {
+	if f.isOne() {
+		return
+	}
+	if f.Op == FormNumber {
+		q := fromBig(f.Num)
+		if e < 0 {
+			q, e = q.inv(), -e
+		}
+		for ; e > 0; e-- {
+			p.c = p.c.mul(q)
+		}
+		return
+	}
+	if f.Op == FormProduct {
+		for _, g := range f.Args {
+			p.form(g, e)
+		}
+		return
+	}
+	class := 6
+	if f.Op != FormSum {
+		class = 3
+	}
+	p.fs = append(p.fs, prodFactor{class: class, form: f, e: ratInt(int64(e))})
+}
+
+func displayClass(k *kernel) int {
+	switch k.kind {
+	case kindPrime:
+		return 0
+	case kindSymbol:
+		switch {
+		case k.rank < 0:
+			return 1
+		case k.attr.Parameter:
+			return 2
+		}
+		return 3
+	case kindFunc:
+		for _, d := range k.deriv {
+			if d > 0 {
+				return 5
+			}
+		}
+		return 4
+	}
+	return 7
+}
+
+// build lays the factors out as one quotient with one square root above and
+// one below.
+func (p *prod) build() *Form {
+	sort.SliceStable(p.fs, func(i, j int) bool {
+		a, b := p.fs[i], p.fs[j]
+		if a.class != b.class {
+			return a.class < b.class
+		}
+		if a.k != nil && b.k != nil {
+			if a.k.kind == kindTrig && b.k.kind == kindTrig {
+				// by angle, the first declared variable first
+				if c := compareMono(a.k.args[0].n.num[0].m, b.k.args[0].n.num[0].m); c != 0 {
+					return c > 0
+				}
+			}
+			return compareKernels(a.k, b.k) < 0
+		}
+		return false
+	})
+	p.merge()
+	p.flip()
+	c := p.c
+	var num, den, rootNum, rootDen []*Form
+	for _, f := range p.fs {
+		if f.sym.Valid() {
+			num = append(num, p.b.power(f.form, f.sym, p.depth))
+			continue
+		}
+		if f.k != nil && f.k.kind == kindPrime && f.e.equal(rat{n: 1, d: 2}) {
+			pr := ratInt(f.k.prime)
+			if q := c.mul(pr); f.k.prime > 1 && divisible(c, f.k.prime) {
+				c = q
+				rootDen = append(rootDen, numForm(pr))
+			} else {
+				rootNum = append(rootNum, numForm(pr))
+			}
+			continue
+		}
+		e := f.e
+		if f.nonng && e.abs().equal(rat{n: 1, d: 2}) {
+			if e.sign() > 0 {
+				rootNum = append(rootNum, f.form)
+			} else {
+				rootDen = append(rootDen, f.form)
+			}
+			continue
+		}
+		if e.sign() > 0 {
+			num = append(num, p.b.ratPower(f.form, e))
+		} else {
+			den = append(den, p.b.ratPower(f.form, e.neg()))
+		}
+	}
+	switch {
+	case len(rootNum) > 0 && len(rootDen) > 0:
+		num = append(num, rootForm(quotientForm(mergeNumbers(rootNum), mergeNumbers(rootDen))))
+	case len(rootNum) > 0:
+		num = append(num, rootForm(productForm(mergeNumbers(rootNum))))
+	case len(rootDen) > 0:
+		den = append(den, rootForm(productForm(mergeNumbers(rootDen))))
+	}
+	a := c.abs()
+	if n := fromBig(new(big.Rat).SetInt(a.num())); !n.isOne() || len(num) == 0 {
+		num = append([]*Form{numForm(n)}, num...)
+	}
+	if d := fromBig(new(big.Rat).SetInt(a.den())); !d.isOne() {
+		den = append([]*Form{numForm(d)}, den...)
+	}
+	if len(num) > 1 && num[0].isOne() {
+		num = num[1:]
+	}
+	f := quotientForm(num, den)
+	if c.sign() < 0 {
+		f = negForm(f)
+	}
+	return f
+}
+
+// merge adds the exponents of factors with the same base, as a root of a
+// polynomial and that polynomial in the denominator.
+func (p *prod) merge() {
+	at := map[string]int{}
+	out := p.fs[:0]
+	for _, f := range p.fs {
+		if f.k != nil && f.k.kind == kindPrime {
+			out = append(out, f)
+			continue
+		}
+		key := f.form.String()
+		i, ok := at[key]
+		if !ok {
+			at[key] = len(out)
+			out = append(out, f)
+			continue
+		}
+		g := &out[i]
+		r := p.b.r
+		switch {
+		case f.sym.Valid() && g.sym.Valid():
+			g.sym = g.sym.Add(f.sym)
+		case f.sym.Valid():
+			g.sym = f.sym.Add(r.ratExpr(g.e))
+		case g.sym.Valid():
+			g.sym = g.sym.Add(r.ratExpr(f.e))
+		default:
+			g.e = g.e.add(f.e)
+		}
+		g.nonng = g.nonng || f.nonng
+	}
+	p.fs = out[:0]
+	for _, f := range out {
+		if f.sym.Valid() {
+			if q, ok := f.sym.rational(); ok {
+				f.sym, f.e = Expr{}, q
+			}
+		}
+		if f.sym.Valid() || !f.e.isZero() {
+			p.fs = append(p.fs, f)
+		}
+	}
+}
+
+// flip turns -(a - b) into b - a.
+func (p *prod) flip() {
+	if p.c.sign() >= 0 {
+		return
+	}
+	for i := range p.fs {
+		f := &p.fs[i]
+		if f.sym.Valid() || f.form.Op != FormSum || !f.e.isInt() || f.e.n%2 == 0 {
+			continue
+		}
+		if g := flipSum(f.form); g != nil {
+			f.form = g
+			p.c = p.c.neg()
+			return
+		}
+	}
+}
+
+// flipSum is minus a sum that has a negative summand, or nil.
+func flipSum(f *Form) *Form {
+	if f.Op != FormSum {
+		return nil
+	}
+	ts := make([]*Form, len(f.Args))
+	has := false
+	for i, t := range f.Args {
+		has = has || t.Op == FormNeg
+		ts[i] = negForm(t)
+	}
+	if !has {
+		return nil
+	}
+	return positiveFirst(ts)
+}
+
+// mergeNumbers multiplies the numbers under one root.
+func mergeNumbers(fs []*Form) []*Form {
+	c := ratOne
+	var out []*Form
+	for _, f := range fs {
+		if f.Op == FormNumber {
+			c = c.mul(fromBig(f.Num))
+			continue
+		}
+		out = append(out, f)
+	}
+	if !c.isOne() || len(out) == 0 {
+		out = append([]*Form{numForm(c)}, out...)
+	}
+	return out
+}
+
+func divisible(c rat, p int64) bool {
+	return new(big.Int).Mod(c.den(), big.NewInt(p)).Sign() == 0
+}
+
+func rootForm(f *Form) *Form { return &Form{Op: FormRoot, Args: []*Form{f}} }
+
+func (b *former) ratPower(f *Form, e rat) *Form {
+	switch {
+	case e.isOne():
+		return f
+	case e.equal(rat{n: 1, d: 2}):
+		return rootForm(f)
+	}
+	return &Form{Op: FormPower, Args: []*Form{f, numForm(e)}}
+}
+
+func (b *former) power(f *Form, e Expr, depth int) *Form {
+	if e.IsOne() {
+		return f
+	}
+	return &Form{Op: FormPower, Args: []*Form{f, b.expr(e, depth+1)}}
+}
+
+// kernel prints the first power of a kernel (for roots, the base).
+func (b *former) kernel(k *kernel, depth int) *Form {
+	args := func() []*Form {
+		out := make([]*Form, len(k.args))
+		for i, a := range k.args {
+			out[i] = b.expr(a, depth+1)
+		}
+		return out
+	}
+	switch k.kind {
+	case kindPrime:
+		return numForm(ratInt(k.prime))
+	case kindSymbol:
+		return &Form{Op: FormSymbol, Name: k.name, Latex: k.attr.Latex}
+	case kindRoot:
+		return b.expr(k.base, depth+1)
+	case kindExp:
+		return &Form{Op: FormCall, Name: "exp", Args: args()}
+	case kindCis:
+		return &Form{Op: FormCall, Name: "cis", Args: args()}
+	case kindPow:
+		return b.power(b.expr(k.args[0], depth+1), k.args[1], depth)
+	case kindFunc:
+		return b.function(k, args)
+	case kindIntegral:
+		return &Form{Op: FormIntegral, Name: k.name, Args: args()}
+	}
+	return &Form{Op: FormCall, Name: k.name, Args: args()}
+}
+
+func (b *former) function(k *kernel, args func() []*Form) *Form {
+	f := b.r.funcs[k.name]
+	standard := true
+	for i, a := range k.args {
+		s := b.r.kernelExpr(b.r.symbols[f.args[i]])
+		standard = standard && a.Equal(s)
+	}
+	out := &Form{Op: FormDiff, Name: k.name, Latex: f.attr.Latex}
+	for i, n := range k.deriv {
+		for ; n > 0; n-- {
+			out.Vars = append(out.Vars, f.args[i])
+		}
+	}
+	if !standard {
+		out.Args = args()
+	}
+	if len(out.Vars) == 0 {
+		if standard {
+			return &Form{Op: FormSymbol, Name: k.name, Latex: f.attr.Latex}
+		}
+		return &Form{Op: FormCall, Name: k.name, Latex: f.attr.Latex, Args: out.Args}
+	}
+	if !standard {
+		// The declared names, in order, tell the printer what Args replace.
+		out.Vars = append(out.Vars, "")
+		out.Vars = append(out.Vars, f.args...)
+	}
+	return out
+}
+
+// DiffVars returns the variables of differentiation of a FormDiff and, when
+// it is taken at other than the declared arguments, the declared names that
+// Args replace.
+func (f *Form) DiffVars() (vars, at []string) {
+	for i, v := range f.Vars {
+		if v == "" {
+			return f.Vars[:i], f.Vars[i+1:]
+		}
+	}
+	return f.Vars, nil
+}
+
+// String is the source text of the form, readable by the model reader.
+func (f *Form) String() string {
+	if f.text == "" {
+		var b strings.Builder
+		f.source(&b, 0)
+		f.text = b.String()
+	}
+	return f.text
+}
