@@ -475,3 +475,14 @@ func (e Expr) ReduceSquare(name string, value Expr) Expr {
 	}
 	return out
 }
+
+// DropAbs replaces absolute values by their arguments.
+func (e Expr) DropAbs() (Expr, error) {
+	return e.rebuild(func(k *kernel, sub func(Expr) (Expr, error)) (Expr, bool, error) {
+		if k.kind == kindCall && k.name == "abs" {
+			v, err := sub(k.args[0])
+			return v, true, err
+		}
+		return Expr{}, false, nil
+	})
+}

@@ -595,6 +595,19 @@ func (e Expr) DependsOn(name string) bool {
 	return found
 }
 
+// IsReal reports whether e is real for real values of its symbols.
+func (e Expr) IsReal() bool {
+	r := e.n.r
+	conj := r.fromPoly(r.conjPoly(e.n.num))
+	for _, f := range e.n.den {
+		if conj.IsZero() {
+			break
+		}
+		conj = conj.over(r.fromPoly(r.conjPoly(f.f.p)).powNat(f.e))
+	}
+	return conj.Equal(e)
+}
+
 // Size counts the terms of numerator and denominator: a measure of length.
 func (e Expr) Size() int {
 	n := len(e.n.num)

@@ -151,7 +151,7 @@ func (b *former) realParts(e Expr) (poly, []polyFactor, bool) {
 	trig := hasCis(e.n.num)
 	for i, f := range e.n.den {
 		den[i] = polyFactor{f.f.p, f.e}
-		trig = trig || hasCis(f.f.p)
+		trig = trig || hasCis(f.f.p) || !isRealPoly(f.f.p)
 	}
 	if !trig {
 		for _, t := range e.n.num {
@@ -162,27 +162,51 @@ func (b *former) realParts(e Expr) (poly, []polyFactor, bool) {
 		return e.n.num, den, true
 	}
 	x := e
-	for i, f := range den {
-		if !hasCis(f.p) {
+	var out []polyFactor
+	done := map[string]bool{}
+	for _, f := range den {
+		if isRealPoly(f.p) && !hasCis(f.p) {
+			out = append(out, f)
+			x = x.Mul(r.fromPoly(f.p).powNat(f.e))
 			continue
 		}
-		s, ok := r.symmetrise(f.p)
+		if s, ok := r.symmetrise(f.p); ok {
+			out = append(out, polyFactor{s, f.e})
+			x = x.Mul(r.fromPoly(s).powNat(f.e))
+			continue
+		}
+		// A factor and its conjugate, such as D + i omega and D - i omega,
+		// make a real one together.
+		if done[f.p.key()] {
+			continue
+		}
+		conj := r.prim(r.conjPoly(f.p))
+		for _, g := range den {
+			if g.p.equal(conj) {
+				done[conj.key()] = true
+				f.e = max(f.e, g.e)
+			}
+		}
+		s, ok := r.symmetrise(r.mulPoly(f.p, conj))
 		if !ok {
 			return nil, nil, false
 		}
-		den[i].p = s
+		out = append(out, polyFactor{s, f.e})
 		x = x.Mul(r.fromPoly(s).powNat(f.e))
 	}
-	num := x
-	for i, f := range den {
-		if !hasCis(e.n.den[i].f.p) {
-			num = num.Mul(r.fromPoly(f.p).powNat(f.e))
-		}
-	}
-	if len(num.n.den) > 0 || !r.conjPoly(num.n.num).equal(num.n.num) {
+	if len(x.n.den) > 0 || !r.conjPoly(x.n.num).equal(x.n.num) {
 		return nil, nil, false
 	}
-	return num.n.num, den, true
+	return x.n.num, out, true
+}
+
+func isRealPoly(p poly) bool {
+	for _, t := range p {
+		if !t.c.isReal() {
+			return false
+		}
+	}
+	return true
 }
 
 // complex prints real and imaginary parts; no result of a real model is

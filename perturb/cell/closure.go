@@ -1,0 +1,331 @@
+package cell
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"sort"
+
+	"epslim/generator/algebra"
+)
+
+// Closure is the exact route. It writes f over functions of the fast
+// variables, applies L0 until no new function appears, and solves the linear
+// system over the field of slow expressions, strongly connected block by
+// block. The average comes out as the extra unknown; no invariant density is
+// needed. At walls the corrector must have zero slope, and on circles it must
+// be periodic; where the plain closure violates that, a two-point problem
+// over an enriched set of functions is solved instead.
+type Closure struct {
+	p       *Process
+	names   []string
+	fns     map[string]*fnNode
+	conds   []algebra.Expr
+	MaxSize int // functions in a closed set; 0 means 400
+	MaxStep int // applications of L0 before giving up; 0 means 40
+}
+
+// fnNode is a basis function of the fast variables.
+type fnNode struct {
+	fn       algebra.Expr
+	key      string
+	image    []link // L0 fn, once computed
+	expanded bool
+	sol      *Solution
+	err      error
+}
+
+type link struct {
+	coef algebra.Expr
+	to   *fnNode
+}
+
+// NewClosure prepares the exact route for a process.
+func NewClosure(p *Process) *Closure {
+	return &Closure{p: p, names: p.Names(), fns: map[string]*fnNode{}}
+}
+
+// Name implements Route.
+func (c *Closure) Name() string { return "closure" }
+
+// Conditions implements Route.
+func (c *Closure) Conditions() []algebra.Expr { return c.conds }
+
+// Solve implements Route.
+func (c *Closure) Solve(ctx context.Context, f algebra.Expr) (Solution, error) {
+	r := c.p.Ring
+	out := Solution{r.Int(0), r.Int(0)}
+	err := algebra.Guard(func() error {
+		parts := c.split(f)
+		for _, l := range parts {
+			if err := ctx.Err(); err != nil {
+				return err
+			}
+			s, err := c.basis(ctx, l.to)
+			if err != nil {
+				return err
+			}
+			out.Phi = out.Phi.Add(l.coef.Mul(s.Phi))
+			out.Mean = out.Mean.Add(l.coef.Mul(s.Mean))
+		}
+		return nil
+	})
+	if errors.Is(err, algebra.ErrTooLarge) {
+		err = doesNotApply("the closed set of functions is too large: %v", err)
+	}
+	return out, err
+}
+
+// split writes e over basis functions.
+func (c *Closure) split(e algebra.Expr) []link {
+	var out []link
+	for _, t := range c.p.Reduce(e).SplitBy(c.names...) {
+		key := t.Fn.String()
+		n, ok := c.fns[key]
+		if !ok {
+			n = &fnNode{fn: t.Fn, key: key}
+			c.fns[key] = n
+		}
+		out = append(out, link{t.Coef, n})
+	}
+	return out
+}
+
+func (c *Closure) expand(n *fnNode) []link {
+	if !n.expanded {
+		n.image = c.split(c.p.L0.Apply(n.fn))
+		n.expanded = true
+	}
+	return n.image
+}
+
+// basis solves the fast problem of one basis function.
+func (c *Closure) basis(ctx context.Context, n *fnNode) (*Solution, error) {
+	if n.sol != nil || n.err != nil {
+		return n.sol, n.err
+	}
+	n.sol, n.err = c.solveBasis(ctx, n)
+	if n.err == nil {
+		if res := c.p.Residual(n.fn, *n.sol); !res.IsZero() {
+			n.sol, n.err = nil, fmt.Errorf("internal error: the corrector of %s leaves the residual %s", n.fn, res)
+		}
+	}
+	return n.sol, n.err
+}
+
+func (c *Closure) solveBasis(ctx context.Context, n *fnNode) (*Solution, error) {
+	r := c.p.Ring
+	if n.fn.IsOne() {
+		return &Solution{r.Int(0), r.Int(1)}, nil
+	}
+	set, err := c.close(ctx, []*fnNode{n})
+	if err != nil {
+		return nil, err
+	}
+	if !c.hasEnds() {
+		s, err := c.solveBlocks(n, set)
+		if err == nil {
+			return s, nil
+		}
+		if !errors.Is(err, errSingular) {
+			return nil, err
+		}
+	} else {
+		s, err := c.solveBlocks(n, set)
+		c.dropMisfits(set)
+		if err == nil && n.sol != nil {
+			return s, nil
+		}
+	}
+	return c.twoPoint(ctx, n, set)
+}
+
+// dropMisfits forgets block solutions that violate the conditions at the ends
+// of the domain. A solution built on them is checked on its own.
+func (c *Closure) dropMisfits(set []*fnNode) {
+	for _, m := range set {
+		if m.sol != nil && !m.fn.IsOne() && !c.fitsEnds(m.sol.Phi) {
+			m.sol = nil
+		}
+	}
+}
+
+// close collects the functions that L0 makes of the given ones.
+func (c *Closure) close(ctx context.Context, start []*fnNode) ([]*fnNode, error) {
+	maxSize, maxStep := c.MaxSize, c.MaxStep
+	if maxSize == 0 {
+		maxSize = 400
+	}
+	if maxStep == 0 {
+		maxStep = 40
+	}
+	seen := map[*fnNode]bool{}
+	var set []*fnNode
+	layer := start
+	for step := 0; len(layer) > 0; step++ {
+		if err := ctx.Err(); err != nil {
+			return nil, err
+		}
+		var next []*fnNode
+		for _, n := range layer {
+			if seen[n] {
+				continue
+			}
+			seen[n] = true
+			set = append(set, n)
+			for _, l := range c.expand(n) {
+				if !seen[l.to] {
+					next = append(next, l.to)
+				}
+			}
+		}
+		if len(next) > 0 && (len(set) > maxSize || step > maxStep) {
+			return nil, doesNotApply("applying the fast generator to %s does not close (%d functions after %d steps, the last %s)",
+				start[0].fn, len(set), step, next[0].fn)
+		}
+		layer = next
+	}
+	return set, nil
+}
+
+var errSingular = errors.New("a block of the closed system is singular")
+
+// solveBlocks solves by strongly connected components of the graph "L0 of
+// this function contains that one", last first: within a block with matrix M
+// and lower functions d, L0 b = M b + N d, so
+//
+//	<b> = -M^-1 N <d>,  Phi_b = -M^-1 (b + N Phi_d).
+func (c *Closure) solveBlocks(n *fnNode, set []*fnNode) (*Solution, error) {
+	for _, block := range components(set) {
+		if len(block) == 1 && block[0].fn.IsOne() {
+			one := block[0]
+			if one.sol == nil {
+				one.sol = &Solution{c.p.Ring.Int(0), c.p.Ring.Int(1)}
+			}
+			continue
+		}
+		if err := c.solveBlock(block, n); err != nil {
+			return nil, err
+		}
+	}
+	return n.sol, nil
+}
+
+// solveBlock solves for every member of the block that lower blocks asked
+// for; in a block of several functions each member is solved by its own
+// transposed system, which is cheaper than the inverse.
+func (c *Closure) solveBlock(block []*fnNode, want *fnNode) error {
+	r := c.p.Ring
+	at := map[*fnNode]int{}
+	for i, n := range block {
+		at[n] = i
+	}
+	k := len(block)
+	mt := make([][]algebra.Expr, k) // M transposed
+	for i := range mt {
+		mt[i] = make([]algebra.Expr, k)
+		for j := range mt[i] {
+			mt[i][j] = r.Int(0)
+		}
+	}
+	rest := make([]Solution, k) // N Phi_d and N <d>
+	for i, n := range block {
+		rest[i] = Solution{n.fn, r.Int(0)}
+		for _, l := range n.image {
+			if j, ok := at[l.to]; ok {
+				mt[j][i] = mt[j][i].Add(l.coef)
+				continue
+			}
+			rest[i].Phi = rest[i].Phi.Add(l.coef.Mul(l.to.sol.Phi))
+			rest[i].Mean = rest[i].Mean.Add(l.coef.Mul(l.to.sol.Mean))
+		}
+	}
+	for i, n := range block {
+		if n.sol != nil {
+			continue
+		}
+		rhs := make([]algebra.Expr, k)
+		for j := range rhs {
+			rhs[j] = r.Int(0)
+		}
+		rhs[i] = r.Int(-1)
+		sol, err := algebra.SolveLinear(mt, rhs)
+		if err != nil || len(sol.Free) > 0 {
+			return errSingular
+		}
+		c.addConditions(sol.Pivots)
+		s := Solution{r.Int(0), r.Int(0)}
+		for j := range block {
+			if sol.X[j].IsZero() {
+				continue
+			}
+			s.Phi = s.Phi.Add(sol.X[j].Mul(rest[j].Phi))
+			s.Mean = s.Mean.Add(sol.X[j].Mul(rest[j].Mean))
+		}
+		n.sol = &s
+	}
+	return nil
+}
+
+// addConditions keeps the pivots that the declared signs do not keep away
+// from zero.
+func (c *Closure) addConditions(pivots []algebra.Expr) {
+	for _, p := range pivots {
+		if p.Sign()&algebra.Zero == 0 || !p.IsReal() {
+			continue
+		}
+		known := false
+		for _, q := range c.conds {
+			known = known || q.Equal(p)
+		}
+		if !known {
+			c.conds = append(c.conds, p)
+		}
+	}
+}
+
+// components are the strongly connected components of the set in an order in
+// which every block comes after the blocks it needs (Tarjan 1972).
+func components(set []*fnNode) [][]*fnNode {
+	index := map[*fnNode]int{}
+	low := map[*fnNode]int{}
+	on := map[*fnNode]bool{}
+	var stack []*fnNode
+	var out [][]*fnNode
+	next := 1
+	var visit func(n *fnNode)
+	visit = func(n *fnNode) {
+		index[n], low[n] = next, next
+		next++
+		stack = append(stack, n)
+		on[n] = true
+		for _, l := range n.image {
+			if index[l.to] == 0 {
+				visit(l.to)
+				low[n] = min(low[n], low[l.to])
+			} else if on[l.to] {
+				low[n] = min(low[n], index[l.to])
+			}
+		}
+		if low[n] == index[n] {
+			var block []*fnNode
+			for {
+				m := stack[len(stack)-1]
+				stack = stack[:len(stack)-1]
+				on[m] = false
+				block = append(block, m)
+				if m == n {
+					break
+				}
+			}
+			sort.Slice(block, func(i, j int) bool { return block[i].key < block[j].key })
+			out = append(out, block)
+		}
+	}
+	for _, n := range set {
+		if index[n] == 0 {
+			visit(n)
+		}
+	}
+	return out
+}

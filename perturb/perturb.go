@@ -1,0 +1,300 @@
+// Package perturb runs the orders of the multiscale expansion: the centring
+// and solvability conditions, the limit, its factor and Stratonovich form,
+// and the origin of every drift term. It knows nothing of particular fast
+// processes; those are the business of perturb/cell. It imports perturb/cell,
+// generator and generator/algebra.
+//
+// Literature: G.A. Pavliotis, A.M. Stuart, Multiscale Methods (2008), ch. 10,
+// 11 and 18; G.C. Papanicolaou, D. Stroock, S.R.S. Varadhan, Martingale
+// approach to some limit theorems (1977); citations from memory.
+package perturb
+
+import (
+	"context"
+	"fmt"
+	"math/big"
+
+	"epslim/generator"
+	"epslim/generator/algebra"
+	"epslim/perturb/cell"
+)
+
+// Problem is what the expansion starts from.
+type Problem struct {
+	Ring *algebra.Ring
+	Gen  *generator.Graded
+	Slow []string
+	Fast []cell.Variable
+	// Routes are tried in order for every fast problem; nil means closure
+	// alone.
+	Routes []cell.Route
+	// MaxPower bounds the search for a limit on longer times: the largest
+	// power of the small parameter at which the averaged operator is still
+	// looked for. Zero means 4.
+	MaxPower int
+}
+
+// Reason names why there is no limit.
+type Reason string
+
+// The reasons of refusal.
+const (
+	Uncentred     Reason = "uncentred"      // a large drift with a non-zero mean
+	NotErgodic    Reason = "not-ergodic"    // no unique stationary law of the fast process
+	NotFast       Reason = "not-fast"       // the leading generator moves a slow variable
+	SingularNoise Reason = "singular-noise" // noise that blows up as eps -> 0
+)
+
+// Refusal is the outcome for a model without a limit; it is an error value.
+type Refusal struct {
+	Reason Reason
+	Order  *big.Rat // the power of the small parameter where it shows
+	Text   string   // what is wrong, with the quantity
+	Mend   string   // what would mend it
+	Detail map[string]algebra.Expr
+}
+
+func (r *Refusal) Error() string { return string(r.Reason) + ": " + r.Text }
+
+// Order is one line of the hierarchy: L_lead u_J + Source = 0 (or = du0/dt),
+// with the average that the solvability condition asks about.
+type Order struct {
+	J         int
+	Power     *big.Rat
+	Source    []Contribution
+	Sum       algebra.Expr // the sum of the sources
+	Mean      algebra.Expr // its average: an operator acting on u0
+	Corrector algebra.Expr // u_J, with L_lead u_J = Mean - Sum
+	Limit     bool         // the solvability condition is the limit equation
+}
+
+// Contribution is L_power u_index in the source of an order.
+type Contribution struct {
+	Power *big.Rat
+	Op    *generator.Operator
+	Index int
+	Value algebra.Expr
+}
+
+// Limit is the outcome of the expansion.
+type Limit struct {
+	Lead       *big.Rat // lowest power of the small parameter
+	Power      *big.Rat // power at which the limit appears; time is of order eps^-Power
+	U0         string   // name of the undetermined function
+	Orders     []Order
+	Regime     string // "homogenization" or "averaging"
+	Method     string // "closure", ...
+	Drift      []algebra.Expr
+	Diffusion  [][]algebra.Expr
+	Cell       []algebra.Expr // corrector of each slow variable's large drift
+	Terms      [][]Term
+	Conditions []algebra.Expr // must not vanish
+	Generator  algebra.Expr   // the limit generator on u0
+}
+
+// Term is a piece of the Ito drift with its origin.
+type Term struct {
+	Origin string
+	Value  algebra.Expr
+}
+
+// expansion is the state of one run.
+type expansion struct {
+	Problem
+	step  *big.Rat // spacing of the orders
+	shift []int    // of every part of the generator, in steps above the lead
+	u     []algebra.Expr
+	used  map[string]bool
+	out   *Limit
+}
+
+// Derive runs the expansion. A model without a limit gives a *Refusal.
+func Derive(ctx context.Context, p Problem) (*Limit, error) {
+	if p.MaxPower == 0 {
+		p.MaxPower = 4
+	}
+	e := &expansion{Problem: p, used: map[string]bool{}}
+	var out *Limit
+	err := algebra.Guard(func() error {
+		var err error
+		out, err = e.run(ctx)
+		return err
+	})
+	return out, err
+}
+
+func (e *expansion) run(ctx context.Context) (*Limit, error) {
+	if len(e.Gen.Parts) == 0 {
+		return nil, &Refusal{Reason: NotFast, Order: new(big.Rat), Text: "nothing moves in this model"}
+	}
+	lead := e.Gen.Parts[0]
+	if r := e.checkFast(lead); r != nil {
+		return nil, r
+	}
+	if e.Routes == nil {
+		e.Routes = []cell.Route{cell.NewClosure(&cell.Process{Ring: e.Ring, L0: lead.Op, Fast: e.Fast})}
+	}
+	e.spacing()
+	name := "u₀"
+	if err := e.Ring.DeclareFunction(name, e.Slow, algebra.Attr{Latex: "u_{0}"}); err != nil {
+		return nil, err
+	}
+	args := make([]algebra.Expr, len(e.Slow))
+	for i, s := range e.Slow {
+		args[i], _ = e.Ring.Symbol(s)
+	}
+	u0, err := e.Ring.Call(name, args...)
+	if err != nil {
+		return nil, err
+	}
+	e.u = []algebra.Expr{u0}
+	e.out = &Limit{Lead: lead.Power, U0: name}
+	last := new(big.Rat).SetInt64(int64(e.MaxPower))
+	for j := 1; ; j++ {
+		power := new(big.Rat).Mul(e.step, new(big.Rat).SetInt64(int64(j)))
+		power.Add(power, lead.Power)
+		if power.Cmp(last) > 0 {
+			return e.nothing(lead)
+		}
+		done, err := e.order(ctx, j, power)
+		if err != nil {
+			return nil, err
+		}
+		if done {
+			return e.out, nil
+		}
+	}
+}
+
+// checkFast refuses a leading generator that differentiates in a slow
+// variable.
+func (e *expansion) checkFast(lead generator.Part) *Refusal {
+	slow := e.slowIndex()
+	for _, t := range lead.Op.Terms() {
+		for _, i := range slow {
+			if t.Index[i] > 0 {
+				v := lead.Op.Vars()[i]
+				return &Refusal{
+					Reason: NotFast, Order: lead.Power,
+					Text:   fmt.Sprintf("the leading generator, at %s^(%s), moves the slow variable %s through the term %s", e.Gen.Small, lead.Power.RatString(), v, termText(lead.Op, t)),
+					Mend:   fmt.Sprintf("the fast equations must carry a lower power of %s than the equation of %s, so that the fast variables relax before %s moves", e.Gen.Small, v, v),
+					Detail: map[string]algebra.Expr{v: t.Coef},
+				}
+			}
+		}
+	}
+	return nil
+}
+
+func termText(o *generator.Operator, t generator.Term) string {
+	p := generator.New(o.Ring(), o.Vars())
+	p.Add(t.Index, t.Coef)
+	return p.String()
+}
+
+func (e *expansion) slowIndex() []int {
+	var out []int
+	for i, v := range e.Gen.Parts[0].Op.Vars() {
+		for _, s := range e.Slow {
+			if s == v {
+				out = append(out, i)
+			}
+		}
+	}
+	return out
+}
+
+// spacing finds the common step of the powers.
+func (e *expansion) spacing() {
+	lead := e.Gen.Parts[0].Power
+	l := big.NewInt(1)
+	var diffs []*big.Rat
+	for _, p := range e.Gen.Parts {
+		d := new(big.Rat).Sub(p.Power, lead)
+		diffs = append(diffs, d)
+		g := new(big.Int).GCD(nil, nil, l, d.Denom())
+		l = new(big.Int).Mul(l, new(big.Int).Quo(d.Denom(), g))
+	}
+	n := new(big.Int)
+	for _, d := range diffs {
+		k := new(big.Int).Quo(new(big.Int).Mul(d.Num(), l), d.Denom())
+		n.GCD(nil, nil, n, k)
+	}
+	if n.Sign() == 0 {
+		n.SetInt64(1)
+	}
+	e.step = new(big.Rat).SetFrac(n, l)
+	for _, d := range diffs {
+		q := new(big.Rat).Quo(d, e.step)
+		e.shift = append(e.shift, int(q.Num().Int64()))
+	}
+}
+
+// order solves one order of the hierarchy; done tells that it gave the limit.
+func (e *expansion) order(ctx context.Context, j int, power *big.Rat) (done bool, err error) {
+	o := Order{J: j, Power: power, Sum: e.Ring.Int(0)}
+	for k, p := range e.Gen.Parts {
+		if i := j - e.shift[k]; k > 0 && i >= 0 && !e.u[i].IsZero() {
+			c := Contribution{p.Power, p.Op, i, p.Op.Apply(e.u[i])}
+			if !c.Value.IsZero() {
+				o.Source = append(o.Source, c)
+				o.Sum = o.Sum.Add(c.Value)
+			}
+		}
+	}
+	if len(o.Source) == 0 {
+		e.u = append(e.u, e.Ring.Int(0))
+		return false, nil
+	}
+	s, err := e.solve(ctx, o.Sum)
+	if err != nil {
+		return false, fmt.Errorf("at order %s^(%s): %w", e.Gen.Small, power.RatString(), err)
+	}
+	o.Mean, o.Corrector = s.Mean, s.Phi
+	o.Limit = !o.Mean.IsZero()
+	e.out.Orders = append(e.out.Orders, o)
+	if !o.Limit {
+		e.u = append(e.u, o.Corrector)
+		return false, nil
+	}
+	return true, e.limit(ctx, o)
+}
+
+// solve tries the routes in turn.
+func (e *expansion) solve(ctx context.Context, f algebra.Expr) (cell.Solution, error) {
+	var first error
+	for _, r := range e.Routes {
+		s, err := r.Solve(ctx, f)
+		if err == nil {
+			e.used[r.Name()] = true
+			e.out.Method = r.Name()
+			return s, nil
+		}
+		if first == nil {
+			first = err
+		}
+	}
+	return cell.Solution{}, first
+}
+
+// nothing is the outcome when no averaged operator appears at all.
+func (e *expansion) nothing(lead generator.Part) (*Limit, error) {
+	n := len(e.Slow)
+	e.out.Power = new(big.Rat)
+	e.out.Regime = "averaging"
+	e.out.Method = "closure"
+	e.out.Generator = e.Ring.Int(0)
+	e.out.Drift = make([]algebra.Expr, n)
+	e.out.Diffusion = make([][]algebra.Expr, n)
+	e.out.Terms = make([][]Term, n)
+	e.out.Cell = make([]algebra.Expr, n)
+	for i := range e.out.Drift {
+		e.out.Drift[i] = e.Ring.Int(0)
+		e.out.Cell[i] = e.Ring.Int(0)
+		e.out.Diffusion[i] = make([]algebra.Expr, n)
+		for k := range e.out.Diffusion[i] {
+			e.out.Diffusion[i][k] = e.Ring.Int(0)
+		}
+	}
+	return e.out, nil
+}
