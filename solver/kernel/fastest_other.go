@@ -1,0 +1,4 @@
+package kernel
+
+// fastest returns the kernels for this processor.
+func fastest() *vectorOps { return portable() }
