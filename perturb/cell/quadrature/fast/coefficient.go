@@ -96,8 +96,8 @@ func Constant(c float64) Coefficient {
 	return Coefficient{Name: strconv.FormatFloat(c, 'g', 6, 64), Terms: []Term{{Constant: c}}}
 }
 
-// Sum1 is the sum of terms.
-func Sum1(name string, terms ...Term) Coefficient {
+// SumOf is the sum of terms.
+func SumOf(name string, terms ...Term) Coefficient {
 	if terms == nil {
 		terms = []Term{}
 	}

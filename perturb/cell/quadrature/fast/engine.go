@@ -261,7 +261,9 @@ func (e *Engine) Mean(ctx context.Context, g Function) (Value, error) {
 			best = fine
 			best.Error = math.Abs(fine.Value-coarse.Value) + fine.Error
 			scale := math.Max(best.Scale, math.Abs(best.Value))
-			if best.Error <= e.route.Tolerance*scale || best.Error == 0 {
+			// What is lost to rounding does not come back at a higher level: the
+			// value is returned with its honest error.
+			if best.Error-fine.Rounding <= math.Max(e.route.Tolerance*scale, fine.Rounding) {
 				return best, nil
 			}
 		}
@@ -272,6 +274,9 @@ func (e *Engine) Mean(ctx context.Context, g Function) (Value, error) {
 			return best, &NotSettled{Quantity: "average of " + e.nodes[g.id].label, Value: best, Tolerance: e.route.Tolerance, Resolution: e.levels[e.at].level.String()}
 		}
 		e.at++
+		if e.at >= 2 {
+			e.levels[e.at-2] = nil
+		}
 	}
 }
 

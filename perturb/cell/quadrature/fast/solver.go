@@ -9,6 +9,9 @@ type Value struct {
 	// Error is an estimate of its absolute error: the change between two
 	// resolutions plus an estimate of rounding.
 	Error float64
+	// Rounding is the part of Error that comes from rounding and that no
+	// resolution can lower.
+	Rounding float64
 	// Scale is the size of what was averaged, <|g|> or a norm of g. Tolerances
 	// are relative to it, so that a mean that vanishes by symmetry can settle.
 	Scale float64
@@ -42,7 +45,7 @@ type Solver interface {
 	// Mean is the average of g over the stationary law.
 	Mean(ctx context.Context, g Function) (Value, error)
 	// Solve returns Phi with L0 Phi = -(g - <g>), <Phi> = 0, and <g>. The mean
-	// is settled when Solve returns; Phi is recomputed at whatever resolution
+	// is settled (its change is below the tolerance or below rounding) when Solve returns; Phi is recomputed at whatever resolution
 	// later averages need.
 	Solve(ctx context.Context, g Function) (Function, Value, error)
 	// At evaluates a function at a block of points, y[i][k] being coordinate i

@@ -1,0 +1,137 @@
+package quadrature_test
+
+import (
+	"context"
+	"errors"
+	"math"
+	"strings"
+	"testing"
+
+	"epslim/perturb/cell/quadrature"
+	"epslim/perturb/cell/quadrature/fast"
+)
+
+func TestRefusals(t *testing.T) {
+	lin := func(k float64) func(float64) float64 { return func(y float64) float64 { return -k * y } }
+	for _, c := range []struct {
+		name    string
+		problem *fast.Problem
+		says    string
+	}{
+		{"free Brownian motion", one(line, constant(0), constant(2)), "infinite"},
+		{"constant drift on the line", one(line, constant(0.3), constant(1)), "attracting"},
+		{"weak confinement", one(line, func(y float64) float64 { return -0.4 * y / (1 + y*y) }, constant(2)), "|y|^-0.4"},
+		{"two half-lines", one(line, func(y float64) float64 { return y - y*y*y }, func(y float64) float64 { return 0.5 * y * y }), "more than one"},
+		{"drawn to zero", one(line, func(y float64) float64 { return y - y*y*y }, func(y float64) float64 { return 4 * y * y }), "point mass at y = 0"},
+		{"wall off centre", one(line, func(y float64) float64 { return -(y - 0.3) * (y - 2) * (y + 2) }, func(y float64) float64 { return 0.3 * (y - 0.3) * (y - 0.3) }), "y = 0.3"},
+		{"geometric Brownian motion on the half-line", one(half, func(y float64) float64 { return y - y*y }, func(y float64) float64 { return 3 * y * y }), "not integrable at 0"},
+		{"circle without noise, locked", one(circle, func(y float64) float64 { return 0.5 + math.Sin(y) }, constant(0)), "stops there"},
+		{"circle without anything", one(circle, constant(0), constant(0)), "neither"},
+		{"absorbing corner", one(wall(0, 1), constant(0), func(y float64) float64 { return y * (1 - y) }), "not integrable at 0"},
+		{"unconfined tail", one(line, lin(-1), constant(2)), "attracting"},
+	} {
+		t.Run(c.name, func(t *testing.T) {
+			s, err := quadrature.New(context.Background(), c.problem, quadrature.Settings{})
+			var ne *fast.NotErgodic
+			if !errors.As(err, &ne) {
+				t.Fatalf("got solver %v, error %v; want not ergodic", s != nil, err)
+			}
+			if !strings.Contains(err.Error(), c.says) {
+				t.Errorf("message %q does not say %q", err, c.says)
+			}
+		})
+	}
+}
+
+// Lookalikes of the refusals that have a limit.
+func TestNotRefused(t *testing.T) {
+	for _, c := range []struct {
+		name    string
+		problem *fast.Problem
+		g       func(float64) float64
+		mean    float64
+		source  string
+	}{
+		{"confinement just enough", one(line, func(y float64) float64 { return -1.1 * y / (1 + y*y) }, constant(2)), func(y float64) float64 { return 1 / (1 + y*y) }, 0.1 / 1.1,
+			"<1/(1+y^2)> of (1+y^2)^(-nu), nu = c/2: Beta integrals, (2nu-1)/(2nu)"},
+		{"noise zero crossed one way", one(line, func(y float64) float64 { return 1 - y }, func(y float64) float64 { return y * y }), func(y float64) float64 { return y }, 1,
+			"inverse Gamma law on y > 0 (Wong 1964): stationarity of the mean"},
+		{"geometric noise with growth", one(half, func(y float64) float64 { return y - y*y }, func(y float64) float64 { return y * y }), func(y float64) float64 { return y }, 0.5,
+			"Gamma law y^(2/s^2-2) exp(-2y/s^2): mean 1 - s^2/2"},
+		{"noise that vanishes at a wall", one(wall(0, 1), func(y float64) float64 { return 0.5 - y }, func(y float64) float64 { return y * (1 - y) }), func(y float64) float64 { return y * y }, 1. / 3,
+			"f = a'/2 gives the uniform law"},
+	} {
+		t.Run(c.name, func(t *testing.T) {
+			s, err := quadrature.New(context.Background(), c.problem, quadrature.Settings{})
+			if err != nil {
+				t.Fatal(err)
+			}
+			m, err := s.Mean(context.Background(), s.Coefficient(fast.Func1("g", c.g)))
+			if err != nil {
+				t.Fatal(err)
+			}
+			check(t, c.source, m, c.mean, 1e-12)
+		})
+	}
+}
+
+func TestDivergence(t *testing.T) {
+	ctx := context.Background()
+	// Student law with tail |y|^(-2-k/D): the second moment exists for k > D.
+	student := one(line, func(y float64) float64 { return -0.7 * y }, func(y float64) float64 { return 2 * (1 + y*y) })
+	s, err := quadrature.New(ctx, student, quadrature.Settings{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	y := fast.Func1("y", func(y float64) float64 { return y })
+	phi, mean, err := s.Solve(ctx, s.Coefficient(y))
+	if err != nil || math.Abs(mean.Value) > 1e-12 {
+		t.Fatalf("mean %v, error %v", mean, err)
+	}
+	_, err = s.Mean(ctx, s.Apply(fast.Multiply(y), phi))
+	var d *fast.Divergent
+	if !errors.As(err, &d) {
+		t.Fatalf("got %v, want a divergence", err)
+	}
+	if math.Abs(d.Exponent-(-0.7)) > 1e-6 || !strings.Contains(d.Quantity, "Phi") {
+		t.Errorf("%+v", d)
+	}
+	// The inverse of a square-root process whose zero is reached: <1/y> infinite.
+	cir := one(half, func(y float64) float64 { return 0.1 - y }, func(y float64) float64 { return y })
+	if s, err = quadrature.New(ctx, cir, quadrature.Settings{}); err != nil {
+		t.Fatal(err)
+	}
+	_, err = s.Mean(ctx, s.Coefficient(fast.Func1("1/y", func(y float64) float64 { return 1 / y })))
+	if !errors.As(err, &d) || math.Abs(d.Exponent-(-1.8)) > 1e-6 || d.Where != "0" {
+		t.Errorf("got %v", err)
+	}
+}
+
+func TestUndefined(t *testing.T) {
+	ctx := context.Background()
+	for name, p := range map[string]*fast.Problem{
+		"logarithm of a negative number": one(line, func(y float64) float64 { return -y + math.Log(y) }, constant(1)),
+		"pole inside":                    one(line, func(y float64) float64 { return -y + 1/(y-0.3) }, constant(1)),
+		"negative diffusion":             one(line, func(y float64) float64 { return -y }, func(y float64) float64 { return 1 - y*y }),
+	} {
+		s, err := quadrature.New(ctx, p, quadrature.Settings{})
+		if err == nil {
+			_, err = s.Mean(ctx, s.Coefficient(fast.Constant(1)))
+		}
+		var u *fast.Undefined
+		if !errors.As(err, &u) {
+			t.Errorf("%s: %v", name, err)
+		} else {
+			t.Logf("%s: %v", name, err)
+		}
+	}
+	s, err := quadrature.New(ctx, one(line, func(y float64) float64 { return -y }, constant(2)), quadrature.Settings{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	_, err = s.Mean(ctx, s.Coefficient(fast.Func1("log(y)", math.Log)))
+	var u *fast.Undefined
+	if !errors.As(err, &u) || u.Coefficient != "log(y)" {
+		t.Error(err)
+	}
+}
