@@ -149,19 +149,32 @@ func (l List) Unwrap() []error {
 	return errs
 }
 
-// Sort orders the list by file in the order of first appearance, then by line
-// and column, and drops repeated errors at the same place.
+// origin tells texts apart: a file by its name, an option by what it says, since
+// one option may be given several times.
+func (d *Diagnostic) origin() string {
+	if strings.HasPrefix(d.File, "--") {
+		return d.File + " " + d.Text
+	}
+	return d.File
+}
+
+// Sort orders the list: files before options, each text by line and column.
+// Options keep the order in which their errors were found. Repeated errors at
+// one place are dropped.
 func (l *List) Sort() {
 	order := map[string]int{}
 	for _, d := range *l {
-		if _, ok := order[d.File]; !ok {
-			order[d.File] = len(order)
+		if _, ok := order[d.origin()]; !ok {
+			order[d.origin()] = len(order)
 		}
 	}
 	sort.SliceStable(*l, func(i, j int) bool {
 		a, b := (*l)[i], (*l)[j]
-		if a.File != b.File {
-			return order[a.File] < order[b.File]
+		if x, y := strings.HasPrefix(a.File, "--"), strings.HasPrefix(b.File, "--"); x != y {
+			return y
+		}
+		if a.origin() != b.origin() {
+			return order[a.origin()] < order[b.origin()]
 		}
 		return a.Position.Before(b.Position)
 	})

@@ -55,6 +55,15 @@ func FuzzParse(f *testing.F) {
 // checkPrinted asserts that an expression reads as itself when it is printed.
 func checkPrinted(t *testing.T, e Expr) {
 	t.Helper()
+	declared := false // a differential of a variable, which is a name of its own in the text below
+	Walk(e, func(n Expr) bool {
+		d, ok := n.(*Differential)
+		declared = declared || ok && !isDifferentialWord(d.Name)
+		return true
+	})
+	if declared {
+		return
+	}
 	text := "let q = " + e.String()
 	f, errs := Parse("model", []byte(text), Limits{})
 	if len(errs) > 0 {
@@ -65,13 +74,7 @@ func checkPrinted(t *testing.T, e Expr) {
 		}
 		t.Fatalf("%s: %v", text, errs)
 	}
-	var hasDx bool
-	Walk(e, func(n Expr) bool {
-		_, ok := n.(*Differential)
-		hasDx = hasDx || ok
-		return true
-	})
-	if again := f.Statements[0].(*Let).Value; !hasDx && !Same(e, again) {
+	if again := f.Statements[0].(*Let).Value; !Same(e, again) {
 		t.Fatalf("%s reads as %s", text, again)
 	}
 }

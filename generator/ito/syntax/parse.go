@@ -295,6 +295,10 @@ func (s *statementParser) calculus() Statement {
 func (s *statementParser) equation() Statement {
 	first := &s.tokens[0]
 	st := &Equation{Name: s.nameOf(0), Variable: strings.TrimPrefix(first.text, "d")}
+	if isKeyword(first.text) {
+		s.fail(s.tokens[1].at, diagnostic.Syntax, "unexpected \"=\" in a \""+first.text+"\" statement", "a name after \""+first.text+"\"", "")
+		return nil
+	}
 	if first.text == "d" || !strings.HasPrefix(first.text, "d") || first.text == "dt" && !s.variables["t"] {
 		s.fail(first.at, diagnostic.UnknownKeyword, "\""+first.text+" = ...\" is no statement",
 			"an equation for a differential, such as dx = ..., or \"let "+first.text+" = ...\"", "")

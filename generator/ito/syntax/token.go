@@ -457,8 +457,10 @@ func characterHint(r rune) string {
 		return "/ for a quotient"
 	case '²', '³', '¹':
 		return "^ for a power, such as x^2"
-	case '“', '”', '„', '«', '»', '\'', '‘', '’', '`':
+	case '“', '”', '„', '«', '»', '‘', '’', '`':
 		return "the straight quotes \"...\""
+	case '\'', '′':
+		return "\"...\" around a text, or diff(f, x) for a derivative"
 	case '{', '}':
 		return "parentheses ( )"
 	case '√':
