@@ -1,0 +1,3 @@
+package volume
+
+func (a *assembly) assembleFull() error { panic("todo") }
