@@ -25,8 +25,9 @@ const BlockSize = 512
 // set, nor of one odd cache line, which measured slower.
 const rowStride = BlockSize + 136
 
-// unit is the number of points the assembly kernels handle at a time.
-const unit = 16
+// unit is the number of points the assembly kernels handle at a time: four wide
+// vectors.
+const unit = 32
 
 // Inputs returns the names of the inputs in the order Eval expects them.
 func (p *Program) Inputs() []string { return slices.Clone(p.inputs) }

@@ -47,7 +47,7 @@ type Random struct{ table *vectorOps }
 // NewRandom returns the fastest generator kernels the processor has.
 func NewRandom() Random { return Random{fastest()} }
 
-// Normals fills z, of a length that is a multiple of 16, with independent
+// Normals fills z, of a length that is a multiple of 32, with independent
 // standard normal variates: Box and Muller (Ann. Math. Statist. 29 (1958) 610) on
 // pairs of uniforms of 52 bits, the two variates of a pair half a row apart. The
 // largest modulus is 8.49, beyond which the normal law has mass 2e-17.
@@ -57,14 +57,14 @@ func (r Random) Normals(s *Stream, z []float64) {
 	r.table.boxer(z[:h:h], z[h:])
 }
 
-// Uniforms fills u, of a length that is a multiple of 16, with independent
+// Uniforms fills u, of a length that is a multiple of 32, with independent
 // variates: the first half in (0, 1], the second in [0, 1).
 func (r Random) Uniforms(s *Stream, u []float64) {
 	h := len(u) / 2
 	r.table.uniforms(&s.state, u[:h:h], u[h:])
 }
 
-// Outside counts the values, of a number that is a multiple of 16, that do not
+// Outside counts the values, of a number that is a multiple of 32, that do not
 // lie in [lo, hi]; NaN lies outside.
 func (r Random) Outside(a []float64, lo, hi float64) int { return r.table.outside(a, lo, hi) }
 

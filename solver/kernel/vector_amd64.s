@@ -387,38 +387,60 @@ TEXT ·sinAVX2(SB), NOSPLIT, $0-64
 	XORQ         BX, BX
 
 loop:
-	VMULPD      (CX)(BX*8), Y0, Y2
-	VPAND       constant7fffffffffffffff<>+0(SB), Y2, Y3
-	VCMPPD      $0x16, constant41d0000000000000<>+0(SB), Y3, Y3
-	VPOR        Y3, Y1, Y1
-	VMOVAPD     Y2, Y3
-	VMOVUPD     constant3fd45f306dc9c883<>+0(SB), Y4
-	VFMADD213PD constant4338000000000000<>+0(SB), Y4, Y3
-	VSUBPD      constant4338000000000000<>+0(SB), Y3, Y4
-	VMOVAPD     Y4, Y5
-	VMOVUPD     constantc00921fb54442d18<>+0(SB), Y6
-	VFMADD213PD Y2, Y6, Y5
-	VFMADD231PD constantbca1a62633145c07<>+0(SB), Y4, Y5
-	VFMADD231PD constant392f1976b7ed8fbc<>+0(SB), Y4, Y5
-	VMULPD      Y5, Y5, Y2
-	VMOVUPD     constant3ce89a3f165714c1<>+0(SB), Y4
-	VFMADD213PD constantbd6ae513415ba2a4<>+0(SB), Y2, Y4
-	VFMADD213PD constant3de6124014cbe5fb<>+0(SB), Y2, Y4
-	VFMADD213PD constantbe5ae6455a1a9e87<>+0(SB), Y2, Y4
-	VFMADD213PD constant3ec71de3a54562a8<>+0(SB), Y2, Y4
-	VFMADD213PD constantbf2a01a01a018aa6<>+0(SB), Y2, Y4
-	VFMADD213PD constant3f81111111111107<>+0(SB), Y2, Y4
-	VFMADD213PD constantbfc5555555555555<>+0(SB), Y2, Y4
-	VMULPD      Y5, Y2, Y2
-	VFMADD213PD Y5, Y2, Y4
-	VPSLLQ      $0x3f, Y3, Y3
-	VPXOR       Y3, Y4, Y4
-	VMOVUPD     Y4, (AX)(BX*8)
-	ADDQ        $0x04, BX
-	CMPQ        BX, DX
-	JL          loop
-	VMOVMSKPD   Y1, AX
-	MOVQ        AX, ret+56(FP)
+	VMULPD       (CX)(BX*8), Y0, Y2
+	VMULPD       32(CX)(BX*8), Y0, Y3
+	VPAND        constant7fffffffffffffff<>+0(SB), Y2, Y4
+	VCMPPD       $0x16, constant41d0000000000000<>+0(SB), Y4, Y4
+	VPOR         Y4, Y1, Y1
+	VPAND        constant7fffffffffffffff<>+0(SB), Y3, Y4
+	VCMPPD       $0x16, constant41d0000000000000<>+0(SB), Y4, Y4
+	VPOR         Y4, Y1, Y1
+	VMOVAPD      Y2, Y4
+	VMOVAPD      Y3, Y5
+	VMOVUPD      constant3fd45f306dc9c883<>+0(SB), Y6
+	VFMADD213PD  constant4338000000000000<>+0(SB), Y6, Y4
+	VFMADD213PD  constant4338000000000000<>+0(SB), Y6, Y5
+	VSUBPD       constant4338000000000000<>+0(SB), Y4, Y6
+	VSUBPD       constant4338000000000000<>+0(SB), Y5, Y7
+	VFNMADD231PD constant400921fb54442d18<>+0(SB), Y6, Y2
+	VFNMADD231PD constant400921fb54442d18<>+0(SB), Y7, Y3
+	VFNMADD231PD constant3ca1a62633145c07<>+0(SB), Y6, Y2
+	VFNMADD231PD constant3ca1a62633145c07<>+0(SB), Y7, Y3
+	VFNMADD231PD constantb92f1976b7ed8fbc<>+0(SB), Y6, Y2
+	VFNMADD231PD constantb92f1976b7ed8fbc<>+0(SB), Y7, Y3
+	VMULPD       Y2, Y2, Y6
+	VMULPD       Y3, Y3, Y7
+	VMOVUPD      constant3ce89a3f165714c1<>+0(SB), Y8
+	VMOVUPD      constant3ce89a3f165714c1<>+0(SB), Y9
+	VFMADD213PD  constantbd6ae513415ba2a4<>+0(SB), Y6, Y8
+	VFMADD213PD  constantbd6ae513415ba2a4<>+0(SB), Y7, Y9
+	VFMADD213PD  constant3de6124014cbe5fb<>+0(SB), Y6, Y8
+	VFMADD213PD  constant3de6124014cbe5fb<>+0(SB), Y7, Y9
+	VFMADD213PD  constantbe5ae6455a1a9e87<>+0(SB), Y6, Y8
+	VFMADD213PD  constantbe5ae6455a1a9e87<>+0(SB), Y7, Y9
+	VFMADD213PD  constant3ec71de3a54562a8<>+0(SB), Y6, Y8
+	VFMADD213PD  constant3ec71de3a54562a8<>+0(SB), Y7, Y9
+	VFMADD213PD  constantbf2a01a01a018aa6<>+0(SB), Y6, Y8
+	VFMADD213PD  constantbf2a01a01a018aa6<>+0(SB), Y7, Y9
+	VFMADD213PD  constant3f81111111111107<>+0(SB), Y6, Y8
+	VFMADD213PD  constant3f81111111111107<>+0(SB), Y7, Y9
+	VFMADD213PD  constantbfc5555555555555<>+0(SB), Y6, Y8
+	VFMADD213PD  constantbfc5555555555555<>+0(SB), Y7, Y9
+	VMULPD       Y2, Y6, Y6
+	VMULPD       Y3, Y7, Y7
+	VFMADD213PD  Y2, Y6, Y8
+	VFMADD213PD  Y3, Y7, Y9
+	VPSLLQ       $0x3f, Y4, Y4
+	VPSLLQ       $0x3f, Y5, Y5
+	VPXOR        Y4, Y8, Y8
+	VPXOR        Y5, Y9, Y9
+	VMOVUPD      Y8, (AX)(BX*8)
+	VMOVUPD      Y9, 32(AX)(BX*8)
+	ADDQ         $0x08, BX
+	CMPQ         BX, DX
+	JL           loop
+	VMOVMSKPD    Y1, AX
+	MOVQ         AX, ret+56(FP)
 	VZEROUPPER
 	RET
 
@@ -522,35 +544,119 @@ DATA constant4338000000000000<>+48(SB)/8, $0x4338000000000000
 DATA constant4338000000000000<>+56(SB)/8, $0x4338000000000000
 GLOBL constant4338000000000000<>(SB), RODATA|NOPTR, $64
 
-DATA constantc00921fb54442d18<>+0(SB)/8, $0xc00921fb54442d18
-DATA constantc00921fb54442d18<>+8(SB)/8, $0xc00921fb54442d18
-DATA constantc00921fb54442d18<>+16(SB)/8, $0xc00921fb54442d18
-DATA constantc00921fb54442d18<>+24(SB)/8, $0xc00921fb54442d18
-DATA constantc00921fb54442d18<>+32(SB)/8, $0xc00921fb54442d18
-DATA constantc00921fb54442d18<>+40(SB)/8, $0xc00921fb54442d18
-DATA constantc00921fb54442d18<>+48(SB)/8, $0xc00921fb54442d18
-DATA constantc00921fb54442d18<>+56(SB)/8, $0xc00921fb54442d18
-GLOBL constantc00921fb54442d18<>(SB), RODATA|NOPTR, $64
+DATA constant400921fb54442d18<>+0(SB)/8, $0x400921fb54442d18
+DATA constant400921fb54442d18<>+8(SB)/8, $0x400921fb54442d18
+DATA constant400921fb54442d18<>+16(SB)/8, $0x400921fb54442d18
+DATA constant400921fb54442d18<>+24(SB)/8, $0x400921fb54442d18
+DATA constant400921fb54442d18<>+32(SB)/8, $0x400921fb54442d18
+DATA constant400921fb54442d18<>+40(SB)/8, $0x400921fb54442d18
+DATA constant400921fb54442d18<>+48(SB)/8, $0x400921fb54442d18
+DATA constant400921fb54442d18<>+56(SB)/8, $0x400921fb54442d18
+GLOBL constant400921fb54442d18<>(SB), RODATA|NOPTR, $64
 
-DATA constantbca1a62633145c07<>+0(SB)/8, $0xbca1a62633145c07
-DATA constantbca1a62633145c07<>+8(SB)/8, $0xbca1a62633145c07
-DATA constantbca1a62633145c07<>+16(SB)/8, $0xbca1a62633145c07
-DATA constantbca1a62633145c07<>+24(SB)/8, $0xbca1a62633145c07
-DATA constantbca1a62633145c07<>+32(SB)/8, $0xbca1a62633145c07
-DATA constantbca1a62633145c07<>+40(SB)/8, $0xbca1a62633145c07
-DATA constantbca1a62633145c07<>+48(SB)/8, $0xbca1a62633145c07
-DATA constantbca1a62633145c07<>+56(SB)/8, $0xbca1a62633145c07
-GLOBL constantbca1a62633145c07<>(SB), RODATA|NOPTR, $64
+DATA constant41d0000000000000<>+0(SB)/8, $0x41d0000000000000
+DATA constant41d0000000000000<>+8(SB)/8, $0x41d0000000000000
+DATA constant41d0000000000000<>+16(SB)/8, $0x41d0000000000000
+DATA constant41d0000000000000<>+24(SB)/8, $0x41d0000000000000
+DATA constant41d0000000000000<>+32(SB)/8, $0x41d0000000000000
+DATA constant41d0000000000000<>+40(SB)/8, $0x41d0000000000000
+DATA constant41d0000000000000<>+48(SB)/8, $0x41d0000000000000
+DATA constant41d0000000000000<>+56(SB)/8, $0x41d0000000000000
+GLOBL constant41d0000000000000<>(SB), RODATA|NOPTR, $64
 
-DATA constant392f1976b7ed8fbc<>+0(SB)/8, $0x392f1976b7ed8fbc
-DATA constant392f1976b7ed8fbc<>+8(SB)/8, $0x392f1976b7ed8fbc
-DATA constant392f1976b7ed8fbc<>+16(SB)/8, $0x392f1976b7ed8fbc
-DATA constant392f1976b7ed8fbc<>+24(SB)/8, $0x392f1976b7ed8fbc
-DATA constant392f1976b7ed8fbc<>+32(SB)/8, $0x392f1976b7ed8fbc
-DATA constant392f1976b7ed8fbc<>+40(SB)/8, $0x392f1976b7ed8fbc
-DATA constant392f1976b7ed8fbc<>+48(SB)/8, $0x392f1976b7ed8fbc
-DATA constant392f1976b7ed8fbc<>+56(SB)/8, $0x392f1976b7ed8fbc
-GLOBL constant392f1976b7ed8fbc<>(SB), RODATA|NOPTR, $64
+DATA constant3ca1a62633145c07<>+0(SB)/8, $0x3ca1a62633145c07
+DATA constant3ca1a62633145c07<>+8(SB)/8, $0x3ca1a62633145c07
+DATA constant3ca1a62633145c07<>+16(SB)/8, $0x3ca1a62633145c07
+DATA constant3ca1a62633145c07<>+24(SB)/8, $0x3ca1a62633145c07
+DATA constant3ca1a62633145c07<>+32(SB)/8, $0x3ca1a62633145c07
+DATA constant3ca1a62633145c07<>+40(SB)/8, $0x3ca1a62633145c07
+DATA constant3ca1a62633145c07<>+48(SB)/8, $0x3ca1a62633145c07
+DATA constant3ca1a62633145c07<>+56(SB)/8, $0x3ca1a62633145c07
+GLOBL constant3ca1a62633145c07<>(SB), RODATA|NOPTR, $64
+
+DATA constantb92f1976b7ed8fbc<>+0(SB)/8, $0xb92f1976b7ed8fbc
+DATA constantb92f1976b7ed8fbc<>+8(SB)/8, $0xb92f1976b7ed8fbc
+DATA constantb92f1976b7ed8fbc<>+16(SB)/8, $0xb92f1976b7ed8fbc
+DATA constantb92f1976b7ed8fbc<>+24(SB)/8, $0xb92f1976b7ed8fbc
+DATA constantb92f1976b7ed8fbc<>+32(SB)/8, $0xb92f1976b7ed8fbc
+DATA constantb92f1976b7ed8fbc<>+40(SB)/8, $0xb92f1976b7ed8fbc
+DATA constantb92f1976b7ed8fbc<>+48(SB)/8, $0xb92f1976b7ed8fbc
+DATA constantb92f1976b7ed8fbc<>+56(SB)/8, $0xb92f1976b7ed8fbc
+GLOBL constantb92f1976b7ed8fbc<>(SB), RODATA|NOPTR, $64
+
+// func cosAVX2(d []float64, a []float64, c float64) uint64
+// Requires: AVX, AVX2, FMA3
+TEXT ·cosAVX2(SB), NOSPLIT, $0-64
+	MOVQ         d_base+0(FP), AX
+	MOVQ         a_base+24(FP), CX
+	VBROADCASTSD c+48(FP), Y0
+	VPXOR        Y1, Y1, Y1
+	MOVQ         d_len+8(FP), DX
+	XORQ         BX, BX
+
+loop:
+	VMULPD       (CX)(BX*8), Y0, Y2
+	VMULPD       32(CX)(BX*8), Y0, Y3
+	VPAND        constant7fffffffffffffff<>+0(SB), Y2, Y4
+	VCMPPD       $0x16, constant41d0000000000000<>+0(SB), Y4, Y4
+	VPOR         Y4, Y1, Y1
+	VPAND        constant7fffffffffffffff<>+0(SB), Y3, Y4
+	VCMPPD       $0x16, constant41d0000000000000<>+0(SB), Y4, Y4
+	VPOR         Y4, Y1, Y1
+	VMOVAPD      Y2, Y4
+	VMOVAPD      Y3, Y5
+	VMOVUPD      constant3fd45f306dc9c883<>+0(SB), Y6
+	VFMADD213PD  constantbfe0000000000000<>+0(SB), Y6, Y4
+	VFMADD213PD  constantbfe0000000000000<>+0(SB), Y6, Y5
+	VADDPD       constant4338000000000000<>+0(SB), Y4, Y4
+	VADDPD       constant4338000000000000<>+0(SB), Y5, Y5
+	VSUBPD       constant4338000000000000<>+0(SB), Y4, Y6
+	VSUBPD       constant4338000000000000<>+0(SB), Y5, Y7
+	VADDPD       constant3fe0000000000000<>+0(SB), Y6, Y6
+	VADDPD       constant3fe0000000000000<>+0(SB), Y7, Y7
+	VPADDQ       constant0000000000000001<>+0(SB), Y4, Y4
+	VPADDQ       constant0000000000000001<>+0(SB), Y5, Y5
+	VFNMADD231PD constant400921fb54442d18<>+0(SB), Y6, Y2
+	VFNMADD231PD constant400921fb54442d18<>+0(SB), Y7, Y3
+	VFNMADD231PD constant3ca1a62633145c07<>+0(SB), Y6, Y2
+	VFNMADD231PD constant3ca1a62633145c07<>+0(SB), Y7, Y3
+	VFNMADD231PD constantb92f1976b7ed8fbc<>+0(SB), Y6, Y2
+	VFNMADD231PD constantb92f1976b7ed8fbc<>+0(SB), Y7, Y3
+	VMULPD       Y2, Y2, Y6
+	VMULPD       Y3, Y3, Y7
+	VMOVUPD      constant3ce89a3f165714c1<>+0(SB), Y8
+	VMOVUPD      constant3ce89a3f165714c1<>+0(SB), Y9
+	VFMADD213PD  constantbd6ae513415ba2a4<>+0(SB), Y6, Y8
+	VFMADD213PD  constantbd6ae513415ba2a4<>+0(SB), Y7, Y9
+	VFMADD213PD  constant3de6124014cbe5fb<>+0(SB), Y6, Y8
+	VFMADD213PD  constant3de6124014cbe5fb<>+0(SB), Y7, Y9
+	VFMADD213PD  constantbe5ae6455a1a9e87<>+0(SB), Y6, Y8
+	VFMADD213PD  constantbe5ae6455a1a9e87<>+0(SB), Y7, Y9
+	VFMADD213PD  constant3ec71de3a54562a8<>+0(SB), Y6, Y8
+	VFMADD213PD  constant3ec71de3a54562a8<>+0(SB), Y7, Y9
+	VFMADD213PD  constantbf2a01a01a018aa6<>+0(SB), Y6, Y8
+	VFMADD213PD  constantbf2a01a01a018aa6<>+0(SB), Y7, Y9
+	VFMADD213PD  constant3f81111111111107<>+0(SB), Y6, Y8
+	VFMADD213PD  constant3f81111111111107<>+0(SB), Y7, Y9
+	VFMADD213PD  constantbfc5555555555555<>+0(SB), Y6, Y8
+	VFMADD213PD  constantbfc5555555555555<>+0(SB), Y7, Y9
+	VMULPD       Y2, Y6, Y6
+	VMULPD       Y3, Y7, Y7
+	VFMADD213PD  Y2, Y6, Y8
+	VFMADD213PD  Y3, Y7, Y9
+	VPSLLQ       $0x3f, Y4, Y4
+	VPSLLQ       $0x3f, Y5, Y5
+	VPXOR        Y4, Y8, Y8
+	VPXOR        Y5, Y9, Y9
+	VMOVUPD      Y8, (AX)(BX*8)
+	VMOVUPD      Y9, 32(AX)(BX*8)
+	ADDQ         $0x08, BX
+	CMPQ         BX, DX
+	JL           loop
+	VMOVMSKPD    Y1, AX
+	MOVQ         AX, ret+56(FP)
+	VZEROUPPER
+	RET
 
 DATA constantbfe0000000000000<>+0(SB)/8, $0xbfe0000000000000
 DATA constantbfe0000000000000<>+8(SB)/8, $0xbfe0000000000000
@@ -571,75 +677,6 @@ DATA constant3fe0000000000000<>+40(SB)/8, $0x3fe0000000000000
 DATA constant3fe0000000000000<>+48(SB)/8, $0x3fe0000000000000
 DATA constant3fe0000000000000<>+56(SB)/8, $0x3fe0000000000000
 GLOBL constant3fe0000000000000<>(SB), RODATA|NOPTR, $64
-
-DATA constant41d0000000000000<>+0(SB)/8, $0x41d0000000000000
-DATA constant41d0000000000000<>+8(SB)/8, $0x41d0000000000000
-DATA constant41d0000000000000<>+16(SB)/8, $0x41d0000000000000
-DATA constant41d0000000000000<>+24(SB)/8, $0x41d0000000000000
-DATA constant41d0000000000000<>+32(SB)/8, $0x41d0000000000000
-DATA constant41d0000000000000<>+40(SB)/8, $0x41d0000000000000
-DATA constant41d0000000000000<>+48(SB)/8, $0x41d0000000000000
-DATA constant41d0000000000000<>+56(SB)/8, $0x41d0000000000000
-GLOBL constant41d0000000000000<>(SB), RODATA|NOPTR, $64
-
-DATA constant83a0000000000000<>+0(SB)/8, $0x83a0000000000000
-DATA constant83a0000000000000<>+8(SB)/8, $0x83a0000000000000
-DATA constant83a0000000000000<>+16(SB)/8, $0x83a0000000000000
-DATA constant83a0000000000000<>+24(SB)/8, $0x83a0000000000000
-DATA constant83a0000000000000<>+32(SB)/8, $0x83a0000000000000
-DATA constant83a0000000000000<>+40(SB)/8, $0x83a0000000000000
-DATA constant83a0000000000000<>+48(SB)/8, $0x83a0000000000000
-DATA constant83a0000000000000<>+56(SB)/8, $0x83a0000000000000
-GLOBL constant83a0000000000000<>(SB), RODATA|NOPTR, $64
-
-// func cosAVX2(d []float64, a []float64, c float64) uint64
-// Requires: AVX, AVX2, FMA3
-TEXT ·cosAVX2(SB), NOSPLIT, $0-64
-	MOVQ         d_base+0(FP), AX
-	MOVQ         a_base+24(FP), CX
-	VBROADCASTSD c+48(FP), Y0
-	VPXOR        Y1, Y1, Y1
-	MOVQ         d_len+8(FP), DX
-	XORQ         BX, BX
-
-loop:
-	VMULPD      (CX)(BX*8), Y0, Y2
-	VPAND       constant7fffffffffffffff<>+0(SB), Y2, Y3
-	VCMPPD      $0x16, constant41d0000000000000<>+0(SB), Y3, Y3
-	VPOR        Y3, Y1, Y1
-	VMOVAPD     Y2, Y3
-	VMOVUPD     constant3fd45f306dc9c883<>+0(SB), Y4
-	VFMADD213PD constantbfe0000000000000<>+0(SB), Y4, Y3
-	VADDPD      constant4338000000000000<>+0(SB), Y3, Y3
-	VSUBPD      constant4338000000000000<>+0(SB), Y3, Y4
-	VADDPD      constant3fe0000000000000<>+0(SB), Y4, Y4
-	VPADDQ      constant0000000000000001<>+0(SB), Y3, Y3
-	VMOVAPD     Y4, Y5
-	VMOVUPD     constantc00921fb54442d18<>+0(SB), Y6
-	VFMADD213PD Y2, Y6, Y5
-	VFMADD231PD constantbca1a62633145c07<>+0(SB), Y4, Y5
-	VFMADD231PD constant392f1976b7ed8fbc<>+0(SB), Y4, Y5
-	VMULPD      Y5, Y5, Y2
-	VMOVUPD     constant3ce89a3f165714c1<>+0(SB), Y4
-	VFMADD213PD constantbd6ae513415ba2a4<>+0(SB), Y2, Y4
-	VFMADD213PD constant3de6124014cbe5fb<>+0(SB), Y2, Y4
-	VFMADD213PD constantbe5ae6455a1a9e87<>+0(SB), Y2, Y4
-	VFMADD213PD constant3ec71de3a54562a8<>+0(SB), Y2, Y4
-	VFMADD213PD constantbf2a01a01a018aa6<>+0(SB), Y2, Y4
-	VFMADD213PD constant3f81111111111107<>+0(SB), Y2, Y4
-	VFMADD213PD constantbfc5555555555555<>+0(SB), Y2, Y4
-	VMULPD      Y5, Y2, Y2
-	VFMADD213PD Y5, Y2, Y4
-	VPSLLQ      $0x3f, Y3, Y3
-	VPXOR       Y3, Y4, Y4
-	VMOVUPD     Y4, (AX)(BX*8)
-	ADDQ        $0x04, BX
-	CMPQ        BX, DX
-	JL          loop
-	VMOVMSKPD   Y1, AX
-	MOVQ        AX, ret+56(FP)
-	VZEROUPPER
-	RET
 
 DATA constant0000000000000001<>+0(SB)/8, $0x0000000000000001
 DATA constant0000000000000001<>+8(SB)/8, $0x0000000000000001
@@ -663,59 +700,57 @@ TEXT ·sincosAVX2(SB), NOSPLIT, $0-88
 	XORQ         SI, SI
 
 loop:
-	VMULPD      (DX)(SI*8), Y0, Y2
-	VPAND       constant7fffffffffffffff<>+0(SB), Y2, Y3
-	VCMPPD      $0x16, constant41d0000000000000<>+0(SB), Y3, Y3
-	VPOR        Y3, Y1, Y1
-	VMOVAPD     Y2, Y3
-	VMOVUPD     constant3fe45f306dc9c883<>+0(SB), Y4
-	VFMADD213PD constant4338000000000000<>+0(SB), Y4, Y3
-	VSUBPD      constant4338000000000000<>+0(SB), Y3, Y4
-	VMOVAPD     Y4, Y5
-	VMOVUPD     constantbff921fb54442d18<>+0(SB), Y6
-	VFMADD213PD Y2, Y6, Y5
-	VFMADD231PD constantbc91a62633145c07<>+0(SB), Y4, Y5
-	VFMADD231PD constant391f1976b7ed8fbc<>+0(SB), Y4, Y5
-	VMULPD      Y5, Y5, Y2
-	VMOVUPD     constant3de5d93a5acfd57c<>+0(SB), Y4
-	VFMADD213PD constantbe5ae5e68a2b9ceb<>+0(SB), Y2, Y4
-	VFMADD213PD constant3ec71de357b1fe7d<>+0(SB), Y2, Y4
-	VFMADD213PD constantbf2a01a019c161d5<>+0(SB), Y2, Y4
-	VFMADD213PD constant3f8111111110f8a6<>+0(SB), Y2, Y4
-	VFMADD213PD constantbfc5555555555549<>+0(SB), Y2, Y4
-	VMOVUPD     constantbda8fae9be8838d4<>+0(SB), Y6
-	VFMADD213PD constant3e21ee9ebdb4b1c4<>+0(SB), Y2, Y6
-	VFMADD213PD constantbe927e4f809c52ad<>+0(SB), Y2, Y6
-	VFMADD213PD constant3efa01a019cb1590<>+0(SB), Y2, Y6
-	VFMADD213PD constantbf56c16c16c15177<>+0(SB), Y2, Y6
-	VFMADD213PD constant3fa555555555554c<>+0(SB), Y2, Y6
-	VMULPD      Y2, Y5, Y7
-	VFMADD213PD Y5, Y4, Y7
-	VMOVUPD     constantbfe0000000000000<>+0(SB), Y4
-	VFMADD213PD constant3ff0000000000000<>+0(SB), Y2, Y4
-	VMULPD      Y2, Y2, Y2
-	VFMADD213PD Y4, Y6, Y2
-	VPAND       constant0000000000000001<>+0(SB), Y3, Y4
-	VPXOR       Y5, Y5, Y5
-	VPSUBQ      Y4, Y5, Y4
-	VPXOR       Y7, Y2, Y5
-	VPAND       Y4, Y5, Y5
-	VPXOR       Y5, Y7, Y7
-	VPXOR       Y5, Y2, Y2
-	VPSLLQ      $0x3e, Y3, Y4
-	VPAND       constant8000000000000000<>+0(SB), Y4, Y4
-	VPXOR       Y4, Y7, Y7
-	VPADDQ      constant0000000000000001<>+0(SB), Y3, Y3
-	VPSLLQ      $0x3e, Y3, Y3
-	VPAND       constant8000000000000000<>+0(SB), Y3, Y3
-	VPXOR       Y3, Y2, Y2
-	VMOVUPD     Y7, (AX)(SI*8)
-	VMOVUPD     Y2, (CX)(SI*8)
-	ADDQ        $0x04, SI
-	CMPQ        SI, BX
-	JL          loop
-	VMOVMSKPD   Y1, AX
-	MOVQ        AX, ret+80(FP)
+	VMULPD       (DX)(SI*8), Y0, Y2
+	VPAND        constant7fffffffffffffff<>+0(SB), Y2, Y3
+	VCMPPD       $0x16, constant41d0000000000000<>+0(SB), Y3, Y3
+	VPOR         Y3, Y1, Y1
+	VMOVAPD      Y2, Y3
+	VMOVUPD      constant3fe45f306dc9c883<>+0(SB), Y4
+	VFMADD213PD  constant4338000000000000<>+0(SB), Y4, Y3
+	VSUBPD       constant4338000000000000<>+0(SB), Y3, Y4
+	VFNMADD231PD constant3ff921fb54442d18<>+0(SB), Y4, Y2
+	VFNMADD231PD constant3c91a62633145c07<>+0(SB), Y4, Y2
+	VFNMADD231PD constantb91f1976b7ed8fbc<>+0(SB), Y4, Y2
+	VMULPD       Y2, Y2, Y4
+	VMOVUPD      constant3de5d93a5acfd57c<>+0(SB), Y5
+	VFMADD213PD  constantbe5ae5e68a2b9ceb<>+0(SB), Y4, Y5
+	VFMADD213PD  constant3ec71de357b1fe7d<>+0(SB), Y4, Y5
+	VFMADD213PD  constantbf2a01a019c161d5<>+0(SB), Y4, Y5
+	VFMADD213PD  constant3f8111111110f8a6<>+0(SB), Y4, Y5
+	VFMADD213PD  constantbfc5555555555549<>+0(SB), Y4, Y5
+	VMULPD       Y4, Y2, Y6
+	VFMADD213PD  Y2, Y5, Y6
+	VMOVUPD      constantbda8fae9be8838d4<>+0(SB), Y2
+	VFMADD213PD  constant3e21ee9ebdb4b1c4<>+0(SB), Y4, Y2
+	VFMADD213PD  constantbe927e4f809c52ad<>+0(SB), Y4, Y2
+	VFMADD213PD  constant3efa01a019cb1590<>+0(SB), Y4, Y2
+	VFMADD213PD  constantbf56c16c16c15177<>+0(SB), Y4, Y2
+	VFMADD213PD  constant3fa555555555554c<>+0(SB), Y4, Y2
+	VMOVUPD      constantbfe0000000000000<>+0(SB), Y5
+	VFMADD213PD  constant3ff0000000000000<>+0(SB), Y4, Y5
+	VMULPD       Y4, Y4, Y4
+	VFMADD213PD  Y5, Y2, Y4
+	VPXOR        Y5, Y5, Y5
+	VPAND        constant0000000000000001<>+0(SB), Y3, Y2
+	VPSUBQ       Y2, Y5, Y2
+	VPXOR        Y6, Y4, Y5
+	VPAND        Y2, Y5, Y5
+	VPXOR        Y5, Y6, Y6
+	VPXOR        Y5, Y4, Y4
+	VPSLLQ       $0x3e, Y3, Y2
+	VPAND        constant8000000000000000<>+0(SB), Y2, Y2
+	VPXOR        Y2, Y6, Y6
+	VPADDQ       constant0000000000000001<>+0(SB), Y3, Y2
+	VPSLLQ       $0x3e, Y2, Y2
+	VPAND        constant8000000000000000<>+0(SB), Y2, Y2
+	VPXOR        Y2, Y4, Y4
+	VMOVUPD      Y6, (AX)(SI*8)
+	VMOVUPD      Y4, (CX)(SI*8)
+	ADDQ         $0x04, SI
+	CMPQ         SI, BX
+	JL           loop
+	VMOVMSKPD    Y1, AX
+	MOVQ         AX, ret+80(FP)
 	VZEROUPPER
 	RET
 
@@ -728,36 +763,6 @@ DATA constant3fe45f306dc9c883<>+40(SB)/8, $0x3fe45f306dc9c883
 DATA constant3fe45f306dc9c883<>+48(SB)/8, $0x3fe45f306dc9c883
 DATA constant3fe45f306dc9c883<>+56(SB)/8, $0x3fe45f306dc9c883
 GLOBL constant3fe45f306dc9c883<>(SB), RODATA|NOPTR, $64
-
-DATA constantbff921fb54442d18<>+0(SB)/8, $0xbff921fb54442d18
-DATA constantbff921fb54442d18<>+8(SB)/8, $0xbff921fb54442d18
-DATA constantbff921fb54442d18<>+16(SB)/8, $0xbff921fb54442d18
-DATA constantbff921fb54442d18<>+24(SB)/8, $0xbff921fb54442d18
-DATA constantbff921fb54442d18<>+32(SB)/8, $0xbff921fb54442d18
-DATA constantbff921fb54442d18<>+40(SB)/8, $0xbff921fb54442d18
-DATA constantbff921fb54442d18<>+48(SB)/8, $0xbff921fb54442d18
-DATA constantbff921fb54442d18<>+56(SB)/8, $0xbff921fb54442d18
-GLOBL constantbff921fb54442d18<>(SB), RODATA|NOPTR, $64
-
-DATA constantbc91a62633145c07<>+0(SB)/8, $0xbc91a62633145c07
-DATA constantbc91a62633145c07<>+8(SB)/8, $0xbc91a62633145c07
-DATA constantbc91a62633145c07<>+16(SB)/8, $0xbc91a62633145c07
-DATA constantbc91a62633145c07<>+24(SB)/8, $0xbc91a62633145c07
-DATA constantbc91a62633145c07<>+32(SB)/8, $0xbc91a62633145c07
-DATA constantbc91a62633145c07<>+40(SB)/8, $0xbc91a62633145c07
-DATA constantbc91a62633145c07<>+48(SB)/8, $0xbc91a62633145c07
-DATA constantbc91a62633145c07<>+56(SB)/8, $0xbc91a62633145c07
-GLOBL constantbc91a62633145c07<>(SB), RODATA|NOPTR, $64
-
-DATA constant391f1976b7ed8fbc<>+0(SB)/8, $0x391f1976b7ed8fbc
-DATA constant391f1976b7ed8fbc<>+8(SB)/8, $0x391f1976b7ed8fbc
-DATA constant391f1976b7ed8fbc<>+16(SB)/8, $0x391f1976b7ed8fbc
-DATA constant391f1976b7ed8fbc<>+24(SB)/8, $0x391f1976b7ed8fbc
-DATA constant391f1976b7ed8fbc<>+32(SB)/8, $0x391f1976b7ed8fbc
-DATA constant391f1976b7ed8fbc<>+40(SB)/8, $0x391f1976b7ed8fbc
-DATA constant391f1976b7ed8fbc<>+48(SB)/8, $0x391f1976b7ed8fbc
-DATA constant391f1976b7ed8fbc<>+56(SB)/8, $0x391f1976b7ed8fbc
-GLOBL constant391f1976b7ed8fbc<>(SB), RODATA|NOPTR, $64
 
 DATA constantbfc5555555555549<>+0(SB)/8, $0xbfc5555555555549
 DATA constantbfc5555555555549<>+8(SB)/8, $0xbfc5555555555549
@@ -879,16 +884,6 @@ DATA constantbda8fae9be8838d4<>+48(SB)/8, $0xbda8fae9be8838d4
 DATA constantbda8fae9be8838d4<>+56(SB)/8, $0xbda8fae9be8838d4
 GLOBL constantbda8fae9be8838d4<>(SB), RODATA|NOPTR, $64
 
-DATA constant3ff0000000000000<>+0(SB)/8, $0x3ff0000000000000
-DATA constant3ff0000000000000<>+8(SB)/8, $0x3ff0000000000000
-DATA constant3ff0000000000000<>+16(SB)/8, $0x3ff0000000000000
-DATA constant3ff0000000000000<>+24(SB)/8, $0x3ff0000000000000
-DATA constant3ff0000000000000<>+32(SB)/8, $0x3ff0000000000000
-DATA constant3ff0000000000000<>+40(SB)/8, $0x3ff0000000000000
-DATA constant3ff0000000000000<>+48(SB)/8, $0x3ff0000000000000
-DATA constant3ff0000000000000<>+56(SB)/8, $0x3ff0000000000000
-GLOBL constant3ff0000000000000<>(SB), RODATA|NOPTR, $64
-
 DATA constant8000000000000000<>+0(SB)/8, $0x8000000000000000
 DATA constant8000000000000000<>+8(SB)/8, $0x8000000000000000
 DATA constant8000000000000000<>+16(SB)/8, $0x8000000000000000
@@ -898,6 +893,46 @@ DATA constant8000000000000000<>+40(SB)/8, $0x8000000000000000
 DATA constant8000000000000000<>+48(SB)/8, $0x8000000000000000
 DATA constant8000000000000000<>+56(SB)/8, $0x8000000000000000
 GLOBL constant8000000000000000<>(SB), RODATA|NOPTR, $64
+
+DATA constant3ff921fb54442d18<>+0(SB)/8, $0x3ff921fb54442d18
+DATA constant3ff921fb54442d18<>+8(SB)/8, $0x3ff921fb54442d18
+DATA constant3ff921fb54442d18<>+16(SB)/8, $0x3ff921fb54442d18
+DATA constant3ff921fb54442d18<>+24(SB)/8, $0x3ff921fb54442d18
+DATA constant3ff921fb54442d18<>+32(SB)/8, $0x3ff921fb54442d18
+DATA constant3ff921fb54442d18<>+40(SB)/8, $0x3ff921fb54442d18
+DATA constant3ff921fb54442d18<>+48(SB)/8, $0x3ff921fb54442d18
+DATA constant3ff921fb54442d18<>+56(SB)/8, $0x3ff921fb54442d18
+GLOBL constant3ff921fb54442d18<>(SB), RODATA|NOPTR, $64
+
+DATA constant3c91a62633145c07<>+0(SB)/8, $0x3c91a62633145c07
+DATA constant3c91a62633145c07<>+8(SB)/8, $0x3c91a62633145c07
+DATA constant3c91a62633145c07<>+16(SB)/8, $0x3c91a62633145c07
+DATA constant3c91a62633145c07<>+24(SB)/8, $0x3c91a62633145c07
+DATA constant3c91a62633145c07<>+32(SB)/8, $0x3c91a62633145c07
+DATA constant3c91a62633145c07<>+40(SB)/8, $0x3c91a62633145c07
+DATA constant3c91a62633145c07<>+48(SB)/8, $0x3c91a62633145c07
+DATA constant3c91a62633145c07<>+56(SB)/8, $0x3c91a62633145c07
+GLOBL constant3c91a62633145c07<>(SB), RODATA|NOPTR, $64
+
+DATA constantb91f1976b7ed8fbc<>+0(SB)/8, $0xb91f1976b7ed8fbc
+DATA constantb91f1976b7ed8fbc<>+8(SB)/8, $0xb91f1976b7ed8fbc
+DATA constantb91f1976b7ed8fbc<>+16(SB)/8, $0xb91f1976b7ed8fbc
+DATA constantb91f1976b7ed8fbc<>+24(SB)/8, $0xb91f1976b7ed8fbc
+DATA constantb91f1976b7ed8fbc<>+32(SB)/8, $0xb91f1976b7ed8fbc
+DATA constantb91f1976b7ed8fbc<>+40(SB)/8, $0xb91f1976b7ed8fbc
+DATA constantb91f1976b7ed8fbc<>+48(SB)/8, $0xb91f1976b7ed8fbc
+DATA constantb91f1976b7ed8fbc<>+56(SB)/8, $0xb91f1976b7ed8fbc
+GLOBL constantb91f1976b7ed8fbc<>(SB), RODATA|NOPTR, $64
+
+DATA constant3ff0000000000000<>+0(SB)/8, $0x3ff0000000000000
+DATA constant3ff0000000000000<>+8(SB)/8, $0x3ff0000000000000
+DATA constant3ff0000000000000<>+16(SB)/8, $0x3ff0000000000000
+DATA constant3ff0000000000000<>+24(SB)/8, $0x3ff0000000000000
+DATA constant3ff0000000000000<>+32(SB)/8, $0x3ff0000000000000
+DATA constant3ff0000000000000<>+40(SB)/8, $0x3ff0000000000000
+DATA constant3ff0000000000000<>+48(SB)/8, $0x3ff0000000000000
+DATA constant3ff0000000000000<>+56(SB)/8, $0x3ff0000000000000
+GLOBL constant3ff0000000000000<>(SB), RODATA|NOPTR, $64
 
 // func expAVX2(d []float64, a []float64, c float64) uint64
 // Requires: AVX, AVX2, FMA3
@@ -910,41 +945,66 @@ TEXT ·expAVX2(SB), NOSPLIT, $0-64
 	XORQ         BX, BX
 
 loop:
-	VMULPD      (CX)(BX*8), Y0, Y2
-	VPAND       constant7fffffffffffffff<>+0(SB), Y2, Y3
-	VCMPPD      $0x16, constant4086200000000000<>+0(SB), Y3, Y3
-	VPOR        Y3, Y1, Y1
-	VMOVAPD     Y2, Y3
-	VMOVUPD     constant3ff71547652b82fe<>+0(SB), Y4
-	VFMADD213PD constant4338000000000000<>+0(SB), Y4, Y3
-	VSUBPD      constant4338000000000000<>+0(SB), Y3, Y4
-	VMOVAPD     Y4, Y5
-	VMOVUPD     constantbfe62e42fee00000<>+0(SB), Y6
-	VFMADD213PD Y2, Y6, Y5
-	VFMADD231PD constantbdea39ef35793c76<>+0(SB), Y4, Y5
-	VMOVUPD     constant3de6124613a86d09<>+0(SB), Y2
-	VFMADD213PD constant3e21eed8eff8d898<>+0(SB), Y5, Y2
-	VFMADD213PD constant3e5ae64567f544e4<>+0(SB), Y5, Y2
-	VFMADD213PD constant3e927e4fb7789f5c<>+0(SB), Y5, Y2
-	VFMADD213PD constant3ec71de3a556c734<>+0(SB), Y5, Y2
-	VFMADD213PD constant3efa01a01a01a01a<>+0(SB), Y5, Y2
-	VFMADD213PD constant3f2a01a01a01a01a<>+0(SB), Y5, Y2
-	VFMADD213PD constant3f56c16c16c16c17<>+0(SB), Y5, Y2
-	VFMADD213PD constant3f81111111111111<>+0(SB), Y5, Y2
-	VFMADD213PD constant3fa5555555555555<>+0(SB), Y5, Y2
-	VFMADD213PD constant3fc5555555555555<>+0(SB), Y5, Y2
-	VFMADD213PD constant3fe0000000000000<>+0(SB), Y5, Y2
-	VMULPD      Y5, Y5, Y4
-	VFMADD213PD Y5, Y2, Y4
-	VADDPD      constant3ff0000000000000<>+0(SB), Y4, Y4
-	VPSLLQ      $0x34, Y3, Y3
-	VPADDQ      Y3, Y4, Y4
-	VMOVUPD     Y4, (AX)(BX*8)
-	ADDQ        $0x04, BX
-	CMPQ        BX, DX
-	JL          loop
-	VMOVMSKPD   Y1, AX
-	MOVQ        AX, ret+56(FP)
+	VMULPD       (CX)(BX*8), Y0, Y2
+	VMULPD       32(CX)(BX*8), Y0, Y3
+	VPAND        constant7fffffffffffffff<>+0(SB), Y2, Y4
+	VCMPPD       $0x16, constant4086200000000000<>+0(SB), Y4, Y4
+	VPOR         Y4, Y1, Y1
+	VPAND        constant7fffffffffffffff<>+0(SB), Y3, Y4
+	VCMPPD       $0x16, constant4086200000000000<>+0(SB), Y4, Y4
+	VPOR         Y4, Y1, Y1
+	VMOVAPD      Y2, Y4
+	VMOVAPD      Y3, Y5
+	VMOVUPD      constant3ff71547652b82fe<>+0(SB), Y6
+	VFMADD213PD  constant4338000000000000<>+0(SB), Y6, Y4
+	VFMADD213PD  constant4338000000000000<>+0(SB), Y6, Y5
+	VSUBPD       constant4338000000000000<>+0(SB), Y4, Y6
+	VSUBPD       constant4338000000000000<>+0(SB), Y5, Y7
+	VFNMADD231PD constant3fe62e42fee00000<>+0(SB), Y6, Y2
+	VFNMADD231PD constant3fe62e42fee00000<>+0(SB), Y7, Y3
+	VFNMADD231PD constant3dea39ef35793c76<>+0(SB), Y6, Y2
+	VFNMADD231PD constant3dea39ef35793c76<>+0(SB), Y7, Y3
+	VMOVUPD      constant3de6124613a86d09<>+0(SB), Y6
+	VMOVUPD      constant3de6124613a86d09<>+0(SB), Y7
+	VFMADD213PD  constant3e21eed8eff8d898<>+0(SB), Y2, Y6
+	VFMADD213PD  constant3e21eed8eff8d898<>+0(SB), Y3, Y7
+	VFMADD213PD  constant3e5ae64567f544e4<>+0(SB), Y2, Y6
+	VFMADD213PD  constant3e5ae64567f544e4<>+0(SB), Y3, Y7
+	VFMADD213PD  constant3e927e4fb7789f5c<>+0(SB), Y2, Y6
+	VFMADD213PD  constant3e927e4fb7789f5c<>+0(SB), Y3, Y7
+	VFMADD213PD  constant3ec71de3a556c734<>+0(SB), Y2, Y6
+	VFMADD213PD  constant3ec71de3a556c734<>+0(SB), Y3, Y7
+	VFMADD213PD  constant3efa01a01a01a01a<>+0(SB), Y2, Y6
+	VFMADD213PD  constant3efa01a01a01a01a<>+0(SB), Y3, Y7
+	VFMADD213PD  constant3f2a01a01a01a01a<>+0(SB), Y2, Y6
+	VFMADD213PD  constant3f2a01a01a01a01a<>+0(SB), Y3, Y7
+	VFMADD213PD  constant3f56c16c16c16c17<>+0(SB), Y2, Y6
+	VFMADD213PD  constant3f56c16c16c16c17<>+0(SB), Y3, Y7
+	VFMADD213PD  constant3f81111111111111<>+0(SB), Y2, Y6
+	VFMADD213PD  constant3f81111111111111<>+0(SB), Y3, Y7
+	VFMADD213PD  constant3fa5555555555555<>+0(SB), Y2, Y6
+	VFMADD213PD  constant3fa5555555555555<>+0(SB), Y3, Y7
+	VFMADD213PD  constant3fc5555555555555<>+0(SB), Y2, Y6
+	VFMADD213PD  constant3fc5555555555555<>+0(SB), Y3, Y7
+	VFMADD213PD  constant3fe0000000000000<>+0(SB), Y2, Y6
+	VFMADD213PD  constant3fe0000000000000<>+0(SB), Y3, Y7
+	VMULPD       Y2, Y2, Y8
+	VMULPD       Y3, Y3, Y9
+	VFMADD213PD  Y2, Y6, Y8
+	VFMADD213PD  Y3, Y7, Y9
+	VADDPD       constant3ff0000000000000<>+0(SB), Y8, Y8
+	VADDPD       constant3ff0000000000000<>+0(SB), Y9, Y9
+	VPSLLQ       $0x34, Y4, Y4
+	VPSLLQ       $0x34, Y5, Y5
+	VPADDQ       Y4, Y8, Y8
+	VPADDQ       Y5, Y9, Y9
+	VMOVUPD      Y8, (AX)(BX*8)
+	VMOVUPD      Y9, 32(AX)(BX*8)
+	ADDQ         $0x08, BX
+	CMPQ         BX, DX
+	JL           loop
+	VMOVMSKPD    Y1, AX
+	MOVQ         AX, ret+56(FP)
 	VZEROUPPER
 	RET
 
@@ -1058,36 +1118,6 @@ DATA constant3de6124613a86d09<>+48(SB)/8, $0x3de6124613a86d09
 DATA constant3de6124613a86d09<>+56(SB)/8, $0x3de6124613a86d09
 GLOBL constant3de6124613a86d09<>(SB), RODATA|NOPTR, $64
 
-DATA constant3ff71547652b82fe<>+0(SB)/8, $0x3ff71547652b82fe
-DATA constant3ff71547652b82fe<>+8(SB)/8, $0x3ff71547652b82fe
-DATA constant3ff71547652b82fe<>+16(SB)/8, $0x3ff71547652b82fe
-DATA constant3ff71547652b82fe<>+24(SB)/8, $0x3ff71547652b82fe
-DATA constant3ff71547652b82fe<>+32(SB)/8, $0x3ff71547652b82fe
-DATA constant3ff71547652b82fe<>+40(SB)/8, $0x3ff71547652b82fe
-DATA constant3ff71547652b82fe<>+48(SB)/8, $0x3ff71547652b82fe
-DATA constant3ff71547652b82fe<>+56(SB)/8, $0x3ff71547652b82fe
-GLOBL constant3ff71547652b82fe<>(SB), RODATA|NOPTR, $64
-
-DATA constantbfe62e42fee00000<>+0(SB)/8, $0xbfe62e42fee00000
-DATA constantbfe62e42fee00000<>+8(SB)/8, $0xbfe62e42fee00000
-DATA constantbfe62e42fee00000<>+16(SB)/8, $0xbfe62e42fee00000
-DATA constantbfe62e42fee00000<>+24(SB)/8, $0xbfe62e42fee00000
-DATA constantbfe62e42fee00000<>+32(SB)/8, $0xbfe62e42fee00000
-DATA constantbfe62e42fee00000<>+40(SB)/8, $0xbfe62e42fee00000
-DATA constantbfe62e42fee00000<>+48(SB)/8, $0xbfe62e42fee00000
-DATA constantbfe62e42fee00000<>+56(SB)/8, $0xbfe62e42fee00000
-GLOBL constantbfe62e42fee00000<>(SB), RODATA|NOPTR, $64
-
-DATA constantbdea39ef35793c76<>+0(SB)/8, $0xbdea39ef35793c76
-DATA constantbdea39ef35793c76<>+8(SB)/8, $0xbdea39ef35793c76
-DATA constantbdea39ef35793c76<>+16(SB)/8, $0xbdea39ef35793c76
-DATA constantbdea39ef35793c76<>+24(SB)/8, $0xbdea39ef35793c76
-DATA constantbdea39ef35793c76<>+32(SB)/8, $0xbdea39ef35793c76
-DATA constantbdea39ef35793c76<>+40(SB)/8, $0xbdea39ef35793c76
-DATA constantbdea39ef35793c76<>+48(SB)/8, $0xbdea39ef35793c76
-DATA constantbdea39ef35793c76<>+56(SB)/8, $0xbdea39ef35793c76
-GLOBL constantbdea39ef35793c76<>(SB), RODATA|NOPTR, $64
-
 DATA constant4086200000000000<>+0(SB)/8, $0x4086200000000000
 DATA constant4086200000000000<>+8(SB)/8, $0x4086200000000000
 DATA constant4086200000000000<>+16(SB)/8, $0x4086200000000000
@@ -1098,15 +1128,35 @@ DATA constant4086200000000000<>+48(SB)/8, $0x4086200000000000
 DATA constant4086200000000000<>+56(SB)/8, $0x4086200000000000
 GLOBL constant4086200000000000<>(SB), RODATA|NOPTR, $64
 
-DATA constant810c400000000000<>+0(SB)/8, $0x810c400000000000
-DATA constant810c400000000000<>+8(SB)/8, $0x810c400000000000
-DATA constant810c400000000000<>+16(SB)/8, $0x810c400000000000
-DATA constant810c400000000000<>+24(SB)/8, $0x810c400000000000
-DATA constant810c400000000000<>+32(SB)/8, $0x810c400000000000
-DATA constant810c400000000000<>+40(SB)/8, $0x810c400000000000
-DATA constant810c400000000000<>+48(SB)/8, $0x810c400000000000
-DATA constant810c400000000000<>+56(SB)/8, $0x810c400000000000
-GLOBL constant810c400000000000<>(SB), RODATA|NOPTR, $64
+DATA constant3ff71547652b82fe<>+0(SB)/8, $0x3ff71547652b82fe
+DATA constant3ff71547652b82fe<>+8(SB)/8, $0x3ff71547652b82fe
+DATA constant3ff71547652b82fe<>+16(SB)/8, $0x3ff71547652b82fe
+DATA constant3ff71547652b82fe<>+24(SB)/8, $0x3ff71547652b82fe
+DATA constant3ff71547652b82fe<>+32(SB)/8, $0x3ff71547652b82fe
+DATA constant3ff71547652b82fe<>+40(SB)/8, $0x3ff71547652b82fe
+DATA constant3ff71547652b82fe<>+48(SB)/8, $0x3ff71547652b82fe
+DATA constant3ff71547652b82fe<>+56(SB)/8, $0x3ff71547652b82fe
+GLOBL constant3ff71547652b82fe<>(SB), RODATA|NOPTR, $64
+
+DATA constant3fe62e42fee00000<>+0(SB)/8, $0x3fe62e42fee00000
+DATA constant3fe62e42fee00000<>+8(SB)/8, $0x3fe62e42fee00000
+DATA constant3fe62e42fee00000<>+16(SB)/8, $0x3fe62e42fee00000
+DATA constant3fe62e42fee00000<>+24(SB)/8, $0x3fe62e42fee00000
+DATA constant3fe62e42fee00000<>+32(SB)/8, $0x3fe62e42fee00000
+DATA constant3fe62e42fee00000<>+40(SB)/8, $0x3fe62e42fee00000
+DATA constant3fe62e42fee00000<>+48(SB)/8, $0x3fe62e42fee00000
+DATA constant3fe62e42fee00000<>+56(SB)/8, $0x3fe62e42fee00000
+GLOBL constant3fe62e42fee00000<>(SB), RODATA|NOPTR, $64
+
+DATA constant3dea39ef35793c76<>+0(SB)/8, $0x3dea39ef35793c76
+DATA constant3dea39ef35793c76<>+8(SB)/8, $0x3dea39ef35793c76
+DATA constant3dea39ef35793c76<>+16(SB)/8, $0x3dea39ef35793c76
+DATA constant3dea39ef35793c76<>+24(SB)/8, $0x3dea39ef35793c76
+DATA constant3dea39ef35793c76<>+32(SB)/8, $0x3dea39ef35793c76
+DATA constant3dea39ef35793c76<>+40(SB)/8, $0x3dea39ef35793c76
+DATA constant3dea39ef35793c76<>+48(SB)/8, $0x3dea39ef35793c76
+DATA constant3dea39ef35793c76<>+56(SB)/8, $0x3dea39ef35793c76
+GLOBL constant3dea39ef35793c76<>(SB), RODATA|NOPTR, $64
 
 // func logAVX2(d []float64, a []float64) uint64
 // Requires: AVX, AVX2, FMA3
@@ -1172,26 +1222,6 @@ DATA constant4000000000000000<>+40(SB)/8, $0x4000000000000000
 DATA constant4000000000000000<>+48(SB)/8, $0x4000000000000000
 DATA constant4000000000000000<>+56(SB)/8, $0x4000000000000000
 GLOBL constant4000000000000000<>(SB), RODATA|NOPTR, $64
-
-DATA constant3dea39ef35793c76<>+0(SB)/8, $0x3dea39ef35793c76
-DATA constant3dea39ef35793c76<>+8(SB)/8, $0x3dea39ef35793c76
-DATA constant3dea39ef35793c76<>+16(SB)/8, $0x3dea39ef35793c76
-DATA constant3dea39ef35793c76<>+24(SB)/8, $0x3dea39ef35793c76
-DATA constant3dea39ef35793c76<>+32(SB)/8, $0x3dea39ef35793c76
-DATA constant3dea39ef35793c76<>+40(SB)/8, $0x3dea39ef35793c76
-DATA constant3dea39ef35793c76<>+48(SB)/8, $0x3dea39ef35793c76
-DATA constant3dea39ef35793c76<>+56(SB)/8, $0x3dea39ef35793c76
-GLOBL constant3dea39ef35793c76<>(SB), RODATA|NOPTR, $64
-
-DATA constant3fe62e42fee00000<>+0(SB)/8, $0x3fe62e42fee00000
-DATA constant3fe62e42fee00000<>+8(SB)/8, $0x3fe62e42fee00000
-DATA constant3fe62e42fee00000<>+16(SB)/8, $0x3fe62e42fee00000
-DATA constant3fe62e42fee00000<>+24(SB)/8, $0x3fe62e42fee00000
-DATA constant3fe62e42fee00000<>+32(SB)/8, $0x3fe62e42fee00000
-DATA constant3fe62e42fee00000<>+40(SB)/8, $0x3fe62e42fee00000
-DATA constant3fe62e42fee00000<>+48(SB)/8, $0x3fe62e42fee00000
-DATA constant3fe62e42fee00000<>+56(SB)/8, $0x3fe62e42fee00000
-GLOBL constant3fe62e42fee00000<>(SB), RODATA|NOPTR, $64
 
 DATA constant0010000000000000<>+0(SB)/8, $0x0010000000000000
 DATA constant0010000000000000<>+8(SB)/8, $0x0010000000000000
@@ -1292,16 +1322,6 @@ DATA constant7fefffffffffffff<>+40(SB)/8, $0x7fefffffffffffff
 DATA constant7fefffffffffffff<>+48(SB)/8, $0x7fefffffffffffff
 DATA constant7fefffffffffffff<>+56(SB)/8, $0x7fefffffffffffff
 GLOBL constant7fefffffffffffff<>(SB), RODATA|NOPTR, $64
-
-DATA constant7fdfffffffffffff<>+0(SB)/8, $0x7fdfffffffffffff
-DATA constant7fdfffffffffffff<>+8(SB)/8, $0x7fdfffffffffffff
-DATA constant7fdfffffffffffff<>+16(SB)/8, $0x7fdfffffffffffff
-DATA constant7fdfffffffffffff<>+24(SB)/8, $0x7fdfffffffffffff
-DATA constant7fdfffffffffffff<>+32(SB)/8, $0x7fdfffffffffffff
-DATA constant7fdfffffffffffff<>+40(SB)/8, $0x7fdfffffffffffff
-DATA constant7fdfffffffffffff<>+48(SB)/8, $0x7fdfffffffffffff
-DATA constant7fdfffffffffffff<>+56(SB)/8, $0x7fdfffffffffffff
-GLOBL constant7fdfffffffffffff<>(SB), RODATA|NOPTR, $64
 
 // func uniformsAVX2(state *[4][8]uint64, u []float64, v []float64)
 // Requires: AVX, AVX2
@@ -1467,36 +1487,36 @@ loop:
 	VFMADD213PD constantbf2a01a019c161d5<>+0(SB), Y0, Y4
 	VFMADD213PD constant3f8111111110f8a6<>+0(SB), Y0, Y4
 	VFMADD213PD constantbfc5555555555549<>+0(SB), Y0, Y4
-	VMOVUPD     constantbda8fae9be8838d4<>+0(SB), Y5
-	VFMADD213PD constant3e21ee9ebdb4b1c4<>+0(SB), Y0, Y5
-	VFMADD213PD constantbe927e4f809c52ad<>+0(SB), Y0, Y5
-	VFMADD213PD constant3efa01a019cb1590<>+0(SB), Y0, Y5
-	VFMADD213PD constantbf56c16c16c15177<>+0(SB), Y0, Y5
-	VFMADD213PD constant3fa555555555554c<>+0(SB), Y0, Y5
-	VMULPD      Y0, Y3, Y6
-	VFMADD213PD Y3, Y4, Y6
-	VMOVUPD     constantbfe0000000000000<>+0(SB), Y3
-	VFMADD213PD constant3ff0000000000000<>+0(SB), Y0, Y3
+	VMULPD      Y0, Y3, Y5
+	VFMADD213PD Y3, Y4, Y5
+	VMOVUPD     constantbda8fae9be8838d4<>+0(SB), Y3
+	VFMADD213PD constant3e21ee9ebdb4b1c4<>+0(SB), Y0, Y3
+	VFMADD213PD constantbe927e4f809c52ad<>+0(SB), Y0, Y3
+	VFMADD213PD constant3efa01a019cb1590<>+0(SB), Y0, Y3
+	VFMADD213PD constantbf56c16c16c15177<>+0(SB), Y0, Y3
+	VFMADD213PD constant3fa555555555554c<>+0(SB), Y0, Y3
+	VMOVUPD     constantbfe0000000000000<>+0(SB), Y4
+	VFMADD213PD constant3ff0000000000000<>+0(SB), Y0, Y4
 	VMULPD      Y0, Y0, Y0
-	VFMADD213PD Y3, Y5, Y0
-	VPAND       constant0000000000000001<>+0(SB), Y2, Y3
+	VFMADD213PD Y4, Y3, Y0
 	VPXOR       Y4, Y4, Y4
+	VPAND       constant0000000000000001<>+0(SB), Y2, Y3
 	VPSUBQ      Y3, Y4, Y3
-	VPXOR       Y6, Y0, Y4
+	VPXOR       Y5, Y0, Y4
 	VPAND       Y3, Y4, Y4
-	VPXOR       Y4, Y6, Y6
+	VPXOR       Y4, Y5, Y5
 	VPXOR       Y4, Y0, Y0
 	VPSLLQ      $0x3e, Y2, Y3
 	VPAND       constant8000000000000000<>+0(SB), Y3, Y3
-	VPXOR       Y3, Y6, Y6
-	VPADDQ      constant0000000000000001<>+0(SB), Y2, Y2
-	VPSLLQ      $0x3e, Y2, Y2
-	VPAND       constant8000000000000000<>+0(SB), Y2, Y2
-	VPXOR       Y2, Y0, Y0
+	VPXOR       Y3, Y5, Y5
+	VPADDQ      constant0000000000000001<>+0(SB), Y2, Y3
+	VPSLLQ      $0x3e, Y3, Y3
+	VPAND       constant8000000000000000<>+0(SB), Y3, Y3
+	VPXOR       Y3, Y0, Y0
 	VMULPD      Y1, Y0, Y0
-	VMULPD      Y1, Y6, Y6
+	VMULPD      Y1, Y5, Y5
 	VMOVUPD     Y0, (AX)(BX*8)
-	VMOVUPD     Y6, (CX)(BX*8)
+	VMOVUPD     Y5, (CX)(BX*8)
 	ADDQ        $0x04, BX
 	CMPQ        BX, DX
 	JL          loop
@@ -1852,48 +1872,122 @@ TEXT ·sinAVX512(SB), NOSPLIT, $0-64
 	VMOVUPD      constant3ce89a3f165714c1<>+0(SB), Z8
 	VMOVUPD      constant3fd45f306dc9c883<>+0(SB), Z9
 	VMOVUPD      constant4338000000000000<>+0(SB), Z10
-	VMOVUPD      constantc00921fb54442d18<>+0(SB), Z11
-	VMOVUPD      constantbca1a62633145c07<>+0(SB), Z12
-	VMOVUPD      constant392f1976b7ed8fbc<>+0(SB), Z13
-	VMOVUPD      constantbfe0000000000000<>+0(SB), Z14
-	VMOVUPD      constant3fe0000000000000<>+0(SB), Z14
-	VPXORQ       Z15, Z15, Z15
+	VMOVUPD      constant400921fb54442d18<>+0(SB), Z11
+	VPXORQ       Z12, Z12, Z12
 	MOVQ         d_len+8(FP), DX
 	XORQ         BX, BX
 
 loop:
-	VMULPD      (CX)(BX*8), Z0, Z14
-	VPADDQ      Z14, Z14, Z16
-	VPMAXUQ     Z16, Z15, Z15
-	VMOVAPD     Z14, Z16
-	VFMADD213PD Z10, Z9, Z16
-	VSUBPD      Z10, Z16, Z17
-	VMOVAPD     Z17, Z18
-	VFMADD213PD Z14, Z11, Z18
-	VFMADD231PD Z12, Z17, Z18
-	VFMADD231PD Z13, Z17, Z18
-	VMULPD      Z18, Z18, Z14
-	VMOVAPD     Z8, Z17
-	VFMADD213PD Z7, Z14, Z17
-	VFMADD213PD Z6, Z14, Z17
-	VFMADD213PD Z5, Z14, Z17
-	VFMADD213PD Z4, Z14, Z17
-	VFMADD213PD Z3, Z14, Z17
-	VFMADD213PD Z2, Z14, Z17
-	VFMADD213PD Z1, Z14, Z17
-	VMULPD      Z18, Z14, Z14
-	VFMADD213PD Z18, Z14, Z17
-	VPSLLQ      $0x3f, Z16, Z16
-	VPXORQ      Z16, Z17, Z17
-	VMOVUPD     Z17, (AX)(BX*8)
-	ADDQ        $0x08, BX
-	CMPQ        BX, DX
-	JL          loop
-	VPCMPUQ     $0x06, constant83a0000000000000<>+0(SB), Z15, K1
-	KMOVB       K1, AX
-	MOVQ        AX, ret+56(FP)
+	VMULPD       (CX)(BX*8), Z0, Z13
+	VMULPD       64(CX)(BX*8), Z0, Z14
+	VMULPD       128(CX)(BX*8), Z0, Z15
+	VMULPD       192(CX)(BX*8), Z0, Z16
+	VPADDQ       Z13, Z13, Z17
+	VPMAXUQ      Z17, Z12, Z12
+	VPADDQ       Z14, Z14, Z17
+	VPMAXUQ      Z17, Z12, Z12
+	VPADDQ       Z15, Z15, Z17
+	VPMAXUQ      Z17, Z12, Z12
+	VPADDQ       Z16, Z16, Z17
+	VPMAXUQ      Z17, Z12, Z12
+	VMOVAPD      Z13, Z17
+	VMOVAPD      Z14, Z18
+	VMOVAPD      Z15, Z19
+	VMOVAPD      Z16, Z20
+	VFMADD213PD  Z10, Z9, Z17
+	VFMADD213PD  Z10, Z9, Z18
+	VFMADD213PD  Z10, Z9, Z19
+	VFMADD213PD  Z10, Z9, Z20
+	VSUBPD       Z10, Z17, Z21
+	VSUBPD       Z10, Z18, Z22
+	VSUBPD       Z10, Z19, Z23
+	VSUBPD       Z10, Z20, Z24
+	VFNMADD231PD Z11, Z21, Z13
+	VFNMADD231PD Z11, Z22, Z14
+	VFNMADD231PD Z11, Z23, Z15
+	VFNMADD231PD Z11, Z24, Z16
+	VFNMADD231PD constant3ca1a62633145c07<>+0(SB), Z21, Z13
+	VFNMADD231PD constant3ca1a62633145c07<>+0(SB), Z22, Z14
+	VFNMADD231PD constant3ca1a62633145c07<>+0(SB), Z23, Z15
+	VFNMADD231PD constant3ca1a62633145c07<>+0(SB), Z24, Z16
+	VFNMADD231PD constantb92f1976b7ed8fbc<>+0(SB), Z21, Z13
+	VFNMADD231PD constantb92f1976b7ed8fbc<>+0(SB), Z22, Z14
+	VFNMADD231PD constantb92f1976b7ed8fbc<>+0(SB), Z23, Z15
+	VFNMADD231PD constantb92f1976b7ed8fbc<>+0(SB), Z24, Z16
+	VMULPD       Z13, Z13, Z21
+	VMULPD       Z14, Z14, Z22
+	VMULPD       Z15, Z15, Z23
+	VMULPD       Z16, Z16, Z24
+	VMOVAPD      Z8, Z25
+	VMOVAPD      Z8, Z26
+	VMOVAPD      Z8, Z27
+	VMOVAPD      Z8, Z28
+	VFMADD213PD  Z7, Z21, Z25
+	VFMADD213PD  Z7, Z22, Z26
+	VFMADD213PD  Z7, Z23, Z27
+	VFMADD213PD  Z7, Z24, Z28
+	VFMADD213PD  Z6, Z21, Z25
+	VFMADD213PD  Z6, Z22, Z26
+	VFMADD213PD  Z6, Z23, Z27
+	VFMADD213PD  Z6, Z24, Z28
+	VFMADD213PD  Z5, Z21, Z25
+	VFMADD213PD  Z5, Z22, Z26
+	VFMADD213PD  Z5, Z23, Z27
+	VFMADD213PD  Z5, Z24, Z28
+	VFMADD213PD  Z4, Z21, Z25
+	VFMADD213PD  Z4, Z22, Z26
+	VFMADD213PD  Z4, Z23, Z27
+	VFMADD213PD  Z4, Z24, Z28
+	VFMADD213PD  Z3, Z21, Z25
+	VFMADD213PD  Z3, Z22, Z26
+	VFMADD213PD  Z3, Z23, Z27
+	VFMADD213PD  Z3, Z24, Z28
+	VFMADD213PD  Z2, Z21, Z25
+	VFMADD213PD  Z2, Z22, Z26
+	VFMADD213PD  Z2, Z23, Z27
+	VFMADD213PD  Z2, Z24, Z28
+	VFMADD213PD  Z1, Z21, Z25
+	VFMADD213PD  Z1, Z22, Z26
+	VFMADD213PD  Z1, Z23, Z27
+	VFMADD213PD  Z1, Z24, Z28
+	VMULPD       Z13, Z21, Z21
+	VMULPD       Z14, Z22, Z22
+	VMULPD       Z15, Z23, Z23
+	VMULPD       Z16, Z24, Z24
+	VFMADD213PD  Z13, Z21, Z25
+	VFMADD213PD  Z14, Z22, Z26
+	VFMADD213PD  Z15, Z23, Z27
+	VFMADD213PD  Z16, Z24, Z28
+	VPSLLQ       $0x3f, Z17, Z17
+	VPSLLQ       $0x3f, Z18, Z18
+	VPSLLQ       $0x3f, Z19, Z19
+	VPSLLQ       $0x3f, Z20, Z20
+	VPXORQ       Z17, Z25, Z25
+	VPXORQ       Z18, Z26, Z26
+	VPXORQ       Z19, Z27, Z27
+	VPXORQ       Z20, Z28, Z28
+	VMOVUPD      Z25, (AX)(BX*8)
+	VMOVUPD      Z26, 64(AX)(BX*8)
+	VMOVUPD      Z27, 128(AX)(BX*8)
+	VMOVUPD      Z28, 192(AX)(BX*8)
+	ADDQ         $0x20, BX
+	CMPQ         BX, DX
+	JL           loop
+	VPCMPUQ      $0x06, constant83a0000000000000<>+0(SB), Z12, K1
+	KMOVB        K1, AX
+	MOVQ         AX, ret+56(FP)
 	VZEROUPPER
 	RET
+
+DATA constant83a0000000000000<>+0(SB)/8, $0x83a0000000000000
+DATA constant83a0000000000000<>+8(SB)/8, $0x83a0000000000000
+DATA constant83a0000000000000<>+16(SB)/8, $0x83a0000000000000
+DATA constant83a0000000000000<>+24(SB)/8, $0x83a0000000000000
+DATA constant83a0000000000000<>+32(SB)/8, $0x83a0000000000000
+DATA constant83a0000000000000<>+40(SB)/8, $0x83a0000000000000
+DATA constant83a0000000000000<>+48(SB)/8, $0x83a0000000000000
+DATA constant83a0000000000000<>+56(SB)/8, $0x83a0000000000000
+GLOBL constant83a0000000000000<>(SB), RODATA|NOPTR, $64
 
 // func cosAVX512(d []float64, a []float64, c float64) uint64
 // Requires: AVX, AVX512DQ, AVX512F
@@ -1911,50 +2005,122 @@ TEXT ·cosAVX512(SB), NOSPLIT, $0-64
 	VMOVUPD      constant3ce89a3f165714c1<>+0(SB), Z8
 	VMOVUPD      constant3fd45f306dc9c883<>+0(SB), Z9
 	VMOVUPD      constant4338000000000000<>+0(SB), Z10
-	VMOVUPD      constantc00921fb54442d18<>+0(SB), Z11
-	VMOVUPD      constantbca1a62633145c07<>+0(SB), Z12
-	VMOVUPD      constant392f1976b7ed8fbc<>+0(SB), Z13
-	VMOVUPD      constantbfe0000000000000<>+0(SB), Z14
-	VMOVUPD      constant3fe0000000000000<>+0(SB), Z15
-	VMOVUPD      constant0000000000000001<>+0(SB), Z16
-	VPXORQ       Z17, Z17, Z17
+	VMOVUPD      constant400921fb54442d18<>+0(SB), Z11
+	VPXORQ       Z12, Z12, Z12
 	MOVQ         d_len+8(FP), DX
 	XORQ         BX, BX
 
 loop:
-	VMULPD      (CX)(BX*8), Z0, Z18
-	VPADDQ      Z18, Z18, Z19
-	VPMAXUQ     Z19, Z17, Z17
-	VMOVAPD     Z18, Z19
-	VFMADD213PD Z14, Z9, Z19
-	VADDPD      Z10, Z19, Z19
-	VSUBPD      Z10, Z19, Z20
-	VADDPD      Z15, Z20, Z20
-	VPADDQ      Z16, Z19, Z19
-	VMOVAPD     Z20, Z21
-	VFMADD213PD Z18, Z11, Z21
-	VFMADD231PD Z12, Z20, Z21
-	VFMADD231PD Z13, Z20, Z21
-	VMULPD      Z21, Z21, Z18
-	VMOVAPD     Z8, Z20
-	VFMADD213PD Z7, Z18, Z20
-	VFMADD213PD Z6, Z18, Z20
-	VFMADD213PD Z5, Z18, Z20
-	VFMADD213PD Z4, Z18, Z20
-	VFMADD213PD Z3, Z18, Z20
-	VFMADD213PD Z2, Z18, Z20
-	VFMADD213PD Z1, Z18, Z20
-	VMULPD      Z21, Z18, Z18
-	VFMADD213PD Z21, Z18, Z20
-	VPSLLQ      $0x3f, Z19, Z19
-	VPXORQ      Z19, Z20, Z20
-	VMOVUPD     Z20, (AX)(BX*8)
-	ADDQ        $0x08, BX
-	CMPQ        BX, DX
-	JL          loop
-	VPCMPUQ     $0x06, constant83a0000000000000<>+0(SB), Z17, K1
-	KMOVB       K1, AX
-	MOVQ        AX, ret+56(FP)
+	VMULPD       (CX)(BX*8), Z0, Z13
+	VMULPD       64(CX)(BX*8), Z0, Z14
+	VMULPD       128(CX)(BX*8), Z0, Z15
+	VMULPD       192(CX)(BX*8), Z0, Z16
+	VPADDQ       Z13, Z13, Z17
+	VPMAXUQ      Z17, Z12, Z12
+	VPADDQ       Z14, Z14, Z17
+	VPMAXUQ      Z17, Z12, Z12
+	VPADDQ       Z15, Z15, Z17
+	VPMAXUQ      Z17, Z12, Z12
+	VPADDQ       Z16, Z16, Z17
+	VPMAXUQ      Z17, Z12, Z12
+	VMOVAPD      Z13, Z17
+	VMOVAPD      Z14, Z18
+	VMOVAPD      Z15, Z19
+	VMOVAPD      Z16, Z20
+	VFMADD213PD  constantbfe0000000000000<>+0(SB), Z9, Z17
+	VFMADD213PD  constantbfe0000000000000<>+0(SB), Z9, Z18
+	VFMADD213PD  constantbfe0000000000000<>+0(SB), Z9, Z19
+	VFMADD213PD  constantbfe0000000000000<>+0(SB), Z9, Z20
+	VADDPD       Z10, Z17, Z17
+	VADDPD       Z10, Z18, Z18
+	VADDPD       Z10, Z19, Z19
+	VADDPD       Z10, Z20, Z20
+	VSUBPD       Z10, Z17, Z21
+	VSUBPD       Z10, Z18, Z22
+	VSUBPD       Z10, Z19, Z23
+	VSUBPD       Z10, Z20, Z24
+	VADDPD       constant3fe0000000000000<>+0(SB), Z21, Z21
+	VADDPD       constant3fe0000000000000<>+0(SB), Z22, Z22
+	VADDPD       constant3fe0000000000000<>+0(SB), Z23, Z23
+	VADDPD       constant3fe0000000000000<>+0(SB), Z24, Z24
+	VPADDQ       constant0000000000000001<>+0(SB), Z17, Z17
+	VPADDQ       constant0000000000000001<>+0(SB), Z18, Z18
+	VPADDQ       constant0000000000000001<>+0(SB), Z19, Z19
+	VPADDQ       constant0000000000000001<>+0(SB), Z20, Z20
+	VFNMADD231PD Z11, Z21, Z13
+	VFNMADD231PD Z11, Z22, Z14
+	VFNMADD231PD Z11, Z23, Z15
+	VFNMADD231PD Z11, Z24, Z16
+	VFNMADD231PD constant3ca1a62633145c07<>+0(SB), Z21, Z13
+	VFNMADD231PD constant3ca1a62633145c07<>+0(SB), Z22, Z14
+	VFNMADD231PD constant3ca1a62633145c07<>+0(SB), Z23, Z15
+	VFNMADD231PD constant3ca1a62633145c07<>+0(SB), Z24, Z16
+	VFNMADD231PD constantb92f1976b7ed8fbc<>+0(SB), Z21, Z13
+	VFNMADD231PD constantb92f1976b7ed8fbc<>+0(SB), Z22, Z14
+	VFNMADD231PD constantb92f1976b7ed8fbc<>+0(SB), Z23, Z15
+	VFNMADD231PD constantb92f1976b7ed8fbc<>+0(SB), Z24, Z16
+	VMULPD       Z13, Z13, Z21
+	VMULPD       Z14, Z14, Z22
+	VMULPD       Z15, Z15, Z23
+	VMULPD       Z16, Z16, Z24
+	VMOVAPD      Z8, Z25
+	VMOVAPD      Z8, Z26
+	VMOVAPD      Z8, Z27
+	VMOVAPD      Z8, Z28
+	VFMADD213PD  Z7, Z21, Z25
+	VFMADD213PD  Z7, Z22, Z26
+	VFMADD213PD  Z7, Z23, Z27
+	VFMADD213PD  Z7, Z24, Z28
+	VFMADD213PD  Z6, Z21, Z25
+	VFMADD213PD  Z6, Z22, Z26
+	VFMADD213PD  Z6, Z23, Z27
+	VFMADD213PD  Z6, Z24, Z28
+	VFMADD213PD  Z5, Z21, Z25
+	VFMADD213PD  Z5, Z22, Z26
+	VFMADD213PD  Z5, Z23, Z27
+	VFMADD213PD  Z5, Z24, Z28
+	VFMADD213PD  Z4, Z21, Z25
+	VFMADD213PD  Z4, Z22, Z26
+	VFMADD213PD  Z4, Z23, Z27
+	VFMADD213PD  Z4, Z24, Z28
+	VFMADD213PD  Z3, Z21, Z25
+	VFMADD213PD  Z3, Z22, Z26
+	VFMADD213PD  Z3, Z23, Z27
+	VFMADD213PD  Z3, Z24, Z28
+	VFMADD213PD  Z2, Z21, Z25
+	VFMADD213PD  Z2, Z22, Z26
+	VFMADD213PD  Z2, Z23, Z27
+	VFMADD213PD  Z2, Z24, Z28
+	VFMADD213PD  Z1, Z21, Z25
+	VFMADD213PD  Z1, Z22, Z26
+	VFMADD213PD  Z1, Z23, Z27
+	VFMADD213PD  Z1, Z24, Z28
+	VMULPD       Z13, Z21, Z21
+	VMULPD       Z14, Z22, Z22
+	VMULPD       Z15, Z23, Z23
+	VMULPD       Z16, Z24, Z24
+	VFMADD213PD  Z13, Z21, Z25
+	VFMADD213PD  Z14, Z22, Z26
+	VFMADD213PD  Z15, Z23, Z27
+	VFMADD213PD  Z16, Z24, Z28
+	VPSLLQ       $0x3f, Z17, Z17
+	VPSLLQ       $0x3f, Z18, Z18
+	VPSLLQ       $0x3f, Z19, Z19
+	VPSLLQ       $0x3f, Z20, Z20
+	VPXORQ       Z17, Z25, Z25
+	VPXORQ       Z18, Z26, Z26
+	VPXORQ       Z19, Z27, Z27
+	VPXORQ       Z20, Z28, Z28
+	VMOVUPD      Z25, (AX)(BX*8)
+	VMOVUPD      Z26, 64(AX)(BX*8)
+	VMOVUPD      Z27, 128(AX)(BX*8)
+	VMOVUPD      Z28, 192(AX)(BX*8)
+	ADDQ         $0x20, BX
+	CMPQ         BX, DX
+	JL           loop
+	VPCMPUQ      $0x06, constant83a0000000000000<>+0(SB), Z12, K1
+	KMOVB        K1, AX
+	MOVQ         AX, ret+56(FP)
 	VZEROUPPER
 	RET
 
@@ -1977,65 +2143,97 @@ TEXT ·sincosAVX512(SB), NOSPLIT, $0-88
 	VMOVUPD      constantbe927e4f809c52ad<>+0(SB), Z10
 	VMOVUPD      constant3e21ee9ebdb4b1c4<>+0(SB), Z11
 	VMOVUPD      constantbda8fae9be8838d4<>+0(SB), Z12
-	VMOVUPD      constantbfe0000000000000<>+0(SB), Z13
-	VMOVUPD      constant3ff0000000000000<>+0(SB), Z14
-	VMOVUPD      constant0000000000000001<>+0(SB), Z15
-	VMOVUPD      constant8000000000000000<>+0(SB), Z16
-	VMOVUPD      constant3fe45f306dc9c883<>+0(SB), Z17
-	VMOVUPD      constant4338000000000000<>+0(SB), Z18
-	VMOVUPD      constantbff921fb54442d18<>+0(SB), Z19
-	VMOVUPD      constantbc91a62633145c07<>+0(SB), Z20
-	VMOVUPD      constant391f1976b7ed8fbc<>+0(SB), Z21
-	VPXORQ       Z22, Z22, Z22
+	VMOVUPD      constant0000000000000001<>+0(SB), Z13
+	VMOVUPD      constant8000000000000000<>+0(SB), Z14
+	VMOVUPD      constant3fe45f306dc9c883<>+0(SB), Z15
+	VMOVUPD      constant4338000000000000<>+0(SB), Z16
+	VPXORQ       Z17, Z17, Z17
 	MOVQ         d_len+8(FP), BX
 	XORQ         SI, SI
 
 loop:
-	VMULPD      (DX)(SI*8), Z0, Z23
-	VPADDQ      Z23, Z23, Z24
-	VPMAXUQ     Z24, Z22, Z22
-	VMOVAPD     Z23, Z24
-	VFMADD213PD Z18, Z17, Z24
-	VSUBPD      Z18, Z24, Z27
-	VMOVAPD     Z27, Z28
-	VFMADD213PD Z23, Z19, Z28
-	VFMADD231PD Z20, Z27, Z28
-	VFMADD231PD Z21, Z27, Z28
-	VMULPD      Z28, Z28, Z23
-	VMOVAPD     Z6, Z27
-	VFMADD213PD Z5, Z23, Z27
-	VFMADD213PD Z4, Z23, Z27
-	VFMADD213PD Z3, Z23, Z27
-	VFMADD213PD Z2, Z23, Z27
-	VFMADD213PD Z1, Z23, Z27
-	VMOVAPD     Z12, Z29
-	VFMADD213PD Z11, Z23, Z29
-	VFMADD213PD Z10, Z23, Z29
-	VFMADD213PD Z9, Z23, Z29
-	VFMADD213PD Z8, Z23, Z29
-	VFMADD213PD Z7, Z23, Z29
-	VMULPD      Z23, Z28, Z30
-	VFMADD213PD Z28, Z27, Z30
-	VMOVAPD     Z13, Z27
-	VFMADD213PD Z14, Z23, Z27
-	VMULPD      Z23, Z23, Z23
-	VFMADD213PD Z27, Z29, Z23
-	VPTESTMQ    Z15, Z24, K1
-	VBLENDMPD   Z23, Z30, K1, Z25
-	VBLENDMPD   Z30, Z23, K1, Z26
-	VPSLLQ      $0x3e, Z24, Z23
-	VPTERNLOGQ  $0x78, Z16, Z23, Z25
-	VPADDQ      Z15, Z24, Z23
-	VPSLLQ      $0x3e, Z23, Z23
-	VPTERNLOGQ  $0x78, Z16, Z23, Z26
-	VMOVUPD     Z25, (AX)(SI*8)
-	VMOVUPD     Z26, (CX)(SI*8)
-	ADDQ        $0x08, SI
-	CMPQ        SI, BX
-	JL          loop
-	VPCMPUQ     $0x06, constant83a0000000000000<>+0(SB), Z22, K1
-	KMOVB       K1, AX
-	MOVQ        AX, ret+80(FP)
+	VMULPD       (DX)(SI*8), Z0, Z18
+	VMULPD       64(DX)(SI*8), Z0, Z19
+	VPADDQ       Z18, Z18, Z20
+	VPMAXUQ      Z20, Z17, Z17
+	VPADDQ       Z19, Z19, Z20
+	VPMAXUQ      Z20, Z17, Z17
+	VMOVAPD      Z18, Z20
+	VMOVAPD      Z19, Z25
+	VFMADD213PD  Z16, Z15, Z20
+	VFMADD213PD  Z16, Z15, Z25
+	VSUBPD       Z16, Z20, Z26
+	VSUBPD       Z16, Z25, Z27
+	VFNMADD231PD constant3ff921fb54442d18<>+0(SB), Z26, Z18
+	VFNMADD231PD constant3ff921fb54442d18<>+0(SB), Z27, Z19
+	VFNMADD231PD constant3c91a62633145c07<>+0(SB), Z26, Z18
+	VFNMADD231PD constant3c91a62633145c07<>+0(SB), Z27, Z19
+	VFNMADD231PD constantb91f1976b7ed8fbc<>+0(SB), Z26, Z18
+	VFNMADD231PD constantb91f1976b7ed8fbc<>+0(SB), Z27, Z19
+	VMULPD       Z18, Z18, Z26
+	VMULPD       Z19, Z19, Z27
+	VMOVAPD      Z6, Z28
+	VMOVAPD      Z6, Z29
+	VFMADD213PD  Z5, Z26, Z28
+	VFMADD213PD  Z5, Z27, Z29
+	VFMADD213PD  Z4, Z26, Z28
+	VFMADD213PD  Z4, Z27, Z29
+	VFMADD213PD  Z3, Z26, Z28
+	VFMADD213PD  Z3, Z27, Z29
+	VFMADD213PD  Z2, Z26, Z28
+	VFMADD213PD  Z2, Z27, Z29
+	VFMADD213PD  Z1, Z26, Z28
+	VFMADD213PD  Z1, Z27, Z29
+	VMULPD       Z26, Z18, Z30
+	VMULPD       Z27, Z19, Z31
+	VFMADD213PD  Z18, Z28, Z30
+	VFMADD213PD  Z19, Z29, Z31
+	VMOVAPD      Z12, Z18
+	VMOVAPD      Z12, Z19
+	VFMADD213PD  Z11, Z26, Z18
+	VFMADD213PD  Z11, Z27, Z19
+	VFMADD213PD  Z10, Z26, Z18
+	VFMADD213PD  Z10, Z27, Z19
+	VFMADD213PD  Z9, Z26, Z18
+	VFMADD213PD  Z9, Z27, Z19
+	VFMADD213PD  Z8, Z26, Z18
+	VFMADD213PD  Z8, Z27, Z19
+	VFMADD213PD  Z7, Z26, Z18
+	VFMADD213PD  Z7, Z27, Z19
+	VMOVUPD      constantbfe0000000000000<>+0(SB), Z28
+	VMOVUPD      constantbfe0000000000000<>+0(SB), Z29
+	VFMADD213PD  constant3ff0000000000000<>+0(SB), Z26, Z28
+	VFMADD213PD  constant3ff0000000000000<>+0(SB), Z27, Z29
+	VMULPD       Z26, Z26, Z26
+	VMULPD       Z27, Z27, Z27
+	VFMADD213PD  Z28, Z18, Z26
+	VFMADD213PD  Z29, Z19, Z27
+	VPTESTMQ     Z13, Z20, K1
+	VBLENDMPD    Z26, Z30, K1, Z21
+	VBLENDMPD    Z30, Z26, K1, Z23
+	VPTESTMQ     Z13, Z25, K1
+	VBLENDMPD    Z27, Z31, K1, Z22
+	VBLENDMPD    Z31, Z27, K1, Z24
+	VPSLLQ       $0x3e, Z20, Z18
+	VPSLLQ       $0x3e, Z25, Z19
+	VPTERNLOGQ   $0x78, Z14, Z18, Z21
+	VPTERNLOGQ   $0x78, Z14, Z19, Z22
+	VPADDQ       Z13, Z20, Z18
+	VPADDQ       Z13, Z25, Z19
+	VPSLLQ       $0x3e, Z18, Z18
+	VPSLLQ       $0x3e, Z19, Z19
+	VPTERNLOGQ   $0x78, Z14, Z18, Z23
+	VPTERNLOGQ   $0x78, Z14, Z19, Z24
+	VMOVUPD      Z21, (AX)(SI*8)
+	VMOVUPD      Z22, 64(AX)(SI*8)
+	VMOVUPD      Z23, (CX)(SI*8)
+	VMOVUPD      Z24, 64(CX)(SI*8)
+	ADDQ         $0x10, SI
+	CMPQ         SI, BX
+	JL           loop
+	VPCMPUQ      $0x06, constant83a0000000000000<>+0(SB), Z17, K1
+	KMOVB        K1, AX
+	MOVQ         AX, ret+80(FP)
 	VZEROUPPER
 	RET
 
@@ -2057,51 +2255,134 @@ TEXT ·expAVX512(SB), NOSPLIT, $0-64
 	VMOVUPD      constant3e5ae64567f544e4<>+0(SB), Z10
 	VMOVUPD      constant3e21eed8eff8d898<>+0(SB), Z11
 	VMOVUPD      constant3de6124613a86d09<>+0(SB), Z12
-	VMOVUPD      constant3ff71547652b82fe<>+0(SB), Z13
-	VMOVUPD      constant4338000000000000<>+0(SB), Z14
-	VMOVUPD      constantbfe62e42fee00000<>+0(SB), Z15
-	VMOVUPD      constantbdea39ef35793c76<>+0(SB), Z16
-	VMOVUPD      constant3ff0000000000000<>+0(SB), Z17
-	VPXORQ       Z18, Z18, Z18
+	VPXORQ       Z13, Z13, Z13
 	MOVQ         d_len+8(FP), DX
 	XORQ         BX, BX
 
 loop:
-	VMULPD      (CX)(BX*8), Z0, Z19
-	VPADDQ      Z19, Z19, Z20
-	VPMAXUQ     Z20, Z18, Z18
-	VMOVAPD     Z19, Z20
-	VFMADD213PD Z14, Z13, Z20
-	VSUBPD      Z14, Z20, Z21
-	VMOVAPD     Z21, Z22
-	VFMADD213PD Z19, Z15, Z22
-	VFMADD231PD Z16, Z21, Z22
-	VMOVAPD     Z12, Z19
-	VFMADD213PD Z11, Z22, Z19
-	VFMADD213PD Z10, Z22, Z19
-	VFMADD213PD Z9, Z22, Z19
-	VFMADD213PD Z8, Z22, Z19
-	VFMADD213PD Z7, Z22, Z19
-	VFMADD213PD Z6, Z22, Z19
-	VFMADD213PD Z5, Z22, Z19
-	VFMADD213PD Z4, Z22, Z19
-	VFMADD213PD Z3, Z22, Z19
-	VFMADD213PD Z2, Z22, Z19
-	VFMADD213PD Z1, Z22, Z19
-	VMULPD      Z22, Z22, Z21
-	VFMADD213PD Z22, Z19, Z21
-	VADDPD      Z17, Z21, Z21
-	VPSLLQ      $0x34, Z20, Z20
-	VPADDQ      Z20, Z21, Z21
-	VMOVUPD     Z21, (AX)(BX*8)
-	ADDQ        $0x08, BX
-	CMPQ        BX, DX
-	JL          loop
-	VPCMPUQ     $0x06, constant810c400000000000<>+0(SB), Z18, K1
-	KMOVB       K1, AX
-	MOVQ        AX, ret+56(FP)
+	VMULPD       (CX)(BX*8), Z0, Z14
+	VMULPD       64(CX)(BX*8), Z0, Z15
+	VMULPD       128(CX)(BX*8), Z0, Z16
+	VMULPD       192(CX)(BX*8), Z0, Z17
+	VPADDQ       Z14, Z14, Z18
+	VPMAXUQ      Z18, Z13, Z13
+	VPADDQ       Z15, Z15, Z18
+	VPMAXUQ      Z18, Z13, Z13
+	VPADDQ       Z16, Z16, Z18
+	VPMAXUQ      Z18, Z13, Z13
+	VPADDQ       Z17, Z17, Z18
+	VPMAXUQ      Z18, Z13, Z13
+	VMOVAPD      Z14, Z18
+	VMOVAPD      Z15, Z19
+	VMOVAPD      Z16, Z20
+	VMOVAPD      Z17, Z21
+	VMOVUPD      constant3ff71547652b82fe<>+0(SB), Z22
+	VFMADD213PD  constant4338000000000000<>+0(SB), Z22, Z18
+	VFMADD213PD  constant4338000000000000<>+0(SB), Z22, Z19
+	VFMADD213PD  constant4338000000000000<>+0(SB), Z22, Z20
+	VFMADD213PD  constant4338000000000000<>+0(SB), Z22, Z21
+	VSUBPD       constant4338000000000000<>+0(SB), Z18, Z22
+	VSUBPD       constant4338000000000000<>+0(SB), Z19, Z23
+	VSUBPD       constant4338000000000000<>+0(SB), Z20, Z24
+	VSUBPD       constant4338000000000000<>+0(SB), Z21, Z25
+	VFNMADD231PD constant3fe62e42fee00000<>+0(SB), Z22, Z14
+	VFNMADD231PD constant3fe62e42fee00000<>+0(SB), Z23, Z15
+	VFNMADD231PD constant3fe62e42fee00000<>+0(SB), Z24, Z16
+	VFNMADD231PD constant3fe62e42fee00000<>+0(SB), Z25, Z17
+	VFNMADD231PD constant3dea39ef35793c76<>+0(SB), Z22, Z14
+	VFNMADD231PD constant3dea39ef35793c76<>+0(SB), Z23, Z15
+	VFNMADD231PD constant3dea39ef35793c76<>+0(SB), Z24, Z16
+	VFNMADD231PD constant3dea39ef35793c76<>+0(SB), Z25, Z17
+	VMOVAPD      Z12, Z22
+	VMOVAPD      Z12, Z23
+	VMOVAPD      Z12, Z24
+	VMOVAPD      Z12, Z25
+	VFMADD213PD  Z11, Z14, Z22
+	VFMADD213PD  Z11, Z15, Z23
+	VFMADD213PD  Z11, Z16, Z24
+	VFMADD213PD  Z11, Z17, Z25
+	VFMADD213PD  Z10, Z14, Z22
+	VFMADD213PD  Z10, Z15, Z23
+	VFMADD213PD  Z10, Z16, Z24
+	VFMADD213PD  Z10, Z17, Z25
+	VFMADD213PD  Z9, Z14, Z22
+	VFMADD213PD  Z9, Z15, Z23
+	VFMADD213PD  Z9, Z16, Z24
+	VFMADD213PD  Z9, Z17, Z25
+	VFMADD213PD  Z8, Z14, Z22
+	VFMADD213PD  Z8, Z15, Z23
+	VFMADD213PD  Z8, Z16, Z24
+	VFMADD213PD  Z8, Z17, Z25
+	VFMADD213PD  Z7, Z14, Z22
+	VFMADD213PD  Z7, Z15, Z23
+	VFMADD213PD  Z7, Z16, Z24
+	VFMADD213PD  Z7, Z17, Z25
+	VFMADD213PD  Z6, Z14, Z22
+	VFMADD213PD  Z6, Z15, Z23
+	VFMADD213PD  Z6, Z16, Z24
+	VFMADD213PD  Z6, Z17, Z25
+	VFMADD213PD  Z5, Z14, Z22
+	VFMADD213PD  Z5, Z15, Z23
+	VFMADD213PD  Z5, Z16, Z24
+	VFMADD213PD  Z5, Z17, Z25
+	VFMADD213PD  Z4, Z14, Z22
+	VFMADD213PD  Z4, Z15, Z23
+	VFMADD213PD  Z4, Z16, Z24
+	VFMADD213PD  Z4, Z17, Z25
+	VFMADD213PD  Z3, Z14, Z22
+	VFMADD213PD  Z3, Z15, Z23
+	VFMADD213PD  Z3, Z16, Z24
+	VFMADD213PD  Z3, Z17, Z25
+	VFMADD213PD  Z2, Z14, Z22
+	VFMADD213PD  Z2, Z15, Z23
+	VFMADD213PD  Z2, Z16, Z24
+	VFMADD213PD  Z2, Z17, Z25
+	VFMADD213PD  Z1, Z14, Z22
+	VFMADD213PD  Z1, Z15, Z23
+	VFMADD213PD  Z1, Z16, Z24
+	VFMADD213PD  Z1, Z17, Z25
+	VMULPD       Z14, Z14, Z26
+	VMULPD       Z15, Z15, Z27
+	VMULPD       Z16, Z16, Z28
+	VMULPD       Z17, Z17, Z29
+	VFMADD213PD  Z14, Z22, Z26
+	VFMADD213PD  Z15, Z23, Z27
+	VFMADD213PD  Z16, Z24, Z28
+	VFMADD213PD  Z17, Z25, Z29
+	VADDPD       constant3ff0000000000000<>+0(SB), Z26, Z26
+	VADDPD       constant3ff0000000000000<>+0(SB), Z27, Z27
+	VADDPD       constant3ff0000000000000<>+0(SB), Z28, Z28
+	VADDPD       constant3ff0000000000000<>+0(SB), Z29, Z29
+	VPSLLQ       $0x34, Z18, Z18
+	VPSLLQ       $0x34, Z19, Z19
+	VPSLLQ       $0x34, Z20, Z20
+	VPSLLQ       $0x34, Z21, Z21
+	VPADDQ       Z18, Z26, Z26
+	VPADDQ       Z19, Z27, Z27
+	VPADDQ       Z20, Z28, Z28
+	VPADDQ       Z21, Z29, Z29
+	VMOVUPD      Z26, (AX)(BX*8)
+	VMOVUPD      Z27, 64(AX)(BX*8)
+	VMOVUPD      Z28, 128(AX)(BX*8)
+	VMOVUPD      Z29, 192(AX)(BX*8)
+	ADDQ         $0x20, BX
+	CMPQ         BX, DX
+	JL           loop
+	VPCMPUQ      $0x06, constant810c400000000000<>+0(SB), Z13, K1
+	KMOVB        K1, AX
+	MOVQ         AX, ret+56(FP)
 	VZEROUPPER
 	RET
+
+DATA constant810c400000000000<>+0(SB)/8, $0x810c400000000000
+DATA constant810c400000000000<>+8(SB)/8, $0x810c400000000000
+DATA constant810c400000000000<>+16(SB)/8, $0x810c400000000000
+DATA constant810c400000000000<>+24(SB)/8, $0x810c400000000000
+DATA constant810c400000000000<>+32(SB)/8, $0x810c400000000000
+DATA constant810c400000000000<>+40(SB)/8, $0x810c400000000000
+DATA constant810c400000000000<>+48(SB)/8, $0x810c400000000000
+DATA constant810c400000000000<>+56(SB)/8, $0x810c400000000000
+GLOBL constant810c400000000000<>(SB), RODATA|NOPTR, $64
 
 // func logAVX512(d []float64, a []float64) uint64
 // Requires: AVX, AVX512DQ, AVX512F
@@ -2129,35 +2410,64 @@ TEXT ·logAVX512(SB), NOSPLIT, $0-56
 
 loop:
 	VMOVUPD     (CX)(BX*8), Z16
-	VPSUBQ      Z6, Z16, Z17
-	VPMAXUQ     Z17, Z15, Z15
-	VPSUBQ      Z14, Z16, Z17
-	VPSRAQ      $0x34, Z17, Z17
-	VPSLLQ      $0x34, Z17, Z18
-	VPSUBQ      Z18, Z16, Z18
-	VPADDQ      Z0, Z17, Z17
-	VSUBPD      Z0, Z17, Z17
-	VSUBPD      Z1, Z18, Z18
-	VADDPD      Z2, Z18, Z16
-	VDIVPD      Z16, Z18, Z16
-	VMULPD      Z16, Z16, Z19
-	VMOVAPD     Z13, Z20
-	VFMADD213PD Z12, Z19, Z20
-	VFMADD213PD Z11, Z19, Z20
-	VFMADD213PD Z10, Z19, Z20
-	VFMADD213PD Z9, Z19, Z20
-	VFMADD213PD Z8, Z19, Z20
-	VFMADD213PD Z7, Z19, Z20
-	VMULPD      Z3, Z18, Z21
-	VMULPD      Z18, Z21, Z21
-	VFMADD213PD Z21, Z20, Z19
-	VMULPD      Z4, Z17, Z20
-	VFMADD213PD Z20, Z19, Z16
-	VSUBPD      Z16, Z21, Z21
-	VSUBPD      Z21, Z18, Z18
-	VFMADD213PD Z18, Z5, Z17
-	VMOVUPD     Z17, (AX)(BX*8)
-	ADDQ        $0x08, BX
+	VMOVUPD     64(CX)(BX*8), Z17
+	VPSUBQ      Z6, Z16, Z18
+	VPMAXUQ     Z18, Z15, Z15
+	VPSUBQ      Z6, Z17, Z18
+	VPMAXUQ     Z18, Z15, Z15
+	VPSUBQ      Z14, Z16, Z18
+	VPSUBQ      Z14, Z17, Z19
+	VPSRAQ      $0x34, Z18, Z18
+	VPSRAQ      $0x34, Z19, Z19
+	VPSLLQ      $0x34, Z18, Z20
+	VPSLLQ      $0x34, Z19, Z21
+	VPSUBQ      Z20, Z16, Z20
+	VPSUBQ      Z21, Z17, Z21
+	VPADDQ      Z0, Z18, Z18
+	VPADDQ      Z0, Z19, Z19
+	VSUBPD      Z0, Z18, Z18
+	VSUBPD      Z0, Z19, Z19
+	VSUBPD      Z1, Z20, Z20
+	VSUBPD      Z1, Z21, Z21
+	VADDPD      Z2, Z20, Z16
+	VADDPD      Z2, Z21, Z17
+	VDIVPD      Z16, Z20, Z16
+	VDIVPD      Z17, Z21, Z17
+	VMULPD      Z16, Z16, Z22
+	VMULPD      Z17, Z17, Z23
+	VMOVAPD     Z13, Z24
+	VMOVAPD     Z13, Z25
+	VFMADD213PD Z12, Z22, Z24
+	VFMADD213PD Z12, Z23, Z25
+	VFMADD213PD Z11, Z22, Z24
+	VFMADD213PD Z11, Z23, Z25
+	VFMADD213PD Z10, Z22, Z24
+	VFMADD213PD Z10, Z23, Z25
+	VFMADD213PD Z9, Z22, Z24
+	VFMADD213PD Z9, Z23, Z25
+	VFMADD213PD Z8, Z22, Z24
+	VFMADD213PD Z8, Z23, Z25
+	VFMADD213PD Z7, Z22, Z24
+	VFMADD213PD Z7, Z23, Z25
+	VMULPD      Z3, Z20, Z26
+	VMULPD      Z3, Z21, Z27
+	VMULPD      Z20, Z26, Z26
+	VMULPD      Z21, Z27, Z27
+	VFMADD213PD Z26, Z24, Z22
+	VFMADD213PD Z27, Z25, Z23
+	VMULPD      Z4, Z18, Z24
+	VMULPD      Z4, Z19, Z25
+	VFMADD213PD Z24, Z22, Z16
+	VFMADD213PD Z25, Z23, Z17
+	VSUBPD      Z16, Z26, Z26
+	VSUBPD      Z17, Z27, Z27
+	VSUBPD      Z26, Z20, Z20
+	VSUBPD      Z27, Z21, Z21
+	VFMADD213PD Z20, Z5, Z18
+	VFMADD213PD Z21, Z5, Z19
+	VMOVUPD     Z18, (AX)(BX*8)
+	VMOVUPD     Z19, 64(AX)(BX*8)
+	ADDQ        $0x10, BX
 	CMPQ        BX, DX
 	JL          loop
 	VPCMPUQ     $0x06, constant7fdfffffffffffff<>+0(SB), Z15, K1
@@ -2165,6 +2475,16 @@ loop:
 	MOVQ        AX, ret+48(FP)
 	VZEROUPPER
 	RET
+
+DATA constant7fdfffffffffffff<>+0(SB)/8, $0x7fdfffffffffffff
+DATA constant7fdfffffffffffff<>+8(SB)/8, $0x7fdfffffffffffff
+DATA constant7fdfffffffffffff<>+16(SB)/8, $0x7fdfffffffffffff
+DATA constant7fdfffffffffffff<>+24(SB)/8, $0x7fdfffffffffffff
+DATA constant7fdfffffffffffff<>+32(SB)/8, $0x7fdfffffffffffff
+DATA constant7fdfffffffffffff<>+40(SB)/8, $0x7fdfffffffffffff
+DATA constant7fdfffffffffffff<>+48(SB)/8, $0x7fdfffffffffffff
+DATA constant7fdfffffffffffff<>+56(SB)/8, $0x7fdfffffffffffff
+GLOBL constant7fdfffffffffffff<>(SB), RODATA|NOPTR, $64
 
 // func uniformsAVX512(state *[4][8]uint64, u []float64, v []float64)
 // Requires: AVX, AVX512F
@@ -2225,99 +2545,151 @@ loop:
 TEXT ·boxerAVX512(SB), NOSPLIT, $0-48
 	MOVQ    u_base+0(FP), AX
 	MOVQ    v_base+24(FP), CX
-	VMOVUPD constantbfc5555555555549<>+0(SB), Z0
-	VMOVUPD constant3f8111111110f8a6<>+0(SB), Z1
-	VMOVUPD constantbf2a01a019c161d5<>+0(SB), Z2
-	VMOVUPD constant3ec71de357b1fe7d<>+0(SB), Z3
-	VMOVUPD constantbe5ae5e68a2b9ceb<>+0(SB), Z4
-	VMOVUPD constant3de5d93a5acfd57c<>+0(SB), Z5
-	VMOVUPD constant3fa555555555554c<>+0(SB), Z6
-	VMOVUPD constantbf56c16c16c15177<>+0(SB), Z7
-	VMOVUPD constant3efa01a019cb1590<>+0(SB), Z8
-	VMOVUPD constantbe927e4f809c52ad<>+0(SB), Z9
-	VMOVUPD constant3e21ee9ebdb4b1c4<>+0(SB), Z10
-	VMOVUPD constantbda8fae9be8838d4<>+0(SB), Z11
-	VMOVUPD constantbfe0000000000000<>+0(SB), Z12
-	VMOVUPD constant3ff0000000000000<>+0(SB), Z13
-	VMOVUPD constant0000000000000001<>+0(SB), Z14
-	VMOVUPD constant8000000000000000<>+0(SB), Z15
-	VMOVUPD constant4338000000000000<>+0(SB), Z16
-	VMOVUPD constant4000000000000000<>+0(SB), Z17
-	VMOVUPD constant3fe0000000000000<>+0(SB), Z18
-	VMOVUPD constant3fe6a09e667f3bcd<>+0(SB), Z19
+	VMOVUPD constant4338000000000000<>+0(SB), Z0
+	VMOVUPD constant3ff0000000000000<>+0(SB), Z1
+	VMOVUPD constant4000000000000000<>+0(SB), Z2
+	VMOVUPD constant3fe0000000000000<>+0(SB), Z3
+	VMOVUPD constant0000000000000001<>+0(SB), Z4
+	VMOVUPD constant8000000000000000<>+0(SB), Z5
+	VMOVUPD constant3fe6a09e667f3bcd<>+0(SB), Z6
 	MOVQ    u_len+8(FP), DX
 	XORQ    BX, BX
 
 loop:
-	VMOVUPD     (AX)(BX*8), Z20
-	VPSUBQ      Z19, Z20, Z21
-	VPSRAQ      $0x34, Z21, Z21
-	VPSLLQ      $0x34, Z21, Z22
-	VPSUBQ      Z22, Z20, Z22
-	VPADDQ      Z16, Z21, Z21
-	VSUBPD      Z16, Z21, Z21
-	VSUBPD      Z13, Z22, Z22
-	VADDPD      Z17, Z22, Z20
-	VDIVPD      Z20, Z22, Z20
-	VMULPD      Z20, Z20, Z25
-	VMOVUPD     constant3fc2f112df3e5244<>+0(SB), Z26
-	VFMADD213PD constant3fc39a09d078c69f<>+0(SB), Z25, Z26
-	VFMADD213PD constant3fc7466496cb03de<>+0(SB), Z25, Z26
-	VFMADD213PD constant3fcc71c51d8e78af<>+0(SB), Z25, Z26
-	VFMADD213PD constant3fd2492494229359<>+0(SB), Z25, Z26
-	VFMADD213PD constant3fd999999997fa04<>+0(SB), Z25, Z26
-	VFMADD213PD constant3fe5555555555593<>+0(SB), Z25, Z26
-	VMULPD      Z18, Z22, Z27
-	VMULPD      Z22, Z27, Z27
-	VFMADD213PD Z27, Z26, Z25
-	VMULPD      constant3dea39ef35793c76<>+0(SB), Z21, Z26
-	VFMADD213PD Z26, Z25, Z20
-	VSUBPD      Z20, Z27, Z27
-	VSUBPD      Z27, Z22, Z22
-	VMOVUPD     constant3fe62e42fee00000<>+0(SB), Z20
-	VFMADD213PD Z22, Z20, Z21
-	VMULPD      constantc000000000000000<>+0(SB), Z21, Z21
-	VSQRTPD     Z21, Z21
-	VMOVUPD     (CX)(BX*8), Z20
-	VMOVAPD     Z20, Z22
-	VMOVUPD     constant4010000000000000<>+0(SB), Z25
-	VFMADD213PD Z16, Z25, Z22
-	VSUBPD      Z16, Z22, Z25
-	VMOVUPD     constantbfd0000000000000<>+0(SB), Z26
-	VFMADD213PD Z20, Z26, Z25
-	VMULPD      constant401921fb54442d18<>+0(SB), Z25, Z25
-	VMULPD      Z25, Z25, Z20
-	VMOVAPD     Z5, Z26
-	VFMADD213PD Z4, Z20, Z26
-	VFMADD213PD Z3, Z20, Z26
-	VFMADD213PD Z2, Z20, Z26
-	VFMADD213PD Z1, Z20, Z26
-	VFMADD213PD Z0, Z20, Z26
-	VMOVAPD     Z11, Z27
-	VFMADD213PD Z10, Z20, Z27
-	VFMADD213PD Z9, Z20, Z27
-	VFMADD213PD Z8, Z20, Z27
-	VFMADD213PD Z7, Z20, Z27
-	VFMADD213PD Z6, Z20, Z27
-	VMULPD      Z20, Z25, Z28
-	VFMADD213PD Z25, Z26, Z28
-	VMOVAPD     Z12, Z25
-	VFMADD213PD Z13, Z20, Z25
-	VMULPD      Z20, Z20, Z20
-	VFMADD213PD Z25, Z27, Z20
-	VPTESTMQ    Z14, Z22, K1
-	VBLENDMPD   Z20, Z28, K1, Z23
-	VBLENDMPD   Z28, Z20, K1, Z24
-	VPSLLQ      $0x3e, Z22, Z20
-	VPTERNLOGQ  $0x78, Z15, Z20, Z23
-	VPADDQ      Z14, Z22, Z20
-	VPSLLQ      $0x3e, Z20, Z20
-	VPTERNLOGQ  $0x78, Z15, Z20, Z24
-	VMULPD      Z21, Z24, Z24
-	VMULPD      Z21, Z23, Z23
-	VMOVUPD     Z24, (AX)(BX*8)
-	VMOVUPD     Z23, (CX)(BX*8)
-	ADDQ        $0x08, BX
+	VMOVUPD     (AX)(BX*8), Z7
+	VMOVUPD     64(AX)(BX*8), Z8
+	VPSUBQ      Z6, Z7, Z9
+	VPSUBQ      Z6, Z8, Z10
+	VPSRAQ      $0x34, Z9, Z9
+	VPSRAQ      $0x34, Z10, Z10
+	VPSLLQ      $0x34, Z9, Z11
+	VPSLLQ      $0x34, Z10, Z12
+	VPSUBQ      Z11, Z7, Z11
+	VPSUBQ      Z12, Z8, Z12
+	VPADDQ      Z0, Z9, Z9
+	VPADDQ      Z0, Z10, Z10
+	VSUBPD      Z0, Z9, Z9
+	VSUBPD      Z0, Z10, Z10
+	VSUBPD      Z1, Z11, Z11
+	VSUBPD      Z1, Z12, Z12
+	VADDPD      Z2, Z11, Z7
+	VADDPD      Z2, Z12, Z8
+	VDIVPD      Z7, Z11, Z7
+	VDIVPD      Z8, Z12, Z8
+	VMULPD      Z7, Z7, Z17
+	VMULPD      Z8, Z8, Z18
+	VMOVUPD     constant3fc2f112df3e5244<>+0(SB), Z19
+	VMOVUPD     constant3fc2f112df3e5244<>+0(SB), Z20
+	VFMADD213PD constant3fc39a09d078c69f<>+0(SB), Z17, Z19
+	VFMADD213PD constant3fc39a09d078c69f<>+0(SB), Z18, Z20
+	VFMADD213PD constant3fc7466496cb03de<>+0(SB), Z17, Z19
+	VFMADD213PD constant3fc7466496cb03de<>+0(SB), Z18, Z20
+	VFMADD213PD constant3fcc71c51d8e78af<>+0(SB), Z17, Z19
+	VFMADD213PD constant3fcc71c51d8e78af<>+0(SB), Z18, Z20
+	VFMADD213PD constant3fd2492494229359<>+0(SB), Z17, Z19
+	VFMADD213PD constant3fd2492494229359<>+0(SB), Z18, Z20
+	VFMADD213PD constant3fd999999997fa04<>+0(SB), Z17, Z19
+	VFMADD213PD constant3fd999999997fa04<>+0(SB), Z18, Z20
+	VFMADD213PD constant3fe5555555555593<>+0(SB), Z17, Z19
+	VFMADD213PD constant3fe5555555555593<>+0(SB), Z18, Z20
+	VMULPD      Z3, Z11, Z21
+	VMULPD      Z3, Z12, Z22
+	VMULPD      Z11, Z21, Z21
+	VMULPD      Z12, Z22, Z22
+	VFMADD213PD Z21, Z19, Z17
+	VFMADD213PD Z22, Z20, Z18
+	VMULPD      constant3dea39ef35793c76<>+0(SB), Z9, Z19
+	VMULPD      constant3dea39ef35793c76<>+0(SB), Z10, Z20
+	VFMADD213PD Z19, Z17, Z7
+	VFMADD213PD Z20, Z18, Z8
+	VSUBPD      Z7, Z21, Z21
+	VSUBPD      Z8, Z22, Z22
+	VSUBPD      Z21, Z11, Z11
+	VSUBPD      Z22, Z12, Z12
+	VMOVUPD     constant3fe62e42fee00000<>+0(SB), Z7
+	VFMADD213PD Z11, Z7, Z9
+	VFMADD213PD Z12, Z7, Z10
+	VMULPD      constantc000000000000000<>+0(SB), Z9, Z9
+	VMULPD      constantc000000000000000<>+0(SB), Z10, Z10
+	VSQRTPD     Z9, Z9
+	VSQRTPD     Z10, Z10
+	VMOVUPD     (CX)(BX*8), Z7
+	VMOVUPD     64(CX)(BX*8), Z8
+	VMOVAPD     Z7, Z11
+	VMOVAPD     Z8, Z12
+	VMOVUPD     constant4010000000000000<>+0(SB), Z17
+	VFMADD213PD Z0, Z17, Z11
+	VFMADD213PD Z0, Z17, Z12
+	VSUBPD      Z0, Z11, Z17
+	VSUBPD      Z0, Z12, Z18
+	VMOVUPD     constantbfd0000000000000<>+0(SB), Z19
+	VFMADD213PD Z7, Z19, Z17
+	VFMADD213PD Z8, Z19, Z18
+	VMULPD      constant401921fb54442d18<>+0(SB), Z17, Z17
+	VMULPD      constant401921fb54442d18<>+0(SB), Z18, Z18
+	VMULPD      Z17, Z17, Z7
+	VMULPD      Z18, Z18, Z8
+	VMOVUPD     constant3de5d93a5acfd57c<>+0(SB), Z19
+	VMOVUPD     constant3de5d93a5acfd57c<>+0(SB), Z20
+	VFMADD213PD constantbe5ae5e68a2b9ceb<>+0(SB), Z7, Z19
+	VFMADD213PD constantbe5ae5e68a2b9ceb<>+0(SB), Z8, Z20
+	VFMADD213PD constant3ec71de357b1fe7d<>+0(SB), Z7, Z19
+	VFMADD213PD constant3ec71de357b1fe7d<>+0(SB), Z8, Z20
+	VFMADD213PD constantbf2a01a019c161d5<>+0(SB), Z7, Z19
+	VFMADD213PD constantbf2a01a019c161d5<>+0(SB), Z8, Z20
+	VFMADD213PD constant3f8111111110f8a6<>+0(SB), Z7, Z19
+	VFMADD213PD constant3f8111111110f8a6<>+0(SB), Z8, Z20
+	VFMADD213PD constantbfc5555555555549<>+0(SB), Z7, Z19
+	VFMADD213PD constantbfc5555555555549<>+0(SB), Z8, Z20
+	VMULPD      Z7, Z17, Z21
+	VMULPD      Z8, Z18, Z22
+	VFMADD213PD Z17, Z19, Z21
+	VFMADD213PD Z18, Z20, Z22
+	VMOVUPD     constantbda8fae9be8838d4<>+0(SB), Z17
+	VMOVUPD     constantbda8fae9be8838d4<>+0(SB), Z18
+	VFMADD213PD constant3e21ee9ebdb4b1c4<>+0(SB), Z7, Z17
+	VFMADD213PD constant3e21ee9ebdb4b1c4<>+0(SB), Z8, Z18
+	VFMADD213PD constantbe927e4f809c52ad<>+0(SB), Z7, Z17
+	VFMADD213PD constantbe927e4f809c52ad<>+0(SB), Z8, Z18
+	VFMADD213PD constant3efa01a019cb1590<>+0(SB), Z7, Z17
+	VFMADD213PD constant3efa01a019cb1590<>+0(SB), Z8, Z18
+	VFMADD213PD constantbf56c16c16c15177<>+0(SB), Z7, Z17
+	VFMADD213PD constantbf56c16c16c15177<>+0(SB), Z8, Z18
+	VFMADD213PD constant3fa555555555554c<>+0(SB), Z7, Z17
+	VFMADD213PD constant3fa555555555554c<>+0(SB), Z8, Z18
+	VMOVUPD     constantbfe0000000000000<>+0(SB), Z19
+	VMOVUPD     constantbfe0000000000000<>+0(SB), Z20
+	VFMADD213PD Z1, Z7, Z19
+	VFMADD213PD Z1, Z8, Z20
+	VMULPD      Z7, Z7, Z7
+	VMULPD      Z8, Z8, Z8
+	VFMADD213PD Z19, Z17, Z7
+	VFMADD213PD Z20, Z18, Z8
+	VPTESTMQ    Z4, Z11, K1
+	VBLENDMPD   Z7, Z21, K1, Z13
+	VBLENDMPD   Z21, Z7, K1, Z15
+	VPTESTMQ    Z4, Z12, K1
+	VBLENDMPD   Z8, Z22, K1, Z14
+	VBLENDMPD   Z22, Z8, K1, Z16
+	VPSLLQ      $0x3e, Z11, Z7
+	VPSLLQ      $0x3e, Z12, Z8
+	VPTERNLOGQ  $0x78, Z5, Z7, Z13
+	VPTERNLOGQ  $0x78, Z5, Z8, Z14
+	VPADDQ      Z4, Z11, Z7
+	VPADDQ      Z4, Z12, Z8
+	VPSLLQ      $0x3e, Z7, Z7
+	VPSLLQ      $0x3e, Z8, Z8
+	VPTERNLOGQ  $0x78, Z5, Z7, Z15
+	VPTERNLOGQ  $0x78, Z5, Z8, Z16
+	VMULPD      Z9, Z15, Z15
+	VMULPD      Z10, Z16, Z16
+	VMULPD      Z9, Z13, Z13
+	VMULPD      Z10, Z14, Z14
+	VMOVUPD     Z15, (AX)(BX*8)
+	VMOVUPD     Z16, 64(AX)(BX*8)
+	VMOVUPD     Z13, (CX)(BX*8)
+	VMOVUPD     Z14, 64(CX)(BX*8)
+	ADDQ        $0x10, BX
 	CMPQ        BX, DX
 	JL          loop
 	VZEROUPPER

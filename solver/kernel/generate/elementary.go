@@ -58,42 +58,44 @@ func newGuard(limit float64) *guard {
 }
 
 // modulus notes where |x| exceeds the limit or x is not a number.
-func (g *guard) modulus(x V) {
-	t := vector()
-	if wide() {
-		VPADDQ(x, x, t) // shifts the sign out
-		VPMAXUQ(t, g.worst, g.worst)
-		return
+func (g *guard) modulus(xs group) {
+	for _, x := range xs {
+		t := vector()
+		if wide() {
+			VPADDQ(x, x, t) // shifts the sign out
+			VPMAXUQ(t, g.worst, g.worst)
+			continue
+		}
+		and(word(absMask), x, t)
+		VCMPPD(Imm(notLessEqual), number(g.limit), t, t)
+		or(t, g.worst, g.worst)
 	}
-	and(number2(absMask), x, t)
-	VCMPPD(Imm(notLessEqual), get(number(g.limit)), t, t)
-	or(t, g.worst, g.worst)
 }
-
-func number2(bits uint64) Op { return get(word(bits)) }
 
 // normal notes where x is not a positive normal number.
-func (g *guard) normal(x V) {
-	t := vector()
-	if wide() {
-		VPSUBQ(get(number(minNorm)), x, t)
-		VPMAXUQ(t, g.worst, g.worst)
-		return
+func (g *guard) normal(xs group) {
+	for _, x := range xs {
+		t := vector()
+		if wide() {
+			VPSUBQ(get(number(minNorm)), x, t)
+			VPMAXUQ(t, g.worst, g.worst)
+			continue
+		}
+		VCMPPD(Imm(notGreaterEqual), number(minNorm), x, t)
+		or(t, g.worst, g.worst)
+		u := vector()
+		VCMPPD(Imm(notLessEqual), number(maxNorm), x, u)
+		or(u, g.worst, g.worst)
 	}
-	VCMPPD(Imm(notGreaterEqual), get(number(minNorm)), x, t)
-	or(t, g.worst, g.worst)
-	u := vector()
-	VCMPPD(Imm(notLessEqual), get(number(maxNorm)), x, u)
-	or(u, g.worst, g.worst)
 }
 
-// result stores a number other than zero when something was noted; limit is the
+// result returns a number other than zero when something was noted; limit is the
 // largest allowed pattern of the wide form.
-func (g *guard) result(limit Mem) {
+func (g *guard) result(limit uint64) {
 	r := GP64()
 	if wide() {
 		k := K()
-		VPCMPUQ(Imm(6), limit, g.worst, k) // greater
+		VPCMPUQ(Imm(6), word(limit), g.worst, k) // greater
 		KMOVB(k, r.As32())
 	} else {
 		VMOVMSKPD(g.worst, r.As32())
@@ -101,8 +103,6 @@ func (g *guard) result(limit Mem) {
 	Store(r, ReturnIndex(0))
 	done()
 }
-
-func doubled(x float64) Mem { return word(bitsOf(x) << 1) }
 
 func elementary() {
 	halfturns("sin", false)
@@ -112,209 +112,225 @@ func elementary() {
 	logarithm()
 }
 
-// reduce subtracts the multiple kf of a period whose negated parts are given.
-func reduce(x, kf V, a, b, c float64) V {
-	r := load(kf)
-	VFMADD213PD(x, inRegister(number(-a)), r)
-	VFMADD231PD(get(number(-b)), kf, r)
-	VFMADD231PD(get(number(-c)), kf, r)
-	return r
+// pick returns the number of vectors of a group in the narrow and the wide form.
+func pick(narrow, wideForm int) int {
+	if wide() {
+		return wideForm
+	}
+	return narrow
+}
+
+// reduce subtracts from x the multiples kf of a period given in three parts.
+func reduce(x, kf group, a, b, c float64) {
+	for _, part := range []float64{a, b, c} {
+		each(VFNMADD231PD, get(number(part)), kf, x)
+	}
 }
 
 // halfturns is Sin or Cos: reduction modulo pi and one odd polynomial.
 func halfturns(name string, cosine bool) {
 	function(name, "func(d, a []float64, c float64) uint64")
 	d, a, c := base("d"), base("a"), broadcast("c")
+	n := pick(2, 4)
 	poly := numbers(sinWide...)
-	hold(append(poly, numbers(invPi, magic, -piA, -piB, -piC, -0.5, 0.5)...)...)
-	if wide() && cosine {
-		held[word(1).Symbol.Name] = load(word(1))
-	}
+	hold(append(poly, numbers(invPi, magic, piA)...)...)
 	g := newGuard(trigMax)
-	loop("d", width, func(i reg.GPVirtual) {
-		x := vector()
-		VMULPD(at(a, i, 0), c, x)
+	loop("d", n*width, func(i reg.GPVirtual) {
+		x := scaled(c, places(n, a, i))
 		g.modulus(x)
-		t, kf := load(x), vector()
+		t, kf := copies(n, x), vectors(n)
 		if cosine {
-			VFMADD213PD(get(number(-0.5)), inRegister(number(invPi)), t)
-			VADDPD(get(number(magic)), t, t)
-			VSUBPD(get(number(magic)), t, kf)
-			VADDPD(get(number(0.5)), kf, kf)
-			VPADDQ(get(word(1)), t, t)
+			each(VFMADD213PD, get(number(-0.5)), inRegister(number(invPi)), t)
+			each(VADDPD, get(number(magic)), t, t)
+			each(VSUBPD, get(number(magic)), t, kf)
+			each(VADDPD, get(number(0.5)), kf, kf)
+			each(VPADDQ, word(1), t, t)
 		} else {
-			VFMADD213PD(get(number(magic)), inRegister(number(invPi)), t)
-			VSUBPD(get(number(magic)), t, kf)
+			each(VFMADD213PD, get(number(magic)), inRegister(number(invPi)), t)
+			each(VSUBPD, get(number(magic)), t, kf)
 		}
-		r := reduce(x, kf, piA, piB, piC)
-		z := vector()
-		VMULPD(r, r, z)
+		reduce(x, kf, piA, piB, piC)
+		z := vectors(n)
+		each(VMULPD, x, x, z)
 		p := horner(z, poly)
-		VMULPD(r, z, z)
-		VFMADD213PD(r, z, p)
-		VPSLLQ(Imm(63), t, t)
-		xor(t, p, p)
-		VMOVUPD(p, at(d, i, 0))
+		each(VMULPD, x, z, z)
+		each(VFMADD213PD, x, z, p)
+		each(VPSLLQ, Imm(63), t, t)
+		each(xor, t, p, p)
+		store(p, places(n, d, i))
 	})
-	g.result(doubled(trigMax))
+	g.result(bitsOf(trigMax) << 1)
 }
 
 // holdQuadrant keeps the constants of quadrant.
 func holdQuadrant(more ...Mem) {
 	all := append(numbers(sinNarrow...), numbers(cosNarrow...)...)
-	all = append(all, number(-0.5), number(1), word(1), word(sign))
-	hold(append(all, more...)...)
+	hold(append(append(all, word(1), word(sign)), more...)...)
 }
 
 // quadrant returns sine and cosine of r + k*pi/2, |r| <= pi/4.
-func quadrant(r, k V) (s, c V) {
-	z := vector()
-	VMULPD(r, r, z)
+func quadrant(r, k group) (s, c group) {
+	n := len(r)
+	z := vectors(n)
+	each(VMULPD, r, r, z)
 	ps := horner(z, numbers(sinNarrow...))
+	s = vectors(n)
+	each(VMULPD, z, r, s)
+	each(VFMADD213PD, r, ps, s)
 	pc := horner(z, numbers(cosNarrow...))
-	s = vector()
-	VMULPD(z, r, s)
-	VFMADD213PD(r, ps, s)
-	h := constant(number(-0.5))
-	VFMADD213PD(get(number(1)), z, h)
-	VMULPD(z, z, z)
-	VFMADD213PD(h, pc, z)
+	h := copies(n, get(number(-0.5)))
+	each(VFMADD213PD, get(number(1)), z, h)
+	each(VMULPD, z, z, z)
+	each(VFMADD213PD, h, pc, z)
 	c = z
 	if wide() {
-		odd := K()
-		VPTESTMQ(inRegister(word(1)), k, odd)
-		s2, c2 := vector(), vector()
-		VBLENDMPD(c, s, odd, s2)
-		VBLENDMPD(s, c, odd, c2)
-		t, u := vector(), vector()
-		VPSLLQ(Imm(62), k, t)
-		VPTERNLOGQ(Imm(0x78), inRegister(word(sign)), t, s2) // s2 ^ (t & sign)
-		VPADDQ(inRegister(word(1)), k, u)
-		VPSLLQ(Imm(62), u, u)
-		VPTERNLOGQ(Imm(0x78), inRegister(word(sign)), u, c2)
-		return s2, c2
+		return turnWide(s, c, k)
 	}
-	m, zero, x := vector(), vector(), vector()
-	and(word(1), k, m)
-	xor(zero, zero, zero)
-	VPSUBQ(m, zero, m)
-	xor(s, c, x)
-	and(m, x, x)
-	xor(x, s, s)
-	xor(x, c, c)
-	t, u := vector(), vector()
-	VPSLLQ(Imm(62), k, t)
-	and(word(sign), t, t)
-	xor(t, s, s)
-	VPADDQ(word(1), k, u)
-	VPSLLQ(Imm(62), u, u)
-	and(word(sign), u, u)
-	xor(u, c, c)
+	turnNarrow(s, c, k)
 	return s, c
+}
+
+// turnWide exchanges sine and cosine in odd quadrants and sets the signs.
+func turnWide(s, c, k group) (group, group) {
+	n := len(s)
+	one, sgn := get(word(1)), get(word(sign))
+	s2, c2, t := vectors(n), vectors(n), vectors(n)
+	for i := range n {
+		odd := K()
+		VPTESTMQ(one, k[i], odd)
+		VBLENDMPD(c[i], s[i], odd, s2[i])
+		VBLENDMPD(s[i], c[i], odd, c2[i])
+	}
+	each(VPSLLQ, Imm(62), k, t)
+	each(VPTERNLOGQ, Imm(0x78), sgn, t, s2) // s2 ^ (t & sign)
+	each(VPADDQ, one, k, t)
+	each(VPSLLQ, Imm(62), t, t)
+	each(VPTERNLOGQ, Imm(0x78), sgn, t, c2)
+	return s2, c2
+}
+
+func turnNarrow(s, c, k group) {
+	for i := range s {
+		m, x := vector(), vector()
+		xor(x, x, x)
+		and(word(1), k[i], m)
+		VPSUBQ(m, x, m)
+		xor(s[i], c[i], x)
+		and(m, x, x)
+		xor(x, s[i], s[i])
+		xor(x, c[i], c[i])
+		t := vector()
+		VPSLLQ(Imm(62), k[i], t)
+		and(word(sign), t, t)
+		xor(t, s[i], s[i])
+		VPADDQ(word(1), k[i], t)
+		VPSLLQ(Imm(62), t, t)
+		and(word(sign), t, t)
+		xor(t, c[i], c[i])
+	}
 }
 
 // quarters is SinCos: reduction modulo pi/2 and two polynomials.
 func quarters() {
 	function("sincos", "func(d, d2, a []float64, c float64) uint64")
 	d, d2, a, c := base("d"), base("d2"), base("a"), broadcast("c")
-	holdQuadrant(numbers(invPio2, magic, -piA/2, -piB/2, -piC/2)...)
+	n := pick(1, 2)
+	holdQuadrant(numbers(invPio2, magic)...)
 	g := newGuard(trigMax)
-	loop("d", width, func(i reg.GPVirtual) {
-		x := vector()
-		VMULPD(at(a, i, 0), c, x)
+	loop("d", n*width, func(i reg.GPVirtual) {
+		x := scaled(c, places(n, a, i))
 		g.modulus(x)
-		t, kf := load(x), vector()
-		VFMADD213PD(get(number(magic)), inRegister(number(invPio2)), t)
-		VSUBPD(get(number(magic)), t, kf)
-		s, co := quadrant(reduce(x, kf, piA/2, piB/2, piC/2), t)
-		VMOVUPD(s, at(d, i, 0))
-		VMOVUPD(co, at(d2, i, 0))
+		t, kf := copies(n, x), vectors(n)
+		each(VFMADD213PD, get(number(magic)), inRegister(number(invPio2)), t)
+		each(VSUBPD, get(number(magic)), t, kf)
+		reduce(x, kf, piA/2, piB/2, piC/2)
+		s, co := quadrant(x, t)
+		store(s, places(n, d, i))
+		store(co, places(n, d2, i))
 	})
-	g.result(doubled(trigMax))
+	g.result(bitsOf(trigMax) << 1)
 }
 
 func exponential() {
 	function("exp", "func(d, a []float64, c float64) uint64")
 	d, a, c := base("d"), base("a"), broadcast("c")
+	n := pick(2, 4)
 	poly := numbers(expTaylor...)
-	hold(append(poly, numbers(log2e, magic, -ln2Hi, -ln2Lo, 1)...)...)
+	hold(poly...)
 	g := newGuard(expMax)
-	loop("d", width, func(i reg.GPVirtual) {
-		x := vector()
-		VMULPD(at(a, i, 0), c, x)
+	loop("d", n*width, func(i reg.GPVirtual) {
+		x := scaled(c, places(n, a, i))
 		g.modulus(x)
-		t, kf := load(x), vector()
-		VFMADD213PD(get(number(magic)), inRegister(number(log2e)), t)
-		VSUBPD(get(number(magic)), t, kf)
-		r := load(kf)
-		VFMADD213PD(x, inRegister(number(-ln2Hi)), r)
-		VFMADD231PD(get(number(-ln2Lo)), kf, r)
-		p := horner(r, poly)
-		q := vector()
-		VMULPD(r, r, q)
-		VFMADD213PD(r, p, q)
-		VADDPD(get(number(1)), q, q)
-		VPSLLQ(Imm(52), t, t)
-		VPADDQ(t, q, q)
-		VMOVUPD(q, at(d, i, 0))
+		t, kf := copies(n, x), vectors(n)
+		each(VFMADD213PD, get(number(magic)), inRegister(number(log2e)), t)
+		each(VSUBPD, get(number(magic)), t, kf)
+		each(VFNMADD231PD, get(number(ln2Hi)), kf, x)
+		each(VFNMADD231PD, get(number(ln2Lo)), kf, x)
+		p := horner(x, poly)
+		q := vectors(n)
+		each(VMULPD, x, x, q)
+		each(VFMADD213PD, x, p, q)
+		each(VADDPD, get(number(1)), q, q)
+		each(VPSLLQ, Imm(52), t, t)
+		each(VPADDQ, t, q, q)
+		store(q, places(n, d, i))
 	})
-	g.result(doubled(expMax))
-}
-
-// logConstants are the constants of logarithmOf.
-func logConstants() []Mem {
-	return append(numbers(append([]float64{magic, 1, 2, 0.5, ln2Lo, ln2Hi, minNorm}, logOdd...)...), word(logBase), word(expBias))
+	g.result(bitsOf(expMax) << 1)
 }
 
 // logarithmOf returns log(x) for positive normal x.
-func logarithmOf(x V) V {
-	e := vector()
-	VPSUBQ(get(word(logBase)), x, e)
+func logarithmOf(x group) group {
+	n := len(x)
+	e := vectors(n)
+	each(VPSUBQ, get(word(logBase)), x, e)
 	if wide() {
-		VPSRAQ(Imm(52), e, e)
+		each(VPSRAQ, Imm(52), e, e)
 	} else { // an arithmetic shift out of two logical ones
-		negative, zero := vector(), vector()
-		VPSRLQ(Imm(63), e, negative)
-		xor(zero, zero, zero)
-		VPSUBQ(negative, zero, negative)
-		VPSLLQ(Imm(12), negative, negative)
-		VPSRLQ(Imm(52), e, e)
-		or(negative, e, e)
+		for i := range e {
+			negative, zero := vector(), vector()
+			VPSRLQ(Imm(63), e[i], negative)
+			xor(zero, zero, zero)
+			VPSUBQ(negative, zero, negative)
+			VPSLLQ(Imm(12), negative, negative)
+			VPSRLQ(Imm(52), e[i], e[i])
+			or(negative, e[i], e[i])
+		}
 	}
-	f := vector()
-	VPSLLQ(Imm(52), e, f)
-	VPSUBQ(f, x, f)
-	VPADDQ(get(word(expBias)), e, e)
-	VSUBPD(get(number(magic)), e, e)
-	VSUBPD(get(number(1)), f, f)
-	s := vector()
-	VADDPD(get(number(2)), f, s)
-	VDIVPD(s, f, s)
-	z := vector()
-	VMULPD(s, s, z)
+	f := vectors(n)
+	each(VPSLLQ, Imm(52), e, f)
+	each(VPSUBQ, f, x, f)
+	each(VPADDQ, get(word(expBias)), e, e)
+	each(VSUBPD, get(number(magic)), e, e)
+	each(VSUBPD, get(number(1)), f, f)
+	s := vectors(n)
+	each(VADDPD, get(number(2)), f, s)
+	each(VDIVPD, s, f, s)
+	z := vectors(n)
+	each(VMULPD, s, s, z)
 	p := horner(z, numbers(logOdd...))
-	h := vector()
-	VMULPD(get(number(0.5)), f, h)
-	VMULPD(f, h, h)
-	VFMADD213PD(h, p, z)
-	q := vector()
-	VMULPD(get(number(ln2Lo)), e, q)
-	VFMADD213PD(q, z, s)
-	VSUBPD(s, h, h)
-	VSUBPD(h, f, f) // f - (h - q)
-	VFMADD213PD(f, inRegister(number(ln2Hi)), e)
+	h := vectors(n)
+	each(VMULPD, get(number(0.5)), f, h)
+	each(VMULPD, f, h, h)
+	each(VFMADD213PD, h, p, z)
+	q := vectors(n)
+	each(VMULPD, get(number(ln2Lo)), e, q)
+	each(VFMADD213PD, q, z, s)
+	each(VSUBPD, s, h, h)
+	each(VSUBPD, h, f, f) // f - (h - q)
+	each(VFMADD213PD, f, inRegister(number(ln2Hi)), e)
 	return e
 }
 
 func logarithm() {
 	function("log", "func(d, a []float64) uint64")
 	d, a := base("d"), base("a")
-	hold(logConstants()...)
+	n := pick(1, 2)
+	hold(append(numbers(append([]float64{magic, 1, 2, 0.5, ln2Lo, ln2Hi, minNorm}, logOdd...)...), word(logBase), word(expBias))...)
 	g := newGuard(0)
-	loop("d", width, func(i reg.GPVirtual) {
-		x := load(at(a, i, 0))
+	loop("d", n*width, func(i reg.GPVirtual) {
+		x := fetch(places(n, a, i))
 		g.normal(x)
-		VMOVUPD(logarithmOf(x), at(d, i, 0))
+		store(logarithmOf(x), places(n, d, i))
 	})
-	g.result(word(bitsOf(maxNorm) - bitsOf(minNorm)))
+	g.result(bitsOf(maxNorm) - bitsOf(minNorm))
 }

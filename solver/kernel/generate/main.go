@@ -93,11 +93,7 @@ func get(m Mem) Op {
 
 func load(m Op) V {
 	r := vector()
-	if v, ok := m.(V); ok {
-		VMOVAPD(v, r)
-	} else {
-		VMOVUPD(m, r)
-	}
+	move(m, r)
 	return r
 }
 
@@ -112,35 +108,85 @@ func inRegister(m Mem) V {
 	return load(m)
 }
 
-func and(a, b Op, d V) {
+func and(o ...Op) {
 	if wide() {
-		VPANDQ(a, b, d)
+		VPANDQ(o...)
 	} else {
-		VPAND(a, b, d)
+		VPAND(o[0], o[1], o[2])
 	}
 }
 
-func or(a, b Op, d V) {
+func or(o ...Op) {
 	if wide() {
-		VPORQ(a, b, d)
+		VPORQ(o...)
 	} else {
-		VPOR(a, b, d)
+		VPOR(o[0], o[1], o[2])
 	}
 }
 
-func xor(a, b Op, d V) {
+func xor(o ...Op) {
 	if wide() {
-		VPXORQ(a, b, d)
+		VPXORQ(o...)
 	} else {
-		VPXOR(a, b, d)
+		VPXOR(o[0], o[1], o[2])
+	}
+}
+
+// group is several vectors that go through a computation side by side, so that
+// the processor always finds independent operations close together.
+type group []V
+
+// vectors returns a group of n fresh registers.
+func vectors(n int) group {
+	g := make(group, n)
+	for i := range g {
+		g[i] = vector()
+	}
+	return g
+}
+
+// each emits the instruction for every member of the groups among the operands;
+// other operands are the same for all members.
+func each(instruction func(...Op), operands ...any) {
+	n := 1
+	for _, o := range operands {
+		if g, ok := o.(group); ok {
+			n = len(g)
+		}
+	}
+	for i := range n {
+		ops := make([]Op, len(operands))
+		for j, o := range operands {
+			if g, ok := o.(group); ok {
+				ops[j] = g[i]
+			} else {
+				ops[j] = o.(Op)
+			}
+		}
+		instruction(ops...)
+	}
+}
+
+// copies returns n fresh registers with the value of x, a group or an operand.
+func copies(n int, x any) group {
+	g := vectors(n)
+	each(func(o ...Op) { move(o[0], o[1].(V)) }, x, g)
+	return g
+}
+
+func move(from Op, to V) {
+	if v, ok := from.(V); ok {
+		VMOVAPD(v, to)
+	} else {
+		VMOVUPD(from, to)
 	}
 }
 
 // horner evaluates the polynomial with coefficients c[0], c[1], ... at z.
-func horner(z V, c []Mem) V {
-	p := constant(c[len(c)-1])
+func horner(z group, c []Mem) group {
+	p := copies(len(z), get(c[len(c)-1]))
 	for i := len(c) - 2; i >= 0; i-- {
-		VFMADD213PD(get(c[i]), z, p)
+		each(VFMADD213PD, get(c[i]), z, p)
 	}
 	return p
 }
@@ -155,6 +201,39 @@ func broadcast(name string) V {
 	}
 	VBROADCASTSD(m.Addr, r)
 	return r
+}
+
+// places returns the n successive vectors of a row from index i on.
+func places(n int, p, i reg.GPVirtual) []Mem {
+	m := make([]Mem, n)
+	for k := range m {
+		m[k] = at(p, i, k*width)
+	}
+	return m
+}
+
+// fetch loads the vectors at the places.
+func fetch(m []Mem) group {
+	g := vectors(len(m))
+	for i := range m {
+		VMOVUPD(m[i], g[i])
+	}
+	return g
+}
+
+func store(g group, m []Mem) {
+	for i := range m {
+		VMOVUPD(g[i], m[i])
+	}
+}
+
+// scaled loads the vectors at the places multiplied by c.
+func scaled(c V, m []Mem) group {
+	g := vectors(len(m))
+	for i := range m {
+		VMULPD(m[i], c, g[i])
+	}
+	return g
 }
 
 func at(p, i reg.GPVirtual, offset int) Mem {
