@@ -158,7 +158,7 @@ func unevenExample() *Plot {
 
 func pathsExample() *Plot {
 	xe := UniformEdges(0, 1, 32)
-	a, b, c := walk(1500, 0.5, 0.5, 0.012, 1), walk(1500, 0.2, 0.8, 0.012, 2), walk(1500, 0.8, 0.3, 0.012, 3)
+	a, b, c := walk(500, 0.5, 0.5, 0.02, 1), walk(500, 0.2, 0.8, 0.02, 2), walk(500, 0.8, 0.3, 0.02, 3)
 	a.Label, b.Label, c.Label = "path 1", "path 2", "path 3"
 	return DensityMap(DensityMapData{XLabel: "$x$", YLabel: "$y$", Quantity: "$p_s(x, y)$", XEdges: xe, YEdges: xe,
 		X: Axis{Periodic: true}, Y: Axis{Periodic: true}, Paths: []Path{a, b, c},
@@ -168,9 +168,9 @@ func pathsExample() *Plot {
 func plainPathsExample() *Plot {
 	p := &Plot{Settings: settings("Two paths against time."), X: Axis{Label: "$t$"}, Y: Axis{Label: "$x_t$"}}
 	for k := range 2 {
-		w := walk(800, 0, 0, 0.05, uint64(k+5))
+		w := walk(400, 0, 0, 0.07, uint64(k+5))
 		for i := range w.X {
-			w.X[i] = float64(i) / 100
+			w.X[i] = float64(i) / 50
 		}
 		w.Label = []string{`full system, $\varepsilon = 0.05$`, "limit"}[k]
 		p.Paths = append(p.Paths, w)

@@ -11,7 +11,8 @@ const (
 	legendLine   = tickSize * 1.45 // distance of lines
 	legendSample = 20.0            // length of the sample of a line
 	legendGap    = 4.0             // between the sample and its text
-	legendColumn = 12.0            // between entries side by side
+	legendColumn = 10.0            // between entries side by side
+	fontSlack    = 1.12            // room for a viewer of SVG that has none of the fonts of our metrics
 )
 
 // legendEntry is one line of the legend.
@@ -33,7 +34,7 @@ func (d *drawing) addEntry(kind string, index int, label string) error {
 	if err != nil {
 		return err
 	}
-	d.legend = append(d.legend, legendEntry{runs, label, legendSample + legendGap + d.s.face.width(runs, tickSize), kind, index})
+	d.legend = append(d.legend, legendEntry{runs, label, legendSample + legendGap + fontSlack*d.s.face.width(runs, tickSize), kind, index})
 	return nil
 }
 

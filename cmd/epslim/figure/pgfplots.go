@@ -76,8 +76,8 @@ func (w *texWriter) axisOptions() {
 	w.printf("  scale only axis, width=%s, height=%s,\n", cm(w.box.width()), cm(w.box.height()))
 	w.printf("  xmin=%s, xmax=%s, ymin=%s, ymax=%s, enlargelimits=false,\n",
 		texNum(w.ax.lo), texNum(w.ax.hi), texNum(w.ay.lo), texNum(w.ay.hi))
-	w.printf("  tick align=outside, tick pos=left, axis on top, unbounded coords=discard,\n")
-	w.printf("  label style={font=\\small}, tick label style={font=\\footnotesize},\n")
+	w.printf("  tick align=outside, tick pos=left, axis on top, unbounded coords=discard, filter discard warning=false,\n")
+	w.printf("  label style={font=\\small}, tick label style={font=\\footnotesize}, xticklabel style={text height=1.6ex},\n")
 	for _, a := range []struct {
 		name string
 		ax   *axis
@@ -88,7 +88,7 @@ func (w *texWriter) axisOptions() {
 		if a.ax.Log {
 			w.printf("  %smode=log,\n", a.name)
 		}
-		if a.ax.Log || a.ax.Pi { // the ticks of a linear axis are left to pgfplots
+		if a.ax.factor == nil { // ticks with a common factor are left to pgfplots
 			at, text := texTicks(a.ax)
 			w.printf("  %stick={%s}, %sticklabels={%s},\n", a.name, at, a.name, text)
 		}
@@ -159,17 +159,17 @@ func (w *texWriter) legendPlace() string {
 func (w *texWriter) barOptions() {
 	w.printf("  colorbar, colorbar style={width=%s, ylabel={%s}, font=\\footnotesize", cm(barWidth), labelTeX(w.Heat.Quantity))
 	lo, hi := w.scale.min, w.scale.max
+	ax := w.barAx
 	if w.scale.log { // pgfplots has no logarithmic colour bar: it gets logarithms and our labels
-		ax := w.barAx
-		_, text := texTicks(&ax)
-		var at []string
-		for _, t := range ax.ticks {
-			if t.label != nil {
-				at = append(at, texNum(math.Log(t.value)))
-			}
-		}
-		w.printf(", ytick={%s}, yticklabels={%s}", strings.Join(at, ","), text)
 		lo, hi = math.Log(lo), math.Log(hi)
+		ax.ticks = nil
+		for _, t := range w.barAx.ticks {
+			ax.ticks = append(ax.ticks, tick{math.Log(t.value), t.label})
+		}
+	}
+	if ax.factor == nil {
+		at, text := texTicks(&ax)
+		w.printf(", ytick={%s}, yticklabels={%s}", at, text)
 	}
 	w.printf("},\n  point meta min=%s, point meta max=%s,\n  colormap={cells}{", texNum(lo), texNum(hi))
 	t := w.Heat.Map.table()
@@ -262,24 +262,30 @@ func (w *texWriter) field() {
 	if f.max == 0 {
 		return
 	}
-	colour := "white"
+	colour := "white, legend image post style={gray}"
 	if w.Heat == nil || w.Heat.Map == Diverging {
 		colour = "black"
 	}
 	var t table
 	if w.Field.Style == Streamlines {
-		var xs, ys []float64
+		var xs, ys, hx, hy, hu, hv []float64
 		for _, l := range w.streamlines(&f) {
+			for _, k := range headPlaces(l) {
+				hx, hy = append(hx, w.ax.back(l[k].x)), append(hy, w.ay.back(l[k].y))
+				hu, hv = append(hu, w.ax.back(l[k+1].x)-hx[len(hx)-1]), append(hv, w.ay.back(l[k+1].y)-hy[len(hy)-1])
+			}
 			for _, p := range simplify(l, 0.1) {
 				xs, ys = append(xs, w.ax.back(p.x)), append(ys, w.ay.back(p.y))
 			}
 			xs, ys = append(xs, math.NaN()), append(ys, math.NaN())
 		}
-		t.add("x", xs)
-		t.add("y", ys)
+		t.columns = []column{{"x", xs}, {"y", ys}, {"head_x", hx}, {"head_y", hy}, {"head_u", hu}, {"head_v", hv}}
 		w.files = append(w.files, File{w.base + "-streamlines.csv", t.csv(w.Meta)})
 		w.printf("\\addplot[%s, semithick, unbounded coords=jump%s] table[x=x, y=y, col sep=comma] {%s-streamlines.csv};\n",
 			colour, forget(w.Field.Label), w.base)
+		w.legendText(w.Field.Label)
+		w.printf("\\addplot[%s, semithick, -stealth, forget plot, quiver={u=\\thisrow{head_u}, v=\\thisrow{head_v}}]\n  table[x=head_x, y=head_y, col sep=comma] {%s-streamlines.csv};\n",
+			colour, w.base)
 	} else {
 		tails, tips := w.arrows(&f)
 		xs, ys, us, vs := make([]float64, len(tails)), make([]float64, len(tails)), make([]float64, len(tails)), make([]float64, len(tails))
@@ -291,8 +297,8 @@ func (w *texWriter) field() {
 		w.files = append(w.files, File{w.base + "-arrows.csv", t.csv(w.Meta)})
 		w.printf("\\addplot[%s, semithick, -stealth, quiver={u=\\thisrow{u}, v=\\thisrow{v}}%s]\n  table[x=x, y=y, col sep=comma] {%s-arrows.csv};\n",
 			colour, forget(w.Field.Label), w.base)
+		w.legendText(w.Field.Label)
 	}
-	w.legendText(w.Field.Label)
 }
 
 // data writes histograms, bands, series and slopes.
@@ -315,7 +321,7 @@ func (w *texWriter) data() {
 			i%8, i%8, forget(w.Histograms[i].Label), c.x, c.y, name)
 		w.legendText(w.Histograms[i].Label)
 		if c.low != "" {
-			w.printf("\\addplot[line%d, only marks, mark=none, forget plot, error bars/.cd, y dir=both, y explicit] table[x=%s, y=%s, y error=%s, col sep=comma] {%s};\n",
+			w.printf("\\addplot[draw=none, mark=none, forget plot, error bars/.cd, y dir=both, y explicit, error bar style={line%d}] table[x=%s, y=%s, y error=%s, col sep=comma] {%s};\n",
 				i%8, c.low, c.y, c.high, name)
 		}
 	}
@@ -360,13 +366,17 @@ func (w *texWriter) series(i int, c seriesColumns, name string) {
 	k := (i + len(w.Histograms)) % len(lineColours())
 	_, dash, marker := w.lineStyle(i)
 	errors, errorColumns := "", ""
+	low := `\thisrow{` + c.low + "}"
+	if w.ay.Log { // a limit at or below zero reaches down to the end of the axis
+		low = fmt.Sprintf("max(%s,%s)", low, texNum(w.ay.lo/2))
+	}
 	if c.low != "" && (s.Bounds == ErrorBars || len(s.X) == 1) {
 		errors = ", error bars/.cd, y dir=both, y explicit"
-		errorColumns = fmt.Sprintf(", y error plus expr=\\thisrow{%s}-\\thisrow{%s}, y error minus expr=\\thisrow{%s}-\\thisrow{%s}",
-			c.high, c.y, c.y, c.low)
+		errorColumns = fmt.Sprintf(", y error plus expr=\\thisrow{%s}-\\thisrow{%s}, y error minus expr={\\thisrow{%s}-%s}",
+			c.high, c.y, c.y, low)
 	} else if c.low != "" {
-		for _, e := range []string{c.low, c.high} {
-			w.printf("\\addplot[draw=none, name path=%s, forget plot] table[x=%s, y=%s, col sep=comma] {%s};\n", e, c.x, e, name)
+		for _, e := range [][2]string{{c.low, low}, {c.high, `\thisrow{` + c.high + "}"}} {
+			w.printf("\\addplot[draw=none, name path=%s, forget plot] table[x=%s, y expr={%s}, col sep=comma] {%s};\n", e[0], c.x, e[1], name)
 		}
 		w.printf("\\addplot[line%d, fill opacity=0.22, draw=none, forget plot] fill between[of=%s and %s];\n", k, c.low, c.high)
 	}
@@ -409,8 +419,12 @@ func (w *texWriter) paths() {
 		c, _, _ := w.pathStyle(i)
 		x, y := t.add(fmt.Sprintf("x%d", i+1), xs), t.add(fmt.Sprintf("y%d", i+1), ys)
 		w.printf("\\definecolor{path%d}{HTML}{%s}\n", i, strings.ToUpper(c.hex()[1:]))
+		post := ""
+		if c.r == 0xff && c.g == 0xff && c.b == 0xff { // white on paper
+			post = ", legend image post style={gray}"
+		}
 		w.printf("\\addplot[path%d, line width=0.7pt, unbounded coords=jump%s] table[x=%s, y=%s, col sep=comma] {%s-paths.csv};\n",
-			i, forget(w.Paths[i].Label), x, y, w.base)
+			i, forget(w.Paths[i].Label)+post, x, y, w.base)
 		w.legendText(w.Paths[i].Label)
 	}
 	if len(t.columns) > 0 {
@@ -429,16 +443,16 @@ func labelTeX(label string) string {
 		case !math && c == '\\' && i+1 < len(rs) && (rs[i+1] == '\\' || rs[i+1] == '$'):
 			i++
 			b.WriteString(textTeX(rs[i]))
-		case c == '\\' && math && i+1 < len(rs):
-			i++
-			b.WriteRune(c)
-			b.WriteRune(rs[i])
+		case c == '\\' && math:
+			n := commandLength(rs[i+1:])
+			b.WriteString(commandTeX(string(rs[i+1 : i+1+n])))
+			i += n
 		case c == '$':
 			math = !math
 			b.WriteRune(c)
 		case math:
 			if name, ok := nameOf(c); ok {
-				b.WriteString(`\` + name + " ")
+				b.WriteString(commandTeX(name) + " ")
 			} else if c == '−' {
 				b.WriteByte('-')
 			} else {
@@ -448,7 +462,27 @@ func labelTeX(label string) string {
 			b.WriteString(textTeX(c))
 		}
 	}
-	return strings.ReplaceAll(b.String(), `\text{`, `\mathrm{`)
+	return b.String()
+}
+
+// commandLength is the number of characters of a command's name.
+func commandLength(rs []rune) int {
+	n := 0
+	for n < len(rs) && rs[n] < unicode.MaxASCII && unicode.IsLetter(rs[n]) {
+		n++
+	}
+	return max(n, min(1, len(rs)))
+}
+
+// commandTeX is a command in LaTeX. pgfplots takes \to for the end of an argument of its own.
+func commandTeX(name string) string {
+	switch name {
+	case "to":
+		name = "rightarrow"
+	case "text":
+		name = "mathrm"
+	}
+	return `\` + name
 }
 
 // textTeX writes one character of plain text.
@@ -476,7 +510,7 @@ func textTeX(c rune) string {
 		return string(c)
 	}
 	if name, ok := nameOf(c); ok {
-		return `$\` + name + "$"
+		return "$" + commandTeX(name) + "$"
 	}
 	if c < unicode.MaxASCII && !unicode.IsControl(c) || c >= 0xc0 && c <= 0x17f {
 		return string(c)

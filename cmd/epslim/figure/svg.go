@@ -64,9 +64,11 @@ func (sh *shape) svg(b *bytes.Buffer) {
 	case shapeText:
 		sh.svgText(b)
 	case shapeImage:
+		// Browsers show the pixels as they are, but some converters smooth them whatever the attributes
+		// say; there only the outermost part of each magnified pixel suffers.
 		fmt.Fprintf(b, `<image x="%s" y="%s" width="%s" height="%s" preserveAspectRatio="none" image-rendering="pixelated" `+
 			`style="image-rendering:pixelated" href="data:image/png;base64,%s"/>`+"\n",
-			num(sh.box.left), num(sh.box.top), num(sh.box.width()), num(sh.box.height()), encodeImage(sh.image))
+			num(sh.box.left), num(sh.box.top), num(sh.box.width()), num(sh.box.height()), encodeImage(magnified(sh.image)))
 	}
 }
 
@@ -75,6 +77,22 @@ func class(c colour, use string) string {
 		return ""
 	}
 	return fmt.Sprintf(` class="%s-%s"`, c.role, use)
+}
+
+// magnified repeats each pixel of a small image, in both directions the same number of times.
+func magnified(img *image.Paletted) *image.Paletted {
+	nx, ny := img.Rect.Dx(), img.Rect.Dy()
+	k := min(16, 600/max(nx, ny))
+	if k < 2 {
+		return img
+	}
+	out := image.NewPaletted(image.Rect(0, 0, k*nx, k*ny), img.Palette)
+	for y := range k * ny {
+		for x := range k * nx {
+			out.Pix[y*out.Stride+x] = img.Pix[y/k*img.Stride+x/k]
+		}
+	}
+	return out
 }
 
 // encodeImage is a PNG in base 64. Writing into memory does not fail.

@@ -147,7 +147,7 @@ func piOver(num string, den int) []run {
 func logTicks(lo, hi float64, fits func([]tick) bool) []tick {
 	first, last := int(math.Floor(math.Log10(lo)-1e-9)), int(math.Ceil(math.Log10(hi)+1e-9))
 	decades := math.Log10(hi / lo)
-	if decades < 1.7 {
+	if decades < 1.7 || len(logMarks(lo, hi, first, last, 1, []int{1}, false)) < 2 {
 		for _, mants := range [][]int{{1, 2, 5}, {1, 3}, {1, 2, 3, 5, 7}} {
 			major := logMarks(lo, hi, first, last, 1, mants, false)
 			if len(major) > 1 && fits(major) {
@@ -183,7 +183,7 @@ func logMarks(lo, hi float64, first, last, stride int, mants []int, minor bool) 
 			}
 			var label []run
 			if !minor {
-				label = powerLabel(m, k, len(mants) > 1)
+				label = powerLabel(m, k, len(mants) > 1 && first >= -4 && last <= 4)
 			}
 			t = append(t, tick{v, label})
 		}
@@ -193,7 +193,7 @@ func logMarks(lo, hi float64, first, last, stride int, mants []int, minor bool) 
 
 // powerLabel writes m*10^k, as a decimal number where that is short and the axis has such labels.
 func powerLabel(m, k int, decimal bool) []run {
-	if decimal && k >= -3 && k <= 3 {
+	if decimal {
 		v := float64(m) * math.Pow(10, float64(k))
 		return []run{{text: strconv.FormatFloat(v, 'f', max(0, -k), 64)}}
 	}
