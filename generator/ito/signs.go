@@ -62,11 +62,17 @@ func (r *reader) sampleSign(f *Function, e *entity) {
 		limited = limited && axes[i].limited
 	}
 	agrees, witness := false, ""
+	slow := &slowSample{r: r, f: f, left: slowSamples}
 	r.eachSample(f.Args, axes, func(point map[string]float64) bool {
 		x := numeric{r: r, at: point, steps: numericSteps, ok: true}
 		v, scale := x.eval(e.value)
+		ok := x.ok
+		if !ok {
+			v, ok = slow.at(point)
+			scale = math.Abs(v)
+		}
 		switch {
-		case !x.ok:
+		case !ok:
 		case !breaks(f.Sign, v, scale, bounded):
 			agrees = true
 		case witness == "":
@@ -90,6 +96,38 @@ func (r *reader) sampleSign(f *Function, e *entity) {
 		return
 	}
 	r.errs = append(r.errs, d)
+}
+
+// slowSample evaluates the canonical form of a formula in extended precision. It
+// serves formulas that the quick evaluation does not know, such as those with
+// derivatives, at few points.
+type slowSample struct {
+	r    *reader
+	f    *Function
+	left int
+	body algebra.Expr
+}
+
+const slowSamples = 40
+
+func (s *slowSample) at(point map[string]float64) (float64, bool) {
+	if s.left == 0 {
+		return 0, false
+	}
+	s.left--
+	if !s.body.Valid() {
+		body, err := s.f.Body.SubsFunc(s.r.system.Definitions())
+		if err == nil {
+			body, err = body.Subs(s.r.system.Values())
+		}
+		if err != nil {
+			s.left = 0
+			return 0, false
+		}
+		s.body = body
+	}
+	v, err := s.body.EvalFloat(point)
+	return v, err == nil
 }
 
 // eachSample visits points of a box until visit returns false: a grid for one or
