@@ -29,8 +29,11 @@ func (e *expansion) limit(ctx context.Context, o Order) error {
 	}
 	for _, r := range e.Routes {
 		if e.used[r.Name()] {
-			e.out.Conditions = append(e.out.Conditions, r.Conditions()...)
+			e.out.Pivots = append(e.out.Pivots, r.Conditions()...)
 		}
+	}
+	if err := e.exists(e.Gen.Parts[0], e.integrands()); err != nil {
+		return err
 	}
 	if err := e.correctors(); err != nil {
 		return err
@@ -330,3 +333,18 @@ func (e *expansion) frozen(ctx context.Context, op *generator.Operator, index in
 
 // NegPower is -p as a short text: the exponent of the time scale.
 func NegPower(p *big.Rat) string { return new(big.Rat).Neg(p).RatString() }
+
+// Average is the mean of a function over the fast process.
+func (l *Limit) Average(ctx context.Context, f algebra.Expr) (algebra.Expr, error) {
+	var first error
+	for _, r := range l.routes {
+		s, err := r.Solve(ctx, f)
+		if err == nil {
+			return s.Mean, nil
+		}
+		if first == nil {
+			first = err
+		}
+	}
+	return algebra.Expr{}, first
+}

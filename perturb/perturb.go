@@ -11,8 +11,10 @@ package perturb
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"math/big"
+	"sort"
 
 	"epslim/generator"
 	"epslim/generator/algebra"
@@ -32,6 +34,8 @@ type Problem struct {
 	// power of the small parameter at which the averaged operator is still
 	// looked for. Zero means 4.
 	MaxPower int
+	// Numbers settle conditions that the declared signs leave open.
+	Numbers cell.Numbers
 }
 
 // Reason names why there is no limit.
@@ -78,18 +82,21 @@ type Contribution struct {
 
 // Limit is the outcome of the expansion.
 type Limit struct {
-	Lead       *big.Rat // lowest power of the small parameter
-	Power      *big.Rat // power at which the limit appears; time is of order eps^-Power
-	U0         string   // name of the undetermined function
-	Orders     []Order
-	Regime     string // "homogenization" or "averaging"
-	Method     string // "closure", ...
-	Drift      []algebra.Expr
-	Diffusion  [][]algebra.Expr
-	Cell       []algebra.Expr // corrector of each slow variable's large drift
-	Terms      [][]Term
-	Conditions []algebra.Expr // must not vanish
-	Generator  algebra.Expr   // the limit generator on u0
+	Lead      *big.Rat // lowest power of the small parameter
+	Power     *big.Rat // power at which the limit appears; time is of order eps^-Power
+	U0        string   // name of the undetermined function
+	Orders    []Order
+	Regime    string // "homogenization" or "averaging"
+	Method    string // "closure", ...
+	Drift     []algebra.Expr
+	Diffusion [][]algebra.Expr
+	Cell      []algebra.Expr // corrector of each slow variable's large drift
+	Terms     [][]Term
+	Pivots    []algebra.Expr  // divided by on the way; must not vanish
+	Existence *cell.Existence // of the stationary law of the fast process
+	Process   *cell.Process
+	Generator algebra.Expr // the limit generator on u0
+	routes    []cell.Route
 }
 
 // Term is a piece of the Ito drift with its origin.
@@ -131,8 +138,14 @@ func (e *expansion) run(ctx context.Context) (*Limit, error) {
 	if r := e.checkFast(lead); r != nil {
 		return nil, r
 	}
+	e.out = &Limit{Lead: lead.Power}
+	e.out.Process = &cell.Process{Ring: e.Ring, L0: lead.Op, Fast: e.Fast}
 	if e.Routes == nil {
-		e.Routes = []cell.Route{cell.NewClosure(&cell.Process{Ring: e.Ring, L0: lead.Op, Fast: e.Fast})}
+		e.Routes = []cell.Route{cell.NewClosure(e.out.Process)}
+	}
+	e.out.routes = e.Routes
+	if err := e.exists(lead, nil); err != nil {
+		return nil, err
 	}
 	e.spacing()
 	name := "u₀"
@@ -148,7 +161,7 @@ func (e *expansion) run(ctx context.Context) (*Limit, error) {
 		return nil, err
 	}
 	e.u = []algebra.Expr{u0}
-	e.out = &Limit{Lead: lead.Power, U0: name}
+	e.out.U0 = name
 	last := new(big.Rat).SetInt64(int64(e.MaxPower))
 	for j := 1; ; j++ {
 		power := new(big.Rat).Mul(e.step, new(big.Rat).SetInt64(int64(j)))
@@ -164,6 +177,34 @@ func (e *expansion) run(ctx context.Context) (*Limit, error) {
 			return e.out, nil
 		}
 	}
+}
+
+// exists asks for the stationary law of the fast process, and for the averages
+// of the given functions of the fast variables.
+func (e *expansion) exists(lead generator.Part, integrands []algebra.Expr) error {
+	x, err := e.out.Process.Check(e.Numbers, integrands)
+	var bad *cell.NotErgodic
+	if errors.As(err, &bad) {
+		return &Refusal{Reason: NotErgodic, Order: lead.Power, Text: bad.Text, Mend: bad.Mend, Detail: bad.Detail}
+	}
+	e.out.Existence = x
+	return err
+}
+
+// integrands lists the functions of the fast variables that were averaged.
+func (e *expansion) integrands() []algebra.Expr {
+	names := e.out.Process.Names()
+	seen := map[string]bool{}
+	var out []algebra.Expr
+	for _, o := range e.out.Orders {
+		for _, t := range o.Sum.SplitBy(names...) {
+			if k := t.Fn.String(); !seen[k] {
+				seen[k] = true
+				out = append(out, t.Fn)
+			}
+		}
+	}
+	return out
 }
 
 // checkFast refuses a leading generator that differentiates in a slow
@@ -297,4 +338,14 @@ func (e *expansion) nothing(lead generator.Part) (*Limit, error) {
 		}
 	}
 	return e.out, nil
+}
+
+// DetailNames lists the names in Detail, sorted.
+func (r *Refusal) DetailNames() []string {
+	out := make([]string, 0, len(r.Detail))
+	for k := range r.Detail {
+		out = append(out, k)
+	}
+	sort.Strings(out)
+	return out
 }

@@ -588,6 +588,30 @@ func (e Expr) eachKernel(f func(*kernel)) {
 	}
 }
 
+// Functions returns the names of the named functions that occur in e, also
+// inside other kernels, sorted.
+func (e Expr) Functions() []string {
+	set := map[string]bool{}
+	var visit func(e Expr)
+	visit = func(e Expr) {
+		e.eachKernel(func(k *kernel) {
+			if k.kind == kindFunc {
+				set[k.name] = true
+			}
+			for _, a := range k.args {
+				visit(a)
+			}
+		})
+	}
+	visit(e)
+	out := make([]string, 0, len(set))
+	for s := range set {
+		out = append(out, s)
+	}
+	sort.Strings(out)
+	return out
+}
+
 // DependsOn reports whether the symbol occurs in e.
 func (e Expr) DependsOn(name string) bool {
 	found := false

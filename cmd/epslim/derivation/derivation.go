@@ -1,0 +1,301 @@
+// Package derivation assembles one model's whole result: generator,
+// expansion, limit, stationary law, certificates, verdicts on claims and
+// values at points. Every output of the program is a rendering of this one
+// object, so that outputs cannot disagree.
+package derivation
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"math/big"
+
+	"epslim/fokkerplanck"
+	"epslim/generator"
+	"epslim/generator/algebra"
+	"epslim/generator/ito"
+	"epslim/perturb"
+	"epslim/perturb/cell"
+)
+
+// Options of a derivation.
+type Options struct {
+	At []string // points at which numbers are wanted, as "x=0.3,y=0.2"
+}
+
+// Result is everything that was found about one model.
+type Result struct {
+	System       *ito.System
+	Generator    *generator.Graded
+	Refused      *perturb.Refusal // if not nil, the rest is empty
+	Limit        *perturb.Limit
+	Noise        [][]algebra.Expr // smallest factor of sigma sigma^T; nil when it was not found
+	NoiseError   error
+	Stratonovich []algebra.Expr
+	Diffusion    *fokkerplanck.Diffusion
+	Stationary   *fokkerplanck.Stationary
+	Conditions   []string
+	Certificates []Certificate
+	Claims       []Verdict
+	Values       []Value
+	Exact        bool
+}
+
+// Status of a certificate.
+type Status string
+
+// The states of a certificate.
+const (
+	Exact     Status = "exact"
+	Numerical Status = "numerical"
+	Failed    Status = "failed"
+)
+
+// Certificate records one check of the derivation.
+type Certificate struct {
+	What   string
+	Status Status
+	Detail string
+}
+
+// Run derives the limit of a system and checks everything that was claimed.
+// The error is for models and points that cannot be worked with; a model
+// without a limit is a Result with Refused set.
+func Run(ctx context.Context, sys *ito.System, opt Options) (*Result, error) {
+	res := &Result{System: sys, Exact: true}
+	err := algebra.Guard(func() error { return res.run(ctx, opt) })
+	if errors.Is(err, algebra.ErrTooLarge) {
+		return nil, fmt.Errorf("the derivation needs expressions beyond the size limit: %w", err)
+	}
+	return res, err
+}
+
+func (res *Result) run(ctx context.Context, opt Options) error {
+	sys := res.System
+	points := make([]*ito.Point, len(opt.At))
+	for i, text := range opt.At {
+		p, err := sys.At(text)
+		if err != nil {
+			return err
+		}
+		points[i] = p
+	}
+	eqs := make([]generator.Equation, len(sys.Equations))
+	for i, e := range sys.Equations {
+		eqs[i] = generator.Equation{Var: e.Variable, Drift: e.Drift, Noise: e.Noise}
+	}
+	g, err := generator.Build(sys.Ring, sys.Small, eqs)
+	if err != nil {
+		return err
+	}
+	res.Generator = g
+	prob := perturb.Problem{
+		Ring: sys.Ring, Gen: g, Slow: names(sys.Slow), Fast: fastVariables(sys),
+		Numbers: cell.Numbers{Formulas: sys.Definitions(), Values: sys.Values()},
+	}
+	lim, err := perturb.Derive(ctx, prob)
+	var refused *perturb.Refusal
+	if errors.As(err, &refused) {
+		res.Refused = refused
+		return nil
+	}
+	if err != nil {
+		return err
+	}
+	res.Limit = lim
+	if res.Noise, res.NoiseError = perturb.Factor(lim.Diffusion); res.NoiseError == nil {
+		res.Stratonovich = perturb.StratonovichDrift(lim.Drift, res.Noise, prob.Slow)
+	}
+	res.Diffusion = slowDiffusion(sys, lim)
+	if res.Stationary, err = res.Diffusion.Solve(ctx); err != nil {
+		return err
+	}
+	res.conditions()
+	res.certify()
+	for _, c := range sys.Claims {
+		res.Claims = append(res.Claims, res.judge(ctx, c))
+	}
+	for _, p := range points {
+		v, err := res.valueAt(p)
+		if err != nil {
+			return err
+		}
+		res.Values = append(res.Values, *v)
+	}
+	return nil
+}
+
+func names(vs []*ito.Variable) []string {
+	out := make([]string, len(vs))
+	for i, v := range vs {
+		out[i] = v.Name
+	}
+	return out
+}
+
+func fastVariables(sys *ito.System) []cell.Variable {
+	sphere := map[string]int{}
+	for i, s := range sys.Spheres {
+		for _, n := range s.Names {
+			sphere[n] = i
+		}
+	}
+	out := make([]cell.Variable, len(sys.Fast))
+	for i, v := range sys.Fast {
+		c := cell.Variable{Name: v.Name, A: v.Domain.A, B: v.Domain.B}
+		switch v.Domain.Kind {
+		case ito.HalfLine:
+			c.Kind = cell.HalfLine
+		case ito.Circle:
+			c.Kind = cell.Circle
+		case ito.Periodic:
+			c.Kind = cell.Periodic
+		case ito.Reflecting:
+			c.Kind = cell.Reflecting
+		case ito.OnSphere:
+			c.Kind, c.Sphere = cell.SpherePart, sphere[v.Name]
+		}
+		out[i] = c
+	}
+	return out
+}
+
+func slowDiffusion(sys *ito.System, lim *perturb.Limit) *fokkerplanck.Diffusion {
+	d := &fokkerplanck.Diffusion{
+		Ring: sys.Ring, Drift: lim.Drift, A: lim.Diffusion,
+		Formulas: sys.Definitions(), Values: sys.Values(),
+	}
+	for _, v := range sys.Slow {
+		d.Slow = append(d.Slow, fokkerplanck.Variable{Name: v.Name, Kind: v.Domain.Kind, A: v.Domain.A, B: v.Domain.B})
+	}
+	return d
+}
+
+// TimeScale is the time on which the limit holds: "1", "1/eps", "1/eps^2".
+func (res *Result) TimeScale() string {
+	p := res.Limit.Power
+	switch {
+	case p.Sign() == 0:
+		return "1"
+	case p.Cmp(big.NewRat(1, 1)) == 0:
+		return "1/" + res.System.Small
+	case p.IsInt():
+		return "1/" + res.System.Small + "^" + p.Num().String()
+	}
+	return "1/" + res.System.Small + "^(" + p.RatString() + ")"
+}
+
+// conditions lists what the result needs beyond the declared signs.
+func (res *Result) conditions() {
+	seen := map[string]bool{}
+	add := func(s string) {
+		if !seen[s] {
+			seen[s] = true
+			res.Conditions = append(res.Conditions, s)
+		}
+	}
+	var have []algebra.Expr
+	if x := res.Limit.Existence; x != nil {
+		for _, c := range x.Conditions {
+			add(c.String())
+			have = append(have, c.Quantity)
+		}
+	}
+	for _, p := range res.Limit.Pivots {
+		covered := false
+		for _, f := range p.Factors() {
+			covered = true
+			known := f.Sign()&algebra.Zero == 0
+			for _, q := range have {
+				known = known || q.Equal(f) || q.Equal(f.Neg())
+			}
+			if !known {
+				covered = false
+				break
+			}
+		}
+		if !covered {
+			q := p.Primitive()
+			if q.Form().Op == algebra.FormNeg {
+				q = q.Neg()
+			}
+			add(cell.Condition{Quantity: q, Relation: "!="}.String())
+		}
+	}
+}
+
+// certify puts the correctors back into their equations.
+func (res *Result) certify() {
+	p := res.Limit.Process
+	for _, o := range res.Limit.Orders {
+		r := p.Residual(o.Sum, cell.Solution{Phi: o.Corrector, Mean: o.Mean})
+		c := Certificate{
+			What:   fmt.Sprintf("corrector at order %s^(%s)", res.System.Small, o.Power.RatString()),
+			Status: Exact, Detail: "L0 Phi + f - <f> = 0 identically",
+		}
+		if !r.IsZero() {
+			c.Status, c.Detail = Failed, "L0 Phi + f - <f> = "+r.String()
+		}
+		res.Certificates = append(res.Certificates, c)
+	}
+	if res.Noise != nil {
+		c := Certificate{What: "noise factor", Status: Exact, Detail: "sigma sigma^T - A = 0 identically"}
+		for i := range res.Noise {
+			for j := range res.Noise {
+				s := res.System.Ring.Int(0)
+				for k := range res.Noise[i] {
+					s = s.Add(res.Noise[i][k].Mul(res.Noise[j][k]))
+				}
+				switch s.Sub(res.Limit.Diffusion[i][j]).ZeroTest() {
+				case algebra.VerdictUndecided:
+					if c.Status == Exact {
+						c.Status, c.Detail = Numerical, "sigma sigma^T = A in extended precision"
+					}
+				case algebra.VerdictNonZero:
+					c.Status, c.Detail = Failed, "sigma sigma^T differs from A"
+				}
+			}
+		}
+		res.Certificates = append(res.Certificates, c)
+	}
+	if d := res.Stationary.Density; d.Valid() {
+		c := Certificate{What: "stationary density", Status: Exact, Detail: "div J = 0 identically"}
+		r := res.densityResidual(d, res.Stationary.WithFormulas, res.Stationary.WithValues)
+		switch r.ZeroTest() {
+		case algebra.VerdictUndecided:
+			c.Status, c.Detail = Numerical, "div J = 0 in extended precision"
+		case algebra.VerdictNonZero:
+			c.Status, c.Detail = Failed, "div J = "+r.String()
+		}
+		if res.Stationary.WithFormulas {
+			c.Detail += " (with the formulas given)"
+		}
+		res.Certificates = append(res.Certificates, c)
+	}
+	if x := res.Limit.Existence; x != nil {
+		for _, u := range x.Unchecked {
+			res.Certificates = append(res.Certificates, Certificate{"existence", Numerical, "not checked: " + u})
+		}
+	}
+}
+
+// densityResidual is div J divided by p, with functions and parameters
+// replaced as asked.
+func (res *Result) densityResidual(p algebra.Expr, formulas, values bool) algebra.Expr {
+	d := *res.Diffusion
+	r := d.Residual(p)
+	if q, err := r.Div(p); err == nil {
+		r = q
+	}
+	if formulas {
+		if q, err := r.SubsFunc(d.Formulas); err == nil {
+			r = q
+		}
+	}
+	if values {
+		if q, err := r.Subs(d.Values); err == nil {
+			r = q
+		}
+	}
+	return r
+}

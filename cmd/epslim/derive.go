@@ -1,0 +1,80 @@
+package main
+
+import (
+	"errors"
+	"fmt"
+
+	"github.com/spf13/cobra"
+
+	"epslim/cmd/epslim/derivation"
+	"epslim/cmd/epslim/present"
+	"epslim/generator/ito"
+)
+
+func (a *app) deriveCommand() *cobra.Command {
+	var format string
+	var at []string
+	cmd := &cobra.Command{
+		Use:   "derive FILE",
+		Short: "Derive the limiting SDE and its stationary density",
+		Example: `  epslim derive crawler.ito
+  epslim derive crawler.ito --format json --at "x=0.3,y=0.2"`,
+		Args: cobra.ExactArgs(1),
+		RunE: func(cmd *cobra.Command, args []string) error {
+			render, ok := formats[format]
+			if !ok {
+				return fmt.Errorf("--format is %q; it can be text, json, latex or markdown", format)
+			}
+			sys, err := a.read(args[0])
+			if err != nil {
+				return err
+			}
+			res, err := derivation.Run(cmd.Context(), sys, derivation.Options{At: at})
+			if err != nil {
+				return a.deriveError(err)
+			}
+			text, err := render(res)
+			if err != nil {
+				return err
+			}
+			if _, err := a.out.Write(text); err != nil {
+				return err
+			}
+			return outcome(res)
+		},
+	}
+	cmd.Flags().StringVar(&format, "format", "text", "text, json, latex or markdown")
+	cmd.Flags().StringArrayVar(&at, "at", nil, "a point \"x=0.3,y=0.2\" at which numbers are wanted; repeatable")
+	return cmd
+}
+
+// formats are the renderings of a derivation.
+var formats = map[string]func(*derivation.Result) ([]byte, error){
+	"json": func(r *derivation.Result) ([]byte, error) { return present.JSON(r, version) },
+}
+
+func (a *app) deriveError(err error) error {
+	var list ito.ErrorList
+	if errors.As(err, &list) {
+		return a.modelError(err)
+	}
+	return err
+}
+
+// outcome is the exit status of a derivation.
+func outcome(res *derivation.Result) error {
+	if res.Refused != nil {
+		return status(exitRefused)
+	}
+	for _, v := range res.Claims {
+		if v.Verdict == derivation.Refuted {
+			return status(exitFailed)
+		}
+	}
+	for _, c := range res.Certificates {
+		if c.Status == derivation.Failed {
+			return status(exitFailed)
+		}
+	}
+	return nil
+}

@@ -1,0 +1,253 @@
+package fokkerplanck
+
+import (
+	"context"
+	"errors"
+	"fmt"
+
+	"epslim/generator/algebra"
+	"epslim/generator/ito"
+)
+
+// Solve looks for the stationary law: with functions left as names first,
+// then with their formulas, then with the values of the parameters.
+func (d *Diffusion) Solve(ctx context.Context) (*Stationary, error) {
+	var out *Stationary
+	err := algebra.Guard(func() error {
+		var err error
+		out, err = d.solve(ctx)
+		return err
+	})
+	if errors.Is(err, algebra.ErrTooLarge) {
+		return &Stationary{Why: "the expressions outgrew the budget; the density is left to the grid"}, nil
+	}
+	return out, err
+}
+
+func (d *Diffusion) solve(ctx context.Context) (*Stationary, error) {
+	first, err := d.attempt(ctx)
+	if err != nil {
+		return nil, err
+	}
+	best := first
+	for _, level := range []struct{ formulas, values bool }{{true, false}, {true, true}} {
+		if best.Density.Valid() && best.Reversible != Unknown && (best.Reversible == Yes || level.values) {
+			break
+		}
+		if err := ctx.Err(); err != nil {
+			return nil, err
+		}
+		if len(d.Formulas) == 0 && !level.values || len(d.Values) == 0 && level.values {
+			continue
+		}
+		e, err := d.with(level.formulas, level.values)
+		if err != nil {
+			continue // the values lie where the limit is not defined
+		}
+		s, err := e.attempt(ctx)
+		if err != nil {
+			return nil, err
+		}
+		s.WithFormulas, s.WithValues = level.formulas, level.values
+		best = better(best, s)
+	}
+	d.finish(best)
+	return best, nil
+}
+
+// better prefers what is known in general over what is known for particular
+// formulas and values, and takes the rest from the particular.
+func better(a, b *Stationary) *Stationary {
+	switch {
+	case b.Reversible == Yes && a.Reversible != Yes:
+		return b
+	case a.Reversible == Unknown && b.Reversible != Unknown:
+		if a.Density.Valid() && b.Reversible != No {
+			a.Reversible, a.Why = b.Reversible, b.Why
+			return a
+		}
+		return b
+	case !a.Density.Valid() && b.Density.Valid():
+		b.Reversible, b.Curl, b.CurlAt, b.Why, b.H = a.Reversible, a.Curl, a.CurlAt, a.Why, a.H
+		return b
+	}
+	return a
+}
+
+// attempt works with the coefficients as they are.
+func (d *Diffusion) attempt(ctx context.Context) (*Stationary, error) {
+	s := &Stationary{}
+	zeroA := true
+	for _, row := range d.A {
+		for _, a := range row {
+			zeroA = zeroA && a.IsZero()
+		}
+	}
+	if zeroA {
+		s.Why = "the limit is deterministic"
+		return s, nil
+	}
+	h, ok, err := d.force()
+	if err != nil {
+		return nil, err
+	}
+	if !ok {
+		s.Why = "sigma sigma^T is singular: the potential condition does not apply"
+		d.irreversible(s)
+		return s, nil
+	}
+	s.H = h
+	s.Curl, s.CurlAt = d.curl(h)
+	if !s.Curl.IsZero() {
+		s.Reversible = No
+		s.Why = fmt.Sprintf("h = A^-1 (2 f - div A) is no gradient: its curl in (%s, %s) does not vanish", s.CurlAt[0], s.CurlAt[1])
+		d.irreversible(s)
+		return s, nil
+	}
+	d.reversible(s)
+	return s, nil
+}
+
+// reversible handles a curl-free h: the density is the exponential of its
+// potential, provided that this is single-valued.
+func (d *Diffusion) reversible(s *Stationary) {
+	u, err := d.Ring.Potential(s.H, d.names())
+	how := "potential of h in closed form"
+	if err != nil && len(d.Slow) == 1 {
+		u, how, err = d.integrate(s.H[0])
+	}
+	if err != nil {
+		// A gradient by its curl; with periodic variables it may still be
+		// multivalued.
+		if len(d.periods()) == 0 {
+			s.Reversible, s.Why = Yes, "h is a gradient; its potential was not found in closed form"
+		} else {
+			s.Why = "h is curl-free; whether its potential is single-valued is not decided in closed form"
+		}
+		return
+	}
+	truth, v, jump := d.singleValued(u)
+	switch truth {
+	case Yes:
+		s.Reversible, s.Why = Yes, "h is the gradient of a single-valued potential"
+	case No:
+		d.multivalued(s, v, jump)
+		if s.Reversible != Yes {
+			return
+		}
+	default:
+		s.Why = "whether the potential is single-valued is not decided"
+		return
+	}
+	p, err := d.Ring.Call("exp", u)
+	if err != nil {
+		return
+	}
+	s.Density, s.How = p, how
+}
+
+// multivalued decides by numbers when the jump of the potential over a
+// period is no closed zero.
+func (d *Diffusion) multivalued(s *Stationary, v string, jump algebra.Expr) {
+	s.Why = fmt.Sprintf("the potential of h changes by %s over a period of %s: the density is not exp of it unless that vanishes", jump, v)
+	x, err := numeric(jump)
+	switch {
+	case err != nil:
+		s.Reversible = Unknown
+	case x > 1e-9 || x < -1e-9:
+		s.Reversible = No
+		s.Why = fmt.Sprintf("the potential of h changes by %.10g over a period of %s, so it is not single-valued: a current runs around", x, v)
+	default:
+		s.Reversible = Yes
+		s.Why = fmt.Sprintf("the potential of h returns to its value over a period of %s (numerically, to %.1g)", v, x)
+	}
+}
+
+// integrate is the one-dimensional integrating factor: what has a closed
+// antiderivative is taken in closed form, the rest is kept as one named
+// integral.
+func (d *Diffusion) integrate(h algebra.Expr) (algebra.Expr, string, error) {
+	r := d.Ring
+	v := d.Slow[0]
+	u, rest := r.Int(0), r.Int(0)
+	for _, t := range h.SplitBy(v.Name) {
+		g := t.Coef.Mul(t.Fn)
+		w, err := r.Potential([]algebra.Expr{g}, []string{v.Name})
+		if err != nil {
+			rest = rest.Add(g)
+			continue
+		}
+		u = u.Add(w)
+	}
+	if rest.IsZero() {
+		return u, "integrating factor", nil
+	}
+	lo := r.Int(0)
+	if v.A.Valid() {
+		lo = v.A
+	} else if v.Kind == ito.HalfLine {
+		lo = r.Int(1)
+	}
+	x, _ := r.Symbol(v.Name)
+	name := "s"
+	for _, ok := r.Symbol(name); ok; _, ok = r.Symbol(name) {
+		name += "_"
+	}
+	dummy := r.Declare(name, algebra.Attr{})
+	f, err := rest.Subs(map[string]algebra.Expr{v.Name: dummy})
+	if err != nil {
+		return u, "", err
+	}
+	return u.Add(r.Integral(f, name, lo, x)), "integrating factor, with an integral left", nil
+}
+
+// irreversible tries closed forms for a density with a current.
+func (d *Diffusion) irreversible(s *Stationary) {
+	if p, ok := d.gaussian(); ok {
+		s.Density, s.How = p, "Gaussian from the Lyapunov equation"
+		return
+	}
+	try := func(p algebra.Expr, how string) bool {
+		if s.Density.Valid() || !d.Residual(p).IsZero() {
+			return false
+		}
+		if t, _, _ := d.singleValued(p); t == Yes {
+			s.Density, s.How = p, how
+			return true
+		}
+		return false
+	}
+	if try(d.Ring.Int(1), "the constant solves the stationary equation") {
+		return
+	}
+	if s.H == nil {
+		return
+	}
+	u, err := d.Ring.MatchGradient(s.H, d.names())
+	if err != nil || u.IsZero() {
+		return
+	}
+	if p, err := d.Ring.Call("exp", u); err == nil {
+		try(p, "the gradient part of h; the rest drives a current without divergence")
+	}
+}
+
+// finish adds the current and the question of normalisation.
+func (d *Diffusion) finish(s *Stationary) {
+	if !s.Density.Valid() {
+		return
+	}
+	e := d
+	if s.WithFormulas || s.WithValues {
+		if f, err := d.with(s.WithFormulas, s.WithValues); err == nil {
+			e = f
+		}
+	}
+	s.Current = e.Current(s.Density)
+	s.Normal, s.NormalWhy = d.normalisable(s.Density)
+	if s.Normal == No && s.How == "the constant solves the stationary equation" && s.Reversible == No {
+		// On an unbounded domain the constant says nothing then.
+		s.Density, s.How, s.Current = algebra.Expr{}, "", nil
+		s.Normal, s.NormalWhy = Unknown, ""
+	}
+}
