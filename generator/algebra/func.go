@@ -129,18 +129,22 @@ func (r *Ring) expReal(q rat, m Expr) Expr {
 		panic(errTooLarge)
 	}
 	// exp(c log w) is w^c.
-	if len(m.n.num) == 1 {
-		for _, p := range m.n.num[0].m.p {
-			if p.k.kind == kindCall && p.k.name == "log" && p.e == (expo{1, 1}) {
-				rest := m.over(r.kernelExpr(p.k)).Mul(r.ratExpr(q))
-				f, err := p.k.args[0].Pow(rest)
-				if err == nil {
-					return f
-				}
+	for _, p := range m.n.num[0].m.p {
+		if p.k.kind == kindCall && p.k.name == "log" && p.e == (expo{1, 1}) {
+			rest := m.over(r.kernelExpr(p.k)).Mul(r.ratExpr(q))
+			f, err := p.k.args[0].Pow(rest)
+			if err == nil && !rest.hasKernel(p.k) {
+				return f
 			}
 		}
 	}
 	return r.kernelPower(r.intern(&kernel{kind: kindExp, args: []Expr{m}, sign: Positive}), x)
+}
+
+func (e Expr) hasKernel(k *kernel) bool {
+	found := false
+	e.eachKernel(func(l *kernel) { found = found || l == k })
+	return found
 }
 
 // cis is exp(i q m) for real m.
@@ -350,8 +354,8 @@ func (r *Ring) signFunc(u Expr) (Expr, error) {
 	return out, nil
 }
 
-// gamma shifts a rational constant in the argument into (0, 1] and knows the
-// values at integers and half-integers.
+// gamma shifts a rational constant in the argument into [0, 1), a number
+// into (0, 1], and knows the values at integers and half-integers.
 func (r *Ring) gamma(u Expr) (Expr, error) {
 	if q, ok := u.rational(); ok && q.isInt() && q.sign() <= 0 {
 		return Expr{}, fmt.Errorf("gamma(%s) is infinite", u)
@@ -359,7 +363,10 @@ func (r *Ring) gamma(u Expr) (Expr, error) {
 	out := r.unit
 	shift := u.constantTerm()
 	if shift.big == nil {
-		n := -floorDiv(-shift.n, shift.d) - 1 // ceil - 1
+		n := floorDiv(shift.n, shift.d)
+		if u.isNumber() {
+			n = -floorDiv(-shift.n, shift.d) - 1 // ceil - 1
+		}
 		if n < 64 && n > -64 {
 			for ; n > 0; n-- {
 				u = u.Sub(r.unit)
@@ -470,16 +477,20 @@ func hasCis(p poly) bool {
 func (r *Ring) conjPoly(p poly) poly {
 	acc := r.accumulate(len(p))
 	for _, t := range p {
-		q := make([]power, len(t.m.p))
-		for i, x := range t.m.p {
-			if x.k.kind == kindCis {
-				x.e = x.e.neg()
-			}
-			q[i] = x
-		}
-		acc.add(r.internMono(q), t.c.conj())
+		acc.add(r.conjMono(t.m), t.c.conj())
 	}
 	return acc.poly()
+}
+
+func (r *Ring) conjMono(m *mono) *mono {
+	q := make([]power, len(m.p))
+	for i, x := range m.p {
+		if x.k.kind == kindCis {
+			x.e = x.e.neg()
+		}
+		q[i] = x
+	}
+	return r.internMono(q)
 }
 
 // symmetrise multiplies p by a unit (a number and powers of exp(i m)) so

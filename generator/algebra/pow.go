@@ -386,6 +386,9 @@ type linearPart struct {
 // denominator: the polynomial part is divided off first).
 func (e Expr) summands() []linearPart {
 	r := e.n.r
+	if out, ok := e.trigSummands(); ok {
+		return out
+	}
 	var out []linearPart
 	quo, rem := poly(nil), e.n.num
 	den := r.unit
@@ -401,6 +404,60 @@ func (e Expr) summands() []linearPart {
 		out = append(out, linearPart{t.c, r.fromPoly(poly{{t.m, coefOne}}).over(den)})
 	}
 	return out
+}
+
+// trigSummands does the same for expressions with exp(i m): conjugate pairs
+// become sines and cosines, so that every summand is real. ok is false where
+// there is no exp(i m) or the denominator cannot be made real.
+func (e Expr) trigSummands() (out []linearPart, ok bool) {
+	r := e.n.r
+	den := r.unit
+	trig := hasCis(e.n.num)
+	for _, f := range e.n.den {
+		p := f.f.p
+		if hasCis(p) {
+			trig = true
+			if p, ok = r.symmetrise(p); !ok {
+				return nil, false
+			}
+		}
+		den = den.Mul(r.fromPoly(p).powNat(f.e))
+	}
+	num := e.Mul(den)
+	if !trig || len(num.n.den) > 0 {
+		return nil, false
+	}
+	coefs := map[*mono]coef{}
+	for _, t := range num.n.num {
+		coefs[t.m] = t.c
+	}
+	half := coefRat(rat{n: 1, d: 2})
+	for _, t := range num.n.num {
+		conj := r.conjMono(t.m)
+		b, paired := coefs[conj]
+		if conj == t.m {
+			out = append(out, linearPart{t.c, r.fromPoly(poly{{t.m, coefOne}}).over(den)})
+			continue
+		}
+		a, m := t.c, t.m
+		if compareMono(m, conj) < 0 {
+			if paired {
+				continue // done with its partner
+			}
+			a, b, m, conj = coefZero, t.c, conj, t.m
+		} else if !paired {
+			b = coefZero
+		}
+		// a E + b/E = (a + b) cos + i (a - b) sin
+		cos := r.fromPoly(poly{{m, half}, {conj, half}}).over(den)
+		sin := r.fromPoly(poly{{m, half.mul(coefI.neg())}, {conj, half.mul(coefI)}}).over(den)
+		for _, s := range []linearPart{{a.add(b), cos}, {a.sub(b).mul(coefI), sin}} {
+			if !s.q.isZero() {
+				out = append(out, s)
+			}
+		}
+	}
+	return out, true
 }
 
 // divRem is the division with remainder in the lexicographic order; Laurent
