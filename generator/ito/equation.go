@@ -1,8 +1,6 @@
 package ito
 
 import (
-	"strings"
-
 	"epslim/generator/algebra"
 	"epslim/generator/ito/diagnostic"
 	"epslim/generator/ito/syntax"
@@ -292,53 +290,4 @@ func (r *reader) convert() {
 		}
 		eq.Drift = drift
 	}
-}
-
-// spheres checks that equations on the unit sphere keep it: with
-// y = (a, b, c) and |y| = 1, Ito's formula for |y|^2 gives
-//
-//	2 y.Drift + sum_k |Noise_k|^2 = 0 and y.Noise_k = 0 for each k.
-func (r *reader) spheres() {
-	s := r.system
-	for _, sphere := range s.Spheres {
-		var y [3]algebra.Expr
-		var eqs [3]*Equation
-		for i, n := range sphere.Names {
-			y[i], eqs[i] = s.Variable(n).Expr, s.Equation(n)
-		}
-		err := algebra.Guard(func() error {
-			one, two := r.ring.Int(1), r.ring.Int(2)
-			rest := one.Sub(y[0].Mul(y[0])).Sub(y[1].Mul(y[1]))
-			onSphere := func(e algebra.Expr) algebra.Expr { return e.ReduceSquare(sphere.Names[2], rest) }
-			drift := r.ring.Int(0)
-			for i := range y {
-				drift = drift.Add(two.Mul(y[i]).Mul(eqs[i].Drift))
-			}
-			name := strings.Join([]string{sphere.Names[0] + "^2", sphere.Names[1] + "^2", sphere.Names[2] + "^2"}, " + ")
-			for k, w := range s.Noises {
-				radial := r.ring.Int(0)
-				for i := range y {
-					radial = radial.Add(y[i].Mul(eqs[i].Noise[k]))
-					drift = drift.Add(eqs[i].Noise[k].Mul(eqs[i].Noise[k]))
-				}
-				if radial = onSphere(radial); !radial.IsZero() {
-					r.leaves(eqs, name, "d"+w, two.Mul(radial))
-					return nil
-				}
-			}
-			if drift = onSphere(drift); !drift.IsZero() {
-				r.leaves(eqs, name, "dt", drift)
-			}
-			return nil
-		})
-		if err != nil {
-			r.fail(eqs[0].Position, diagnostic.TooComplex, "the equations on the sphere are too large to be worked out")
-		}
-	}
-}
-
-// leaves reports equations that do not keep the sphere, at the first of them.
-func (r *reader) leaves(eqs [3]*Equation, name, differential string, rate algebra.Expr) {
-	d := r.fail(eqs[0].Position, diagnostic.LeavesSphere, "the equations leave the sphere: d("+name+") has the term ("+shorten(rate.String())+") "+differential)
-	d.Expected = "equations for which d(" + name + ") = 0, such as the rotational diffusion da = -2*D*a/eps^2 dt + sqrt(2*D)/eps*(b dW3 - c dW2), ..."
 }
