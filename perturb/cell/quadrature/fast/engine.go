@@ -255,6 +255,9 @@ func (e *Engine) Mean(ctx context.Context, g Function) (Value, error) {
 		}
 		var ns *NotSettled
 		if err != nil && !errors.As(err, &ns) {
+			if best.Scale > 0 && (errors.Is(err, ErrBudget) || ctx.Err() != nil) {
+				return best, e.unsettled(g.id, best)
+			}
 			return Value{}, err
 		}
 		if err == nil {
@@ -271,13 +274,23 @@ func (e *Engine) Mean(ctx context.Context, g Function) (Value, error) {
 			if err != nil {
 				return Value{}, err
 			}
-			return best, &NotSettled{Quantity: "average of " + e.nodes[g.id].label, Value: best, Tolerance: e.route.Tolerance, Resolution: e.levels[e.at].level.String()}
+			return best, e.unsettled(g.id, best)
 		}
 		e.at++
 		if e.at >= 2 {
 			e.levels[e.at-2] = nil
 		}
 	}
+}
+
+func (e *Engine) unsettled(id int, best Value) error {
+	n := &NotSettled{Quantity: "average of " + e.nodes[id].label, Value: best, Tolerance: e.route.Tolerance}
+	for k := e.at; k >= 0 && n.Resolution == ""; k-- {
+		if e.levels[k] != nil {
+			n.Resolution = e.levels[k].level.String()
+		}
+	}
+	return n
 }
 
 // At implements [Solver].

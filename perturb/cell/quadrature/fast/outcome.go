@@ -1,9 +1,14 @@
 package fast
 
 import (
+	"errors"
 	"fmt"
 	"strings"
 )
+
+// ErrBudget is returned by a route when the next level would not fit the
+// budget of memory.
+var ErrBudget = errors.New("the next resolution does not fit the budget")
 
 // NotErgodic says that the fast process has no stationary law or more than
 // one.

@@ -1,0 +1,237 @@
+package spectral
+
+import (
+	"context"
+	"errors"
+	"math"
+	"sort"
+)
+
+// errSingular is a matrix without an inverse.
+var errSingular = errors.New("spectral: singular matrix")
+
+// banded is an LU factorization with row interchanges of a sparse matrix after
+// a symmetric reordering that makes its band narrow (reverse Cuthill-McKee).
+type banded struct {
+	n, lower, upper int // bandwidths; upper counts fill from interchanges
+	order           []int
+	scale           []float64 // row scaling, by original index
+	lu              []float64 // row i holds columns i-lower .. i+upper
+	pivot           []int
+	smallest        float64 // smallest over largest pivot
+}
+
+func (b *banded) width() int { return b.lower + b.upper + 1 }
+
+func factorize(ctx context.Context, a sparse) (*banded, error) {
+	n := len(a)
+	b := &banded{n: n, order: cuthillMcKee(a), scale: make([]float64, n), pivot: make([]int, n)}
+	place := make([]int, n)
+	for i, o := range b.order {
+		place[o] = i
+	}
+	up := 0
+	for i, row := range a {
+		var largest float64
+		for _, e := range row {
+			largest = math.Max(largest, math.Abs(e.v))
+			d := place[e.col] - place[i]
+			b.lower, up = max(b.lower, -d), max(up, d)
+		}
+		if largest == 0 {
+			return nil, errSingular
+		}
+		b.scale[i] = 1 / largest
+	}
+	b.upper = up + b.lower
+	w := b.width()
+	b.lu = make([]float64, n*w)
+	for i, row := range a {
+		r := place[i]
+		for _, e := range row {
+			b.lu[r*w+place[e.col]-r+b.lower] += e.v * b.scale[i]
+		}
+	}
+	return b, b.eliminate(ctx)
+}
+
+func (b *banded) eliminate(ctx context.Context) error {
+	n, w := b.n, b.width()
+	small, large := math.Inf(1), 0.0
+	for k := 0; k < n; k++ {
+		if k%256 == 0 && ctx.Err() != nil {
+			return ctx.Err()
+		}
+		last := min(n-1, k+b.lower)
+		p, best := k, 0.0
+		for i := k; i <= last; i++ {
+			if v := math.Abs(b.lu[i*w+k-i+b.lower]); v > best {
+				p, best = i, v
+			}
+		}
+		if best == 0 {
+			return errSingular
+		}
+		small, large = math.Min(small, best), math.Max(large, best)
+		b.pivot[k] = p
+		cols := min(n-1, k+b.upper) - k + 1
+		top := b.lu[k*w+b.lower : k*w+b.lower+cols]
+		if p != k {
+			other := b.lu[p*w+k-p+b.lower : p*w+k-p+b.lower+cols]
+			for j := range top {
+				top[j], other[j] = other[j], top[j]
+			}
+		}
+		inv := 1 / top[0]
+		for i := k + 1; i <= last; i++ {
+			row := b.lu[i*w+k-i+b.lower : i*w+k-i+b.lower+cols]
+			f := row[0] * inv
+			row[0] = f
+			if f == 0 {
+				continue
+			}
+			rest := row[1:]
+			for j, t := range top[1:] {
+				rest[j] -= f * t
+			}
+		}
+	}
+	b.smallest = small / large
+	return nil
+}
+
+// solve returns x with A x = rhs.
+func (b *banded) solve(rhs []float64) []float64 {
+	n, w := b.n, b.width()
+	x := make([]float64, n)
+	for i, o := range b.order {
+		x[i] = rhs[o] * b.scale[o]
+	}
+	for k := 0; k < n; k++ {
+		if p := b.pivot[k]; p != k {
+			x[k], x[p] = x[p], x[k]
+		}
+		v := x[k]
+		if v == 0 {
+			continue
+		}
+		for i := k + 1; i <= min(n-1, k+b.lower); i++ {
+			x[i] -= b.lu[i*w+k-i+b.lower] * v
+		}
+	}
+	for k := n - 1; k >= 0; k-- {
+		row := b.lu[k*w+b.lower : (k+1)*w]
+		s := x[k]
+		for j := 1; j <= min(n-1-k, b.upper); j++ {
+			s -= row[j] * x[k+j]
+		}
+		x[k] = s / row[0]
+	}
+	out := make([]float64, n)
+	for i, o := range b.order {
+		out[o] = x[i]
+	}
+	return out
+}
+
+// solveTransposed returns x with A' x = rhs.
+func (b *banded) solveTransposed(rhs []float64) []float64 {
+	n, w := b.n, b.width()
+	x := make([]float64, n)
+	for i, o := range b.order {
+		x[i] = rhs[o]
+	}
+	for k := 0; k < n; k++ {
+		row := b.lu[k*w+b.lower : (k+1)*w]
+		x[k] /= row[0]
+		v := x[k]
+		if v == 0 {
+			continue
+		}
+		for j := 1; j <= min(n-1-k, b.upper); j++ {
+			x[k+j] -= row[j] * v
+		}
+	}
+	for k := n - 1; k >= 0; k-- {
+		s := x[k]
+		for i := k + 1; i <= min(n-1, k+b.lower); i++ {
+			s -= b.lu[i*w+k-i+b.lower] * x[i]
+		}
+		x[k] = s
+		if p := b.pivot[k]; p != k {
+			x[k], x[p] = x[p], x[k]
+		}
+	}
+	out := make([]float64, n)
+	for i, o := range b.order {
+		out[o] = x[i] * b.scale[o]
+	}
+	return out
+}
+
+// cuthillMcKee orders the symmetrized graph of a matrix breadth first from a
+// vertex far out, reversed.
+func cuthillMcKee(a sparse) []int {
+	n := len(a)
+	near := make([][]int, n)
+	for i, row := range a {
+		for _, e := range row {
+			if e.col != i {
+				near[i] = append(near[i], e.col)
+				near[e.col] = append(near[e.col], i)
+			}
+		}
+	}
+	for i := range near {
+		sort.Ints(near[i])
+		k := 0
+		for j, v := range near[i] {
+			if j == 0 || v != near[i][k-1] {
+				near[i][k] = v
+				k++
+			}
+		}
+		near[i] = near[i][:k]
+	}
+	order := make([]int, 0, n)
+	done := make([]bool, n)
+	for i := 0; i < n; i++ {
+		if done[i] {
+			continue
+		}
+		start := i
+		for k := 0; k < 4; k++ {
+			level := breadthFirst(near, start, nil)
+			far := level[len(level)-1]
+			if far == start {
+				break
+			}
+			start = far
+		}
+		order = append(order, breadthFirst(near, start, done)...)
+	}
+	for i, j := 0, n-1; i < j; i, j = i+1, j-1 {
+		order[i], order[j] = order[j], order[i]
+	}
+	return order
+}
+
+func breadthFirst(near [][]int, start int, done []bool) []int {
+	if done == nil {
+		done = make([]bool, len(near))
+	}
+	queue := []int{start}
+	done[start] = true
+	for k := 0; k < len(queue); k++ {
+		var next []int
+		for _, v := range near[queue[k]] {
+			if !done[v] {
+				done[v] = true
+				next = append(next, v)
+			}
+		}
+		sort.SliceStable(next, func(i, j int) bool { return len(near[next[i]]) < len(near[next[j]]) })
+		queue = append(queue, next...)
+	}
+	return queue
+}

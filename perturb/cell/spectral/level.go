@@ -1,0 +1,457 @@
+package spectral
+
+import (
+	"context"
+	"fmt"
+	"math"
+
+	"epslim/perturb/cell/quadrature/fast"
+)
+
+// maxEntries bounds the memory of a factorization (in float64).
+const maxEntries = 40_000_000
+
+// level is the fast problem in one tensor basis. A function is its
+// coefficient vector; the last space varies fastest.
+type level struct {
+	p      *fast.Problem
+	spaces []*space
+	sizes  []int
+	n      int
+	matrix sparse
+	lu     *banded
+	rho    []float64
+}
+
+func newLevel(ctx context.Context, p *fast.Problem, spaces []*space) (*level, error) {
+	l := &level{p: p, spaces: spaces, n: 1}
+	for _, s := range spaces {
+		l.sizes = append(l.sizes, s.n)
+		l.n *= s.n
+	}
+	if l.n > 60000 {
+		return nil, fast.ErrBudget
+	}
+	m, err := l.generator(ctx)
+	if err != nil {
+		return nil, err
+	}
+	// Column 0 of L0 is zero (L0 1 = 0); it carries the unknown average.
+	for i, row := range m {
+		k := 0
+		for _, e := range row {
+			if e.col != 0 {
+				row[k] = e
+				k++
+			}
+		}
+		m[i] = row[:k]
+	}
+	m[0] = append([]entry{{0, -1}}, m[0]...)
+	l.matrix = m
+	if l.lu, err = factorize(ctx, m); err != nil {
+		if err == errSingular {
+			return nil, l.reducible()
+		}
+		return nil, err
+	}
+	if l.lu.smallest < 1e-16 {
+		return nil, l.reducible()
+	}
+	rhs := make([]float64, l.n)
+	rhs[0] = -1
+	l.rho = l.lu.solveTransposed(rhs)
+	// One step of iterative refinement.
+	r := make([]float64, l.n)
+	copy(r, rhs)
+	for i, row := range m {
+		for _, e := range row {
+			r[e.col] -= e.v * l.rho[i]
+		}
+	}
+	for i, v := range l.lu.solveTransposed(r) {
+		l.rho[i] += v
+	}
+	return l, nil
+}
+
+func (l *level) reducible() error {
+	return &fast.NotErgodic{Reason: "the generator has more than one null function (in " + l.String() + ")",
+		Mend: "noise or drift that connects all parts of the fast domain"}
+}
+
+// generator assembles L0, by parts at walls.
+func (l *level) generator(ctx context.Context) (sparse, error) {
+	op := l.p.Generator()
+	var terms []product
+	var dense sparse
+	for i := range op {
+		if err := ctx.Err(); err != nil {
+			return nil, err
+		}
+		if k := l.wallOf(op[i]); k >= 0 {
+			if op[i].Order[l.spaces[k].first] != 2 {
+				return nil, &fast.Unsupported{Method: "spectral", Reason: "noise shared between a reflected variable and another one"}
+			}
+		}
+		parts, ok := separate(&op[i].Coefficient, l.p)
+		if !ok {
+			m, err := l.gridMatrix(&op[i])
+			if err != nil {
+				return nil, err
+			}
+			if dense == nil {
+				dense = m
+			} else {
+				dense = dense.plus(1, m)
+			}
+			continue
+		}
+		terms = append(terms, l.products(parts, op[i].Order, true)...)
+	}
+	m := kronecker(l.sizes, terms)
+	if dense != nil {
+		m = m.plus(1, dense)
+	}
+	return m, nil
+}
+
+// wallOf returns the space with a wall in which a term has two derivatives, -1
+// for none.
+func (l *level) wallOf(t fast.OperatorTerm) int {
+	if t.Total() != 2 {
+		return -1
+	}
+	for k, s := range l.spaces {
+		if s.wall && t.Order[s.first] > 0 {
+			return k
+		}
+	}
+	return -1
+}
+
+// products turns separable terms into Kronecker products.
+func (l *level) products(terms []fast.Term, order []int, generator bool) []product {
+	var out []product
+	for _, t := range terms {
+		if t.Constant == 0 {
+			continue
+		}
+		p := product{c: t.Constant}
+		for _, s := range l.spaces {
+			o := s.orders(order)
+			if generator && s.wall && o[0] == 2 {
+				p.factors = append(p.factors, s.byParts(t.Factors))
+			} else {
+				p.factors = append(p.factors, s.operator(t.Factors, o))
+			}
+		}
+		out = append(out, p)
+	}
+	return out
+}
+
+// orders is the part of a multi-index that concerns a space.
+func (s *space) orders(order []int) []int {
+	if order == nil {
+		return make([]int, len(s.deriv))
+	}
+	return order[s.first : s.first+len(s.deriv)]
+}
+
+// separate writes a coefficient as a sum of products, when it is given so or
+// depends on one coordinate only.
+func separate(c *fast.Coefficient, p *fast.Problem) ([]fast.Term, bool) {
+	if c.Terms != nil {
+		return c.Terms, true
+	}
+	if c.IsZero() {
+		return nil, true
+	}
+	n := p.Coordinates()
+	if n == 1 {
+		return []fast.Term{{Constant: 1, Factors: []fast.Factor{{Kind: fast.Other, Func: func(y float64) float64 { return c.At(y) }}}}}, true
+	}
+	base := probe(p, 0)
+	depends := -1
+	for i := 0; i < n; i++ {
+		for t := 1; t < 6; t++ {
+			y, z := probe(p, t), probe(p, t+7)
+			w := append([]float64{}, y...)
+			w[i] = z[i]
+			if c.At(y...) != c.At(w...) {
+				if depends >= 0 && depends != i {
+					return nil, false
+				}
+				depends = i
+				break
+			}
+		}
+	}
+	if depends < 0 {
+		return []fast.Term{{Constant: c.At(base...)}}, true
+	}
+	k := depends
+	for _, d := range p.Domains {
+		if d.Kind == fast.Sphere {
+			return nil, false // a component cannot vary alone
+		}
+	}
+	return []fast.Term{{Constant: 1, Factors: []fast.Factor{{Coordinate: k, Kind: fast.Other, Func: func(v float64) float64 {
+		y := append([]float64{}, base...)
+		y[k] = v
+		return c.At(y...)
+	}}}}}, true
+}
+
+// probe is the t-th of a sequence of scattered points of the domain.
+func probe(p *fast.Problem, t int) []float64 {
+	var y []float64
+	for k, d := range p.Domains {
+		u := math.Mod(0.61803398875*float64(t+1)+0.414*float64(k), 1)
+		a, b := d.Ends()
+		switch d.Kind {
+		case fast.Line:
+			y = append(y, 4*u-2)
+		case fast.HalfLine:
+			y = append(y, 0.2+2*u)
+		case fast.Sphere:
+			s, c := math.Sincos(7 * u)
+			z := 1.8*u - 0.9
+			r := math.Sqrt(1 - z*z)
+			y = append(y, r*c, r*s, z)
+		default:
+			y = append(y, a+(b-a)*(0.05+0.9*u))
+		}
+	}
+	return y
+}
+
+// Coefficient implements fast.Level.
+func (l *level) Coefficient(c *fast.Coefficient) (fast.Vector, error) {
+	terms, ok := separate(c, l.p)
+	if !ok {
+		h, err := l.onGrid(c)
+		if err != nil {
+			return nil, err
+		}
+		return l.fromGrid(h), nil
+	}
+	out := make([]float64, l.n)
+	for _, t := range terms {
+		v := []float64{t.Constant}
+		for _, s := range l.spaces {
+			v = outer(v, s.expand(t.Factors))
+		}
+		for i, x := range v {
+			out[i] += x
+		}
+	}
+	return out, finite(out, c)
+}
+
+func finite(v []float64, c *fast.Coefficient) error {
+	for _, x := range v {
+		if math.IsNaN(x) || math.IsInf(x, 0) {
+			return &fast.Undefined{Coefficient: c.Label(), Value: x}
+		}
+	}
+	return nil
+}
+
+func outer(a, b []float64) []float64 {
+	out := make([]float64, 0, len(a)*len(b))
+	for _, x := range a {
+		for _, y := range b {
+			out = append(out, x*y)
+		}
+	}
+	return out
+}
+
+// Sum implements fast.Level.
+func (l *level) Sum(factors []float64, u []fast.Vector) (fast.Vector, error) {
+	out := make([]float64, l.n)
+	for k, w := range u {
+		for i, x := range w.([]float64) {
+			out[i] += factors[k] * x
+		}
+	}
+	return out, nil
+}
+
+// along applies one matrix to one axis of a tensor.
+func (l *level) along(m sparse, u []float64, axis int) []float64 {
+	inner := 1
+	for _, s := range l.sizes[axis+1:] {
+		inner *= s
+	}
+	size := l.sizes[axis]
+	out := make([]float64, len(u))
+	for o := 0; o < len(u); o += size * inner {
+		for r, row := range m {
+			dst := out[o+r*inner : o+(r+1)*inner]
+			for _, e := range row {
+				src := u[o+e.col*inner : o+(e.col+1)*inner]
+				for i, x := range src {
+					dst[i] += e.v * x
+				}
+			}
+		}
+	}
+	return out
+}
+
+// Apply implements fast.Level.
+func (l *level) Apply(op fast.Operator, w fast.Vector) (fast.Vector, error) {
+	u := w.([]float64)
+	out := make([]float64, l.n)
+	for i := range op {
+		for _, s := range l.spaces {
+			if s.domain.Kind == fast.Sphere && total(s.orders(op[i].Order)) > 2 {
+				return nil, &fast.Unsupported{Method: "spectral", Reason: "derivatives of third order on a sphere"}
+			}
+		}
+		terms, ok := separate(&op[i].Coefficient, l.p)
+		if !ok {
+			v, err := l.gridApply(&op[i], u)
+			if err != nil {
+				return nil, err
+			}
+			for j, x := range v {
+				out[j] += x
+			}
+			continue
+		}
+		for _, p := range l.products(terms, op[i].Order, false) {
+			v := u
+			for k, m := range p.factors {
+				v = l.along(m, v, k)
+			}
+			for j, x := range v {
+				out[j] += p.c * x
+			}
+		}
+	}
+	return out, nil
+}
+
+func total(order []int) int {
+	s := 0
+	for _, o := range order {
+		s += o
+	}
+	return s
+}
+
+// Product implements fast.Level.
+func (l *level) Product(a, b fast.Vector) (fast.Vector, error) {
+	x, y := l.toGrid(a.([]float64)), l.toGrid(b.([]float64))
+	for i := range x {
+		x[i] *= y[i]
+	}
+	return l.fromGrid(x), nil
+}
+
+// Mean implements fast.Level.
+func (l *level) Mean(w fast.Vector) (fast.Value, error) {
+	u := w.([]float64)
+	var s, nu, nr float64
+	for i, x := range u {
+		s += l.rho[i] * x
+		nu += x * x
+		nr += l.rho[i] * l.rho[i]
+	}
+	scale := math.Sqrt(nu)
+	r := 1e-15 * scale * math.Sqrt(nr)
+	return fast.Value{Value: s, Scale: scale, Rounding: r, Error: r}, nil
+}
+
+// Solve implements fast.Level.
+func (l *level) Solve(w fast.Vector) (fast.Vector, error) {
+	u := w.([]float64)
+	rhs := make([]float64, l.n)
+	for i, x := range u {
+		rhs[i] = -x
+	}
+	phi := l.lu.solve(rhs)
+	r := l.matrix.apply(phi)
+	for i := range r {
+		r[i] = rhs[i] - r[i]
+	}
+	for i, v := range l.lu.solve(r) {
+		phi[i] += v
+	}
+	phi[0] = 0
+	var mean float64
+	for i, x := range phi {
+		mean += l.rho[i] * x
+	}
+	phi[0] = -mean
+	return phi, nil
+}
+
+// At implements fast.Level.
+func (l *level) At(w fast.Vector, y [][]float64) ([]float64, error) {
+	u := w.([]float64)
+	out := make([]float64, len(y[0]))
+	for k := range out {
+		v := u
+		for i := len(l.spaces) - 1; i >= 0; i-- {
+			s := l.spaces[i]
+			point := make([]float64, len(s.deriv))
+			for c := range point {
+				point[c] = y[s.first+c][k]
+			}
+			v = contract(v, s.values(point))
+		}
+		out[k] = v[0]
+	}
+	return out, nil
+}
+
+// contract sums over the last axis.
+func contract(v, b []float64) []float64 {
+	out := make([]float64, len(v)/len(b))
+	for i := range out {
+		var s float64
+		for j, x := range b {
+			s += v[i*len(b)+j] * x
+		}
+		out[i] = s
+	}
+	return out
+}
+
+// Density implements fast.Level.
+func (l *level) Density(y [][]float64) ([]float64, error) {
+	out, err := l.At(l.rho, y)
+	if err != nil {
+		return nil, err
+	}
+	for k := range out {
+		for _, s := range l.spaces {
+			point := make([]float64, len(s.deriv))
+			for c := range point {
+				point[c] = y[s.first+c][k]
+			}
+			out[k] *= s.density(point)
+		}
+	}
+	return out, nil
+}
+
+// String implements fast.Level.
+func (l *level) String() string {
+	s := ""
+	for i, x := range l.spaces {
+		if i > 0 {
+			s += " x "
+		}
+		s += fmt.Sprint(x.n)
+	}
+	return s + " basis functions"
+}
+
+// Unknowns implements fast.Level.
+func (l *level) Unknowns() int { return l.n }

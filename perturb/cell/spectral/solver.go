@@ -1,0 +1,144 @@
+package spectral
+
+import (
+	"context"
+	"math"
+
+	"epslim/perturb/cell/quadrature/fast"
+)
+
+// Settings are the options of [New]; the zero value works.
+type Settings struct {
+	// Tolerance is relative to the size of what is averaged; default 1e-10.
+	Tolerance float64
+	// Levels bounds how often the basis is raised; default all that there are.
+	Levels int
+}
+
+// sizes of the bases by level: polynomials, Fourier modes, degree on a sphere.
+type sizes struct{ polynomial, modes, degree int }
+
+var ladder = [...][]sizes{
+	1: {{24, 16, 8}, {40, 28, 12}, {60, 48, 18}, {90, 96, 26}, {130, 200, 34}, {180, 400, 40}},
+	2: {{14, 6, 5}, {22, 10, 8}, {34, 16, 12}, {48, 24, 16}, {64, 34, 20}, {84, 44, 24}},
+	3: {{8, 3, 3}, {12, 5, 5}, {16, 7, 7}, {20, 9, 9}, {25, 12, 11}},
+	4: {{5, 2, 2}, {7, 3, 3}, {9, 4, 4}, {11, 5, 5}},
+}
+
+// New prepares a problem of any number of fast variables that a tensor basis
+// can hold. It returns [*fast.NotErgodic] or [*fast.Unsupported] where there
+// is no answer by this route.
+func New(ctx context.Context, p *fast.Problem, s Settings) (*fast.Engine, error) {
+	if err := p.Check(); err != nil {
+		return nil, err
+	}
+	if s.Tolerance == 0 {
+		s.Tolerance = 1e-10
+	}
+	f := newFitter(p)
+	if err := f.fit(ctx); err != nil {
+		return nil, err
+	}
+	m := &maker{p: p, f: f, steps: ladder[min(len(p.Domains), len(ladder)-1)]}
+	if err := m.adjust(ctx); err != nil {
+		return nil, err
+	}
+	levels := len(m.steps)
+	if s.Levels >= 2 {
+		levels = min(levels, s.Levels)
+	}
+	var notes []string
+	for _, i := range f.open {
+		notes = append(notes, f.domain(i).Name(0)+": polynomials for the "+f.laws[i].about)
+	}
+	return fast.NewEngine(fast.Route{Method: "spectral", Notes: notes, Levels: levels, Tolerance: s.Tolerance,
+		Make: func(ctx context.Context, k int, _ []*fast.Coefficient) (fast.Level, error) {
+			return m.level(ctx, m.steps[k])
+		}}), nil
+}
+
+type maker struct {
+	p     *fast.Problem
+	f     *fitter
+	steps []sizes
+}
+
+func (m *maker) level(ctx context.Context, z sizes) (fast.Level, error) {
+	spaces, err := m.spaces(z)
+	if err != nil {
+		return nil, err
+	}
+	return newLevel(ctx, m.p, spaces)
+}
+
+func (m *maker) spaces(z sizes) ([]*space, error) {
+	var out []*space
+	c := 0
+	for _, d := range m.p.Domains {
+		switch {
+		case d.Kind == fast.Sphere:
+			out = append(out, sphere(d, c, z.degree))
+		case d.IsPeriodic():
+			out = append(out, fourier(d, c, z.modes))
+		default:
+			s, err := polynomial(d, c, m.f.laws[c], z.polynomial)
+			if err != nil {
+				return nil, err
+			}
+			s.wall = m.f.wall[c]
+			out = append(out, s)
+		}
+		c += d.Coordinates()
+	}
+	return out, nil
+}
+
+// adjust compares mean and deviation of every coordinate on a line with those
+// of its weight, at low resolution, and moves and stretches weights that miss.
+func (m *maker) adjust(ctx context.Context) error {
+	if m.f.exact || len(m.p.Domains) == 1 {
+		return nil
+	}
+	for round := 0; round < 4; round++ {
+		made, err := m.level(ctx, m.steps[0])
+		if err != nil {
+			return err
+		}
+		l := made.(*level)
+		changed := false
+		for _, i := range m.f.open {
+			if m.f.domain(i).Kind != fast.Line {
+				continue
+			}
+			mean, sd := l.moments(i)
+			wm, ws := m.f.laws[i].moments()
+			if math.IsNaN(sd) || sd <= 0 || math.IsInf(sd, 0) {
+				continue
+			}
+			if math.Abs(mean-wm) > 0.3*ws || sd > 1.3*ws || sd < ws/1.3 {
+				scale := sd / ws
+				m.f.laws[i] = m.f.laws[i].affine(mean-scale*wm, scale)
+				changed = true
+			}
+		}
+		if !changed {
+			break
+		}
+	}
+	return nil
+}
+
+// moments returns mean and deviation of a coordinate under the computed law.
+func (l *level) moments(i int) (mean, sd float64) {
+	avg := func(p float64) float64 {
+		c := fast.SumOf("y", fast.Term{Constant: 1, Factors: []fast.Factor{{Coordinate: i, Kind: fast.Power, P: p}}})
+		v, err := l.Coefficient(&c)
+		if err != nil {
+			return math.NaN()
+		}
+		m, _ := l.Mean(v)
+		return m.Value
+	}
+	mean = avg(1)
+	return mean, math.Sqrt(avg(2) - mean*mean)
+}

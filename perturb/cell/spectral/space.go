@@ -1,0 +1,425 @@
+package spectral
+
+import (
+	"fmt"
+	"math"
+	"strings"
+
+	"gonum.org/v1/gonum/mat"
+
+	"epslim/perturb/cell/quadrature/fast"
+)
+
+// space is the basis of one domain, orthonormal in L2 of a probability weight,
+// with phi_0 = 1.
+type space struct {
+	domain fast.Domain
+	first  int // index of its first coordinate
+	n, q   int
+	// nodes[c][j] is coordinate c of quadrature node j; root[j] the square root
+	// of its weight; basis[j*n+m] is phi_m times root.
+	nodes [][]float64
+	root  []float64
+	basis []float64
+	// deriv differentiates coefficient vectors along each coordinate.
+	deriv []sparse
+	// deriv2 are the second derivatives on a sphere.
+	deriv2 map[[2]int]sparse
+	// logSlope is the derivative of the log weight at the nodes; nil when the
+	// weight is uniform. Needed at walls only.
+	logSlope []float64
+	// values evaluates the basis at a point of the domain; density the weight.
+	values  func(y []float64) []float64
+	density func(y []float64) float64
+	// wall says that the second derivative must be integrated by parts.
+	wall bool
+	// multiply, when not nil, gives exact sparse products for polynomials.
+	multiply func(powers []int) sparse
+	cache    map[string]sparse
+	about    string
+}
+
+// fourier is the real Fourier basis 1, sqrt2 cos, sqrt2 sin, ... with k modes.
+func fourier(d fast.Domain, first, k int) *space {
+	a, b := d.Ends()
+	n, q := 2*k+1, 4*k+32
+	s := &space{domain: d, first: first, n: n, q: q, cache: map[string]sparse{}, about: fmt.Sprintf("Fourier %d", k)}
+	w := 2 * math.Pi / (b - a)
+	s.values = func(y []float64) []float64 {
+		out := make([]float64, n)
+		out[0] = 1
+		for j := 1; j <= k; j++ {
+			sin, cos := math.Sincos(float64(j) * w * (y[0] - a))
+			out[2*j-1], out[2*j] = math.Sqrt2*cos, math.Sqrt2*sin
+		}
+		return out
+	}
+	s.density = func([]float64) float64 { return 1 / (b - a) }
+	s.nodes = [][]float64{make([]float64, q)}
+	s.root, s.basis = make([]float64, q), make([]float64, q*n)
+	for j := 0; j < q; j++ {
+		y := a + (b-a)*float64(j)/float64(q)
+		s.nodes[0][j], s.root[j] = y, 1/math.Sqrt(float64(q))
+		for m, v := range s.values([]float64{y}) {
+			s.basis[j*n+m] = v * s.root[j]
+		}
+	}
+	d1 := newSparse(n)
+	for j := 1; j <= k; j++ {
+		// d cos = -jw sin, d sin = jw cos
+		d1[2*j] = []entry{{2*j - 1, -float64(j) * w}}
+		d1[2*j-1] = []entry{{2 * j, float64(j) * w}}
+	}
+	s.deriv = []sparse{d1}
+	return s
+}
+
+// measure is a discrete probability measure on a line.
+type measure struct {
+	y, w []float64
+	// logSlope is the derivative of the log density, nil when uniform.
+	logSlope func(y float64) float64
+	density  func(y float64) float64
+	about    string
+}
+
+// affine returns the measure of shift + scale*y.
+func (m *measure) affine(shift, scale float64) *measure {
+	out := &measure{y: make([]float64, len(m.y)), w: m.w, about: fmt.Sprintf("%s, moved by %.3g and stretched by %.3g", m.about, shift, scale)}
+	for i, y := range m.y {
+		out.y[i] = shift + scale*y
+	}
+	if m.density != nil {
+		out.density = func(y float64) float64 { return m.density((y-shift)/scale) / scale }
+	}
+	if m.logSlope != nil {
+		out.logSlope = func(y float64) float64 { return m.logSlope((y-shift)/scale) / scale }
+	}
+	return out
+}
+
+func (m *measure) moments() (mean, sd float64) {
+	for i, y := range m.y {
+		mean += m.w[i] * y
+	}
+	for i, y := range m.y {
+		sd += m.w[i] * (y - mean) * (y - mean)
+	}
+	return mean, math.Sqrt(sd)
+}
+
+// stieltjes returns the recurrence of the orthonormal polynomials of a
+// measure: y p_k = b_{k+1} p_{k+1} + a_k p_k + b_k p_{k-1}.
+func stieltjes(m *measure, n int) (a, b []float64) {
+	a, b = make([]float64, n), make([]float64, n+1)
+	size := len(m.y)
+	// Vectors carry the square root of the weight, so nothing overflows.
+	prev, cur := make([]float64, size), make([]float64, size)
+	for i, w := range m.w {
+		cur[i] = math.Sqrt(w)
+	}
+	for k := 0; k < n; k++ {
+		var s float64
+		for i, v := range cur {
+			s += m.y[i] * v * v
+		}
+		a[k] = s
+		next := prev
+		var norm float64
+		for i, v := range cur {
+			next[i] = (m.y[i]-s)*v - b[k]*prev[i]
+			norm += next[i] * next[i]
+		}
+		b[k+1] = math.Sqrt(norm)
+		for i := range next {
+			next[i] /= b[k+1]
+		}
+		prev, cur = cur, next
+	}
+	return a, b
+}
+
+// polynomial is the basis of the first n orthonormal polynomials of a measure.
+func polynomial(d fast.Domain, first int, m *measure, n int) (*space, error) {
+	q := n + n/2 + 12
+	a, b := stieltjes(m, q)
+	j := mat.NewSymDense(q, nil)
+	for k := 0; k < q; k++ {
+		j.SetSym(k, k, a[k])
+		if k+1 < q {
+			j.SetSym(k, k+1, b[k+1])
+		}
+	}
+	var eigen mat.EigenSym
+	if !eigen.Factorize(j, false) {
+		return nil, fmt.Errorf("spectral: no Gauss nodes for the weight of %s", d.Name(0))
+	}
+	s := &space{domain: d, first: first, n: n, q: q, cache: map[string]sparse{}, about: fmt.Sprintf("polynomials %d for the %s", n, m.about)}
+	s.nodes = [][]float64{eigen.Values(nil)}
+	s.root, s.basis = make([]float64, q), make([]float64, q*n)
+	slopes := make([]float64, q*n)
+	for i, y := range s.nodes[0] {
+		p, dp := recurrence(a, b, q, y)
+		var sum float64
+		for _, v := range p {
+			sum += v * v
+		}
+		s.root[i] = 1 / math.Sqrt(sum)
+		for k := 0; k < n; k++ {
+			s.basis[i*n+k], slopes[i*n+k] = p[k]*s.root[i], dp[k]*s.root[i]
+		}
+	}
+	d1 := make([]float64, n*n)
+	for i := 0; i < q; i++ {
+		for r := 0; r < n; r++ {
+			v := s.basis[i*n+r]
+			for c := r + 1; c < n; c++ { // the derivative lowers the degree
+				d1[r*n+c] += v * slopes[i*n+c]
+			}
+		}
+	}
+	s.deriv = []sparse{fromDense(n, d1)}
+	s.values = func(y []float64) []float64 {
+		p, _ := recurrence(a, b, n, y[0])
+		return p
+	}
+	s.density = func(y []float64) float64 {
+		if m.density == nil {
+			return math.NaN()
+		}
+		return m.density(y[0])
+	}
+	if m.logSlope != nil {
+		s.logSlope = make([]float64, q)
+		for i, y := range s.nodes[0] {
+			s.logSlope[i] = m.logSlope(y)
+		}
+	}
+	return s, nil
+}
+
+// recurrence evaluates orthonormal polynomials and their derivatives.
+func recurrence(a, b []float64, n int, y float64) (p, dp []float64) {
+	p, dp = make([]float64, n), make([]float64, n)
+	p[0] = 1
+	for k := 0; k+1 < n; k++ {
+		v, dv := (y-a[k])*p[k], p[k]+(y-a[k])*dp[k]
+		if k > 0 {
+			v -= b[k] * p[k-1]
+			dv -= b[k] * dp[k-1]
+		}
+		p[k+1], dp[k+1] = v/b[k+1], dv/b[k+1]
+	}
+	return p, dp
+}
+
+// own returns the factors that concern this space, with coordinates counted
+// from its first, and a key for the cache.
+func (s *space) own(factors []fast.Factor) (mine []fast.Factor, key string, cacheable bool) {
+	var b strings.Builder
+	cacheable = true
+	for _, f := range factors {
+		c := f.Coordinate - s.first
+		if c < 0 || c >= len(s.deriv) {
+			continue
+		}
+		f.Coordinate = c
+		mine = append(mine, f)
+		if f.Kind == fast.Other {
+			cacheable = false
+		}
+		fmt.Fprintf(&b, "%d,%d,%g;", c, f.Kind, f.P)
+	}
+	return mine, b.String(), cacheable
+}
+
+// sample evaluates a product of factors at the nodes.
+func (s *space) sample(factors []fast.Factor) []float64 {
+	h := make([]float64, s.q)
+	for j := range h {
+		h[j] = 1
+		for _, f := range factors {
+			h[j] *= f.Value(s.nodes[f.Coordinate][j])
+		}
+	}
+	return h
+}
+
+// operator is the matrix <phi_m, h d^order phi_n>; order counts this space's
+// coordinates.
+func (s *space) operator(factors []fast.Factor, order []int) sparse {
+	mine, key, cacheable := s.own(factors)
+	key += fmt.Sprint("|", order)
+	if m, ok := s.cache[key]; ok && cacheable {
+		return m
+	}
+	var m sparse
+	if len(mine) == 0 {
+		m = identity(s.n)
+	} else if p, ok := powers(mine, len(s.deriv)); ok && s.multiply != nil {
+		m = s.multiply(p)
+	} else {
+		m = s.project(s.sample(mine))
+	}
+	if d := s.derivative(order); d != nil {
+		m = m.times(d)
+	}
+	if cacheable {
+		s.cache[key] = m
+	}
+	return m
+}
+
+// project is the matrix of multiplication by h, given at the nodes.
+func (s *space) project(h []float64) sparse {
+	n := s.n
+	a := make([]float64, n*n)
+	for j, v := range h {
+		row := s.basis[j*n : (j+1)*n]
+		for r, x := range row {
+			x *= v
+			if x == 0 {
+				continue
+			}
+			out := a[r*n : (r+1)*n]
+			for c, y := range row {
+				out[c] += x * y
+			}
+		}
+	}
+	return fromDense(n, a)
+}
+
+// derivative is the matrix of a derivative; nil for none. On a sphere
+// functions are extended with degree 0, for which d_i d_j = D_i D_j - y_i D_j
+// with the tangential derivatives D.
+func (s *space) derivative(order []int) sparse {
+	if s.domain.Kind != fast.Sphere {
+		if order[0] == 0 {
+			return nil
+		}
+		d := s.deriv[0]
+		for k := 1; k < order[0]; k++ {
+			d = d.times(s.deriv[0])
+		}
+		return d
+	}
+	var which []int
+	for c, o := range order {
+		for k := 0; k < o; k++ {
+			which = append(which, c)
+		}
+	}
+	switch len(which) {
+	case 0:
+		return nil
+	case 1:
+		return s.deriv[which[0]]
+	}
+	return s.deriv2[[2]int{which[0], which[1]}]
+}
+
+// byParts is <phi_m, h phi_n”> with the boundary terms dropped:
+// -<(h phi_m)' + h phi_m (log w)', phi_n'>.
+func (s *space) byParts(factors []fast.Factor) sparse {
+	mine, key, cacheable := s.own(factors)
+	key += "|parts"
+	if m, ok := s.cache[key]; ok && cacheable {
+		return m
+	}
+	h, dh := s.sample(mine), s.slope(mine)
+	if s.logSlope != nil {
+		for j := range dh {
+			dh[j] += h[j] * s.logSlope[j]
+		}
+	}
+	first := s.project(dh).times(s.deriv[0])
+	second := transpose(s.deriv[0]).times(s.project(h)).times(s.deriv[0])
+	m := newSparse(s.n).plus(-1, first).plus(-1, second)
+	if cacheable {
+		s.cache[key] = m
+	}
+	return m
+}
+
+func transpose(a sparse) sparse {
+	out := newSparse(len(a))
+	for i, row := range a {
+		for _, e := range row {
+			out[e.col] = append(out[e.col], entry{i, e.v})
+		}
+	}
+	return out
+}
+
+// slope is the derivative of a product of factors of one coordinate.
+func (s *space) slope(factors []fast.Factor) []float64 {
+	out := make([]float64, s.q)
+	for j, y := range s.nodes[0] {
+		for i, f := range factors {
+			v := factorSlope(f, y, s.domain)
+			for k, g := range factors {
+				if k != i {
+					v *= g.Value(y)
+				}
+			}
+			out[j] += v
+		}
+	}
+	return out
+}
+
+func factorSlope(f fast.Factor, y float64, d fast.Domain) float64 {
+	switch f.Kind {
+	case fast.Power:
+		if f.P == 0 {
+			return 0
+		}
+		return f.P * fast.Factor{Kind: fast.Power, P: f.P - 1}.Value(y)
+	case fast.Cos:
+		return -f.P * math.Sin(f.P*y)
+	case fast.Sin:
+		return f.P * math.Cos(f.P*y)
+	}
+	return slopeOf(f.Func, y, d)
+}
+
+// slopeOf is a sixth-order central difference that stays inside the domain.
+func slopeOf(f func(float64) float64, y float64, d fast.Domain) float64 {
+	h := 2e-3 * math.Max(1e-3, math.Abs(y))
+	if !d.IsPeriodic() {
+		a, b := d.Ends()
+		h = math.Min(h, 0.3*math.Min(y-a, b-y))
+	}
+	return (45*(f(y+h)-f(y-h)) - 9*(f(y+2*h)-f(y-2*h)) + (f(y+3*h) - f(y-3*h))) / (60 * h)
+}
+
+// powers returns the exponents when all factors are non-negative integer
+// powers.
+func powers(factors []fast.Factor, n int) ([]int, bool) {
+	p := make([]int, n)
+	for _, f := range factors {
+		if f.Kind != fast.Power || f.P < 0 || f.P != math.Trunc(f.P) {
+			return nil, false
+		}
+		p[f.Coordinate] += int(f.P)
+	}
+	return p, true
+}
+
+// expand is the coefficient vector of a product of factors.
+func (s *space) expand(factors []fast.Factor) []float64 {
+	mine, _, _ := s.own(factors)
+	out := make([]float64, s.n)
+	if len(mine) == 0 {
+		out[0] = 1
+		return out
+	}
+	for j, h := range s.sample(mine) {
+		h *= s.root[j]
+		for m, v := range s.basis[j*s.n : (j+1)*s.n] {
+			out[m] += h * v
+		}
+	}
+	return out
+}
