@@ -98,3 +98,6 @@ func (l *Layout) Unpack(cells, src []float64) {
 		copy(cells[r*l.Nx:][:l.Nx], src[l.Row(r):][:l.Nx])
 	}
 }
+
+// Shape returns the number of cells along axis d, one beyond the dimension.
+func (l *Layout) Shape(d int) int { return l.shape[d] }

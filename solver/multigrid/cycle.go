@@ -1,0 +1,319 @@
+package multigrid
+
+import "epslim/solver/volume"
+
+// views collects the coefficient and neighbour slices of one row; every worker
+// has its own.
+type views struct {
+	coef, nb [][]float32
+	buf, acc []float32
+}
+
+func (l *level) views() *views {
+	n := len(l.coef)
+	return &views{make([][]float32, n), make([][]float32, n), make([]float32, l.lay.Nx+2), make([]float32, l.lay.Nx+2)}
+}
+
+func (v *views) set(l *level, x []float32, r int) {
+	s, n := l.lay.Row(r), l.lay.Nx
+	for c := range l.coef {
+		v.coef[c] = l.coef[c][s:][:n]
+		v.nb[c] = x[l.lay.Row(int(l.rows[c][r]))+l.shift[c]:][:n]
+	}
+}
+
+// relaxPoint updates one colour of row r.
+func (l *level) relaxPoint(v *views, x, b []float32, r, first int) {
+	s, n := l.lay.Row(r), l.lay.Nx
+	v.set(l, x, r)
+	relaxRow(x[s:][:n], b[s:][:n], v.coef, v.nb, first)
+	l.wrap(x, r)
+}
+
+// colourOf returns 0 or 1 for the colour of the first cell of row r.
+func (l *level) colourOf(r int) int {
+	j, k := l.lay.RowCoordinates(r)
+	return (j + k) & 1
+}
+
+// half runs the first (half 0) or second (half 1) half of a point sweep on row
+// r. Without links off the axes the halves are the two colours of the
+// chessboard. With them the halves are the even and the odd rows, each with
+// its even cells before its odd ones.
+func (l *level) half(v *views, x, b []float32, r, half int) {
+	c := l.colourOf(r)
+	if !l.full {
+		l.relaxPoint(v, x, b, r, c^half)
+		return
+	}
+	if c == half {
+		l.relaxPoint(v, x, b, r, half)
+		l.relaxPoint(v, x, b, r, 1-half)
+	}
+}
+
+// sweep is one Gauss-Seidel sweep over both halves. The second half follows
+// the first one slab behind, so that both pass through the cache together; the
+// slabs at the ends of a worker's piece wait until all workers are there. The
+// result does not depend on the number of workers.
+func (l *level) sweep(x, b []float32, reverse bool) {
+	if l.full && l.grid.Dim() == 3 {
+		l.sweepClasses(x, b, reverse)
+		return
+	}
+	first := 0
+	if reverse {
+		first = 1
+	}
+	run := func(v *views, q, half int) {
+		for r := q * l.slab; r < (q+1)*l.slab; r++ {
+			l.half(v, x, b, r, half)
+		}
+	}
+	workers := l.workers()
+	volume.Parallel(workers, l.slabs, func(_, a, e int) {
+		v := l.views()
+		for q := a; q < e; q++ {
+			run(v, q, first)
+			if q-1 > a {
+				run(v, q-1, 1-first)
+			}
+		}
+	})
+	volume.Parallel(workers, l.slabs, func(_, a, e int) {
+		v := l.views()
+		run(v, a, 1-first)
+		if e-1 > a {
+			run(v, e-1, 1-first)
+		}
+	})
+}
+
+// sweepClasses runs over the four parities of rows one after another: links
+// off the axes join neighbours in all three directions.
+func (l *level) sweepClasses(x, b []float32, reverse bool) {
+	for step := 0; step < 4; step++ {
+		class := step
+		if reverse {
+			class = 3 - step
+		}
+		l.each(func(_, lo, hi int) {
+			v := l.views()
+			for r := lo; r < hi; r++ {
+				j, k := l.lay.RowCoordinates(r)
+				if j&1|(k&1)<<1 != class {
+					continue
+				}
+				first := 0
+				if reverse {
+					first = 1
+				}
+				l.relaxPoint(v, x, b, r, first)
+				l.relaxPoint(v, x, b, r, 1-first)
+			}
+		})
+	}
+}
+
+// restrict adds the weighted residuals of the children into the right-hand
+// side of the coarser level.
+func (l *level) restrict(c *level, x, b []float32) {
+	c.each(func(_, lo, hi int) {
+		v := l.views()
+		n, nc := l.lay.Nx, c.lay.Nx
+		for R := lo; R < hi; R++ {
+			J, K := c.lay.RowCoordinates(R)
+			dst := c.b[c.lay.Row(R):][:nc]
+			acc := v.acc[:n]
+			first := true
+			j0, j1 := c.up.children(1, J)
+			k0, k1 := c.up.children(2, K)
+			for k := k0; k < k1; k++ {
+				for j := j0; j < j1; j++ {
+					r := j + len(c.up.parent[1])*k
+					s := l.lay.Row(r)
+					v.set(l, x, r)
+					if first {
+						residualRow(acc, x[s:][:n], b[s:][:n], l.weight[s:][:n], v.coef, v.nb)
+						first = false
+						continue
+					}
+					buf := v.buf[:n]
+					residualRow(buf, x[s:][:n], b[s:][:n], l.weight[s:][:n], v.coef, v.nb)
+					for i, t := range buf {
+						acc[i] += t
+					}
+				}
+			}
+			if !c.up.merged[0] {
+				copy(dst, acc)
+				continue
+			}
+			for i := 0; i < n/2; i++ {
+				dst[i] = acc[2*i] + acc[2*i+1]
+			}
+			if n%2 == 1 {
+				dst[n/2] = acc[n-1]
+			}
+		}
+	})
+}
+
+// prolong adds to x (or, with set, replaces it by) the values of the coarser
+// level, interpolated linearly in every merged direction.
+func (l *level) prolong(c *level, x, xc []float32, set bool) {
+	l.each(func(_, lo, hi int) {
+		v := l.views()
+		for r := lo; r < hi; r++ {
+			t := c.blendRows(v, xc, l, r)
+			c.spread(x[l.lay.Row(r):][:l.lay.Nx], t, set)
+			l.wrap(x, r)
+		}
+	})
+}
+
+// blendRows interpolates the coarse rows around fine row r across the rows.
+func (c *level) blendRows(v *views, xc []float32, l *level, r int) []float32 {
+	j, k := l.lay.RowCoordinates(r)
+	t := v.acc[:c.lay.Nx]
+	ny := c.lay.Shape(1)
+	row := func(J, K int32) []float32 { return xc[c.lay.Row(int(J)+ny*int(K)):][:c.lay.Nx] }
+	p1, o1, w1 := c.up.parent[1][j], c.up.other[1][j], c.up.share[1][j]
+	p2, o2, w2 := c.up.parent[2][k], c.up.other[2][k], c.up.share[2][k]
+	a, b := row(p1, p2), row(o1, p2)
+	if w2 == 0 {
+		u := 1 - w1
+		for i := range t {
+			t[i] = float32(u*a[i]) + float32(w1*b[i])
+		}
+		return t
+	}
+	d, e := row(p1, o2), row(o1, o2)
+	u1, u2 := 1-w1, 1-w2
+	for i := range t {
+		t[i] = float32(u2*(float32(u1*a[i])+float32(w1*b[i]))) + float32(w2*(float32(u1*d[i])+float32(w1*e[i])))
+	}
+	return t
+}
+
+// spread interpolates along the row.
+func (c *level) spread(f, t []float32, set bool) {
+	if set {
+		clear(f)
+	}
+	n := len(t)
+	switch {
+	case !c.up.merged[0]:
+		for i := range f {
+			f[i] += t[i]
+		}
+	case c.up.even && n > 1:
+		left, right := t[0], t[n-1]
+		if c.lay.PeriodicX {
+			left, right = right, left
+		}
+		prev, cur := left, t[0]
+		for i := 0; i < n; i++ {
+			next := right
+			if i+1 < n {
+				next = t[i+1]
+			}
+			m := 0.75 * cur
+			f[2*i] += m + float32(0.25*prev)
+			f[2*i+1] += m + float32(0.25*next)
+			prev, cur = cur, next
+		}
+	default:
+		p, o, w := c.up.parent[0], c.up.other[0], c.up.share[0]
+		for i := range f {
+			f[i] += float32((1-w[i])*t[p[i]]) + float32(w[i]*t[o[i]])
+		}
+	}
+}
+
+// cycle settings.
+type cycleKind struct {
+	line  bool
+	gamma int // 1: V, 2: W
+}
+
+// smooth is one sweep of the chosen smoother.
+func (l *level) smooth(kind cycleKind, x, b []float32, reverse bool) {
+	if kind.line {
+		l.lineSweep(x, b, reverse)
+		return
+	}
+	l.sweep(x, b, reverse)
+}
+
+// solveDense multiplies by the inverse kept for the coarsest level.
+func (l *level) solveDense(x, b []float32) {
+	nx, n := l.lay.Nx, l.lay.Nx*l.lay.Rows
+	for k := 0; k < n; k++ {
+		row := l.dense[k*n:][:n]
+		var s float32
+		for r := 0; r < l.lay.Rows; r++ {
+			bb, g := b[l.lay.Row(r):][:nx], row[r*nx:][:nx]
+			for i := range g {
+				s += float32(g[i] * bb[i])
+			}
+		}
+		x[l.lay.Row(k/nx)+k%nx] = s
+	}
+	for r := 0; r < l.lay.Rows; r++ {
+		l.wrap(x, r)
+	}
+}
+
+// cycle improves x for the right-hand side b of level k. With zero the
+// iteration starts from nothing and x need not be cleared.
+func (h *hierarchy) cycle(k int, x, b []float32, kind cycleKind, zero bool) {
+	l := h.levels[k]
+	if l.dense != nil {
+		l.solveDense(x, b)
+		return
+	}
+	if zero {
+		clear(x)
+	}
+	c := h.levels[k+1]
+	l.smooth(kind, x, b, false)
+	l.restrict(c, x, b)
+	h.cycle(k+1, c.x, c.b, kind, true)
+	if kind.gamma > 1 && c.dense == nil {
+		if c.xs == nil {
+			c.xs, c.bs = make([]float32, len(c.x)), make([]float32, len(c.b))
+		}
+		c.residual(c.bs, c.x, c.b)
+		copy(c.xs, c.x)
+		h.cycleAgain(k+1, kind)
+	}
+	l.prolong(c, x, c.x, false)
+	l.smooth(kind, x, b, true)
+}
+
+// cycleAgain adds a second cycle on the residual kept in bs.
+func (h *hierarchy) cycleAgain(k int, kind cycleKind) {
+	c := h.levels[k]
+	h.cycle(k, c.x, c.bs, kind, true)
+	for i, v := range c.xs {
+		c.x[i] += v
+	}
+}
+
+// residual writes b - A x row by row.
+func (l *level) residual(r, x, b []float32) {
+	l.each(func(_, lo, hi int) {
+		v := l.views()
+		n := l.lay.Nx
+		one := v.buf[:n]
+		for i := range one {
+			one[i] = 1
+		}
+		for q := lo; q < hi; q++ {
+			s := l.lay.Row(q)
+			v.set(l, x, q)
+			residualRow(r[s:][:n], x[s:][:n], b[s:][:n], one, v.coef, v.nb)
+		}
+	})
+}

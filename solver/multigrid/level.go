@@ -1,0 +1,269 @@
+package multigrid
+
+import (
+	"context"
+	"math"
+
+	"epslim/solver/grid"
+	"epslim/solver/volume"
+)
+
+// level is one grid of the hierarchy: the operator with unit diagonal,
+// e_k = b_k + sum over neighbours of coef * e_neighbour.
+type level struct {
+	grid   *grid.Grid
+	op     *volume.Operator // links are dropped once the level is built, geometry stays
+	lay    volume.Layout
+	coef   [][]float32 // coef[2*link]: from the upper neighbour, coef[2*link+1]: from the lower one
+	shift  []int       // displacement along the first axis of each neighbour
+	rows   [][]int32   // row of each neighbour, -1 beyond a side
+	scale  []float64   // diagonal times reference density
+	ref    []float64   // reference density
+	weight []float32   // scale of a cell over scale of its parent: residuals add up with these weights
+	x, b   []float32
+	xs, bs []float32 // second visit of a W-cycle
+	lines  []lineFactor
+	dense  []float32 // coarsest level: inverse, row by row
+	slabs  int       // pieces along the last axis
+	slab   int       // rows in one of them
+	full   bool      // links off the axes: four colours
+	serial bool      // odd periodic axis: two neighbours of one colour, kept on one goroutine
+	up     *transfer // to the next finer level
+}
+
+// newLevel allocates a level for an operator.
+func newLevel(m *volume.Operator) *level {
+	l := &level{grid: m.Grid, op: m, lay: m.Layout}
+	n := 2 * len(m.Links)
+	for c := 0; c < n; c++ {
+		l.coef = append(l.coef, make([]float32, m.Layout.Len))
+		li := c / 2
+		rows := make([]int32, m.Layout.Rows)
+		s := m.Links[li].Step[0]
+		for r := range rows {
+			if c%2 == 0 {
+				rows[r] = int32(m.UpperRow(li, r))
+			} else {
+				rows[r] = int32(m.LowerRow(li, r))
+			}
+		}
+		if c%2 == 1 {
+			s = -s
+		}
+		l.shift, l.rows = append(l.shift, s), append(l.rows, rows)
+	}
+	l.x, l.b = make([]float32, m.Layout.Len), make([]float32, m.Layout.Len)
+	d := m.Grid.Dim()
+	l.slabs = m.Grid.Axis(d - 1).Cells()
+	if d == 1 {
+		l.slabs = 1
+	}
+	l.slab = m.Layout.Rows / l.slabs
+	l.full = len(m.Links) > d
+	for a := 1; a < d; a++ {
+		if ax := m.Grid.Axis(a); ax.IsPeriodic() && ax.Cells()%2 == 1 {
+			l.serial = true
+		}
+	}
+	return l
+}
+
+func (l *level) workers() int {
+	if l.serial || l.lay.Rows*l.lay.Nx < 1<<14 || l.slabs < 8 {
+		return 1
+	}
+	return l.op.Workers()
+}
+
+// each runs body over pieces of whole slabs, given as rows.
+func (l *level) each(body func(worker, lo, hi int)) {
+	volume.Parallel(l.workers(), l.slabs, func(w, a, e int) { body(w, a*l.slab, e*l.slab) })
+}
+
+// normalise fills the coefficients from the operator and the reference density.
+func (l *level) normalise(shift float64, adjoint bool) {
+	if l.scale == nil {
+		l.scale = l.op.Layout.Vector()
+	}
+	for r := 0; r < l.lay.Rows; r++ {
+		l.lay.Wrap(l.ref, r)
+	}
+	l.each(func(_, lo, hi int) {
+		n := l.lay.Nx
+		inv := make([]float64, n)
+		for r := lo; r < hi; r++ {
+			s := l.lay.Row(r)
+			l.op.DiagonalRow(inv, r, shift)
+			sc, ref := l.scale[s:][:n], l.ref[s:][:n]
+			for i := range inv {
+				sc[i] = inv[i] * ref[i]
+				inv[i] = 0
+				if sc[i] > 0 {
+					inv[i] = 1 / sc[i]
+				}
+			}
+			for c := range l.coef {
+				link := &l.op.Links[c/2]
+				t := l.lay.Row(int(l.rows[c][r])) + l.shift[c]
+				at := s // where the link is stored, and which of its sides feeds this row
+				rate := link.Back
+				if c%2 == 1 {
+					at, rate = t, link.Out
+				}
+				if adjoint {
+					rate = link.Out
+					if c%2 == 1 {
+						rate = link.Back
+					}
+				}
+				co, v, q := l.coef[c][s:][:n], rate[at:][:n], l.ref[t:][:n]
+				for i := range co {
+					co[i] = float32(v[i] * q[i] * inv[i])
+				}
+			}
+		}
+	})
+}
+
+// absorb multiplies the reference density by the present solution x, which
+// becomes one everywhere, and rescales the coefficients. Cells where x is not
+// a moderate positive number keep their reference.
+func (l *level) absorb() {
+	for r := 0; r < l.lay.Rows; r++ {
+		s := l.lay.Row(r)
+		for i, v := range l.x[s:][:l.lay.Nx] {
+			if !(v > 0.1 && v < 10) {
+				l.x[s+i] = 1
+			}
+		}
+		l.wrap(l.x, r)
+	}
+	l.each(func(_, lo, hi int) {
+		n := l.lay.Nx
+		for r := lo; r < hi; r++ {
+			s := l.lay.Row(r)
+			x := l.x[s:][:n]
+			for c := range l.coef {
+				t := l.lay.Row(int(l.rows[c][r])) + l.shift[c]
+				co, xn := l.coef[c][s:][:n], l.x[t:][:n]
+				for i := range co {
+					co[i] *= xn[i] / x[i]
+				}
+			}
+			ref, sc := l.ref[s:][:n], l.scale[s:][:n]
+			for i, v := range x {
+				ref[i] *= float64(v)
+				sc[i] *= float64(v)
+			}
+		}
+	})
+}
+
+func (l *level) wrap(v []float32, r int) {
+	if !l.lay.PeriodicX {
+		return
+	}
+	s, n := l.lay.Row(r), l.lay.Nx
+	for g := 1; g <= l.lay.Ghost; g++ {
+		v[s-g] = v[s+n-1-(g-1)%n]
+		v[s+n+g-1] = v[s+(g-1)%n]
+	}
+}
+
+// transfer holds the geometry between a level and the next finer one.
+type transfer struct {
+	merged [grid.MaxDim]bool
+	parent [grid.MaxDim][]int32   // parent[d][i]: coarse cell of fine cell i along axis d
+	other  [grid.MaxDim][]int32   // the second coarse cell that is interpolated from
+	share  [grid.MaxDim][]float32 // its weight
+	even   bool                   // first axis merged in pairs of equal width throughout
+}
+
+func newTransfer(fine, coarse *grid.Grid, merged []bool) *transfer {
+	t := &transfer{}
+	for d := 0; d < grid.MaxDim; d++ {
+		if d >= fine.Dim() {
+			t.parent[d], t.other[d], t.share[d] = []int32{0}, []int32{0}, []float32{0}
+			continue
+		}
+		t.merged[d] = merged[d]
+		f, c := fine.Axis(d), coarse.Axis(d)
+		n, nc := f.Cells(), c.Cells()
+		even := merged[d] && n%2 == 0
+		for i := 0; i < n; i++ {
+			p, o, w := i, i, 0.0
+			if merged[d] {
+				p, o = i/2, i/2-1+2*(i%2)
+				if i == n-1 && n%2 == 1 {
+					o = p - 1
+				}
+				delta := math.Abs(f.Center(i) - c.Center(p))
+				switch {
+				case o >= 0 && o < nc:
+					w = delta / math.Abs(c.Center(o)-c.Center(p))
+				case c.IsPeriodic():
+					o = (o + nc) % nc
+					w = delta / (0.5 * (c.Width(o) + c.Width(p)))
+				default:
+					o = p
+				}
+				if o != p && math.Abs(w-0.25) > 1e-6 {
+					even = false
+				}
+			}
+			t.parent[d] = append(t.parent[d], int32(p))
+			t.other[d] = append(t.other[d], int32(o))
+			t.share[d] = append(t.share[d], float32(w))
+		}
+		if d == 0 {
+			t.even = even
+		}
+	}
+	return t
+}
+
+// children returns the fine indices of coarse index c along axis d.
+func (t *transfer) children(d, c int) (lo, hi int) {
+	if !t.merged[d] {
+		return c, c + 1
+	}
+	return 2 * c, min(2*c+2, len(t.parent[d]))
+}
+
+// coarsen picks the axes to merge: those with at least half as many cells as
+// the longest, never below four.
+func coarsen(g *grid.Grid) []bool {
+	longest := 0
+	for _, n := range g.Shape() {
+		longest = max(longest, n)
+	}
+	merge := make([]bool, g.Dim())
+	for d, n := range g.Shape() {
+		merge[d] = n > 4 && 2*n > longest
+	}
+	return merge
+}
+
+const coarsestCells = 300
+
+// assembleLevels discretises all grids from the operator's down to the
+// coarsest.
+func assembleLevels(ctx context.Context, m *volume.Operator, c volume.Coefficients, adjoint bool) ([]*level, error) {
+	levels := []*level{newLevel(m)}
+	for g := m.Grid; g.Cells() > coarsestCells; {
+		merge := coarsen(g)
+		cg := g.Coarsen(merge)
+		if cg.Cells() == g.Cells() {
+			break
+		}
+		cm, err := volume.Assemble(ctx, cg, c, volume.Settings{Workers: m.Workers()})
+		if err != nil {
+			return nil, err
+		}
+		l := newLevel(cm)
+		l.up = newTransfer(g, cg, merge)
+		levels = append(levels, l)
+		g = cg
+	}
+	return levels, nil
+}

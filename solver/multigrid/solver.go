@@ -1,0 +1,182 @@
+package multigrid
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"math"
+	"time"
+
+	"epslim/solver/volume"
+)
+
+// Outcome says how a solve ended.
+type Outcome int
+
+// The outcomes.
+const (
+	Converged      Outcome = iota // the residual is below the tolerance
+	Stagnated                     // rounding or the method allows no further reduction
+	IterationLimit                // stopped at the largest number of iterations
+	Cancelled                     // stopped by the context; the last iterate is kept
+)
+
+var outcomes = [...]struct {
+	name   string
+	usable bool // the result may be used, its residual says how well
+}{
+	Converged:      {"converged", true},
+	Stagnated:      {"no further reduction of the residual possible", true},
+	IterationLimit: {"stopped at the iteration limit", false},
+	Cancelled:      {"interrupted; the last iterate is kept", false},
+}
+
+// String returns a sentence fragment for reports.
+func (o Outcome) String() string {
+	if o < 0 || int(o) >= len(outcomes) {
+		return fmt.Sprintf("Outcome(%d)", int(o))
+	}
+	return outcomes[o].name
+}
+
+// Smoother selects what damps the short waves.
+type Smoother int
+
+// The smoothers.
+const (
+	Auto  Smoother = iota // Point first, Line when convergence is slow
+	Point                 // Gauss-Seidel in colours, V-cycle
+	Line                  // zebra line Gauss-Seidel along every axis, W-cycle
+)
+
+// Settings steers a solve. The zero value is usable.
+type Settings struct {
+	Tolerance     float64 // on the scaled residual |D^-1 r|/|u|, D the diagonal and u the ratio to the reference density; 0 means 1e-14 for stationary problems, 1e-12 for others
+	MaxIterations int     // of BiCGStab, two cycles each; 0 means 200
+	Smoother      Smoother
+	Progress      func(iteration int, residual float64) // called after every iteration; may be nil
+}
+
+// Stats is the diagnosis of a solve.
+type Stats struct {
+	Outcome    Outcome
+	Iterations int       // BiCGStab iterations, all smoothers together
+	Residual   float64   // scaled residual at the end, computed anew
+	Start      float64   // scaled residual of the first guess
+	History    []float64 // after every iteration
+	Smoother   Smoother  // the one in use at the end
+	Levels     int
+	Setup      time.Duration // coarse operators and first guess
+	Solve      time.Duration
+}
+
+// Solver holds the hierarchy for one operator and one shift.
+type Solver struct {
+	m        *volume.Operator
+	h        *hierarchy
+	kind     cycleKind
+	settings Settings
+	inv      []float64 // 1/(diagonal * reference)
+	setup    time.Duration
+	work     [7][]float64
+	part     []float64
+}
+
+// slowAfter is the number of point-smoothed iterations after which Auto looks
+// whether lines would be better.
+const slowAfter = 8
+
+// New builds the hierarchy for M + shift V, or its transpose. The coefficients
+// are evaluated on every coarse grid. In the singular case (shift zero and no
+// absorbing side) it returns a *volume.ReducibleError when the stationary
+// density is not unique.
+func New(ctx context.Context, m *volume.Operator, c volume.Coefficients, shift float64, adjoint bool, s Settings) (*Solver, error) {
+	if shift < 0 {
+		return nil, fmt.Errorf("multigrid: negative shift %g", shift)
+	}
+	start := time.Now()
+	if shift == 0 && m.Kill == nil {
+		if adjoint {
+			return nil, errors.New("multigrid: the transposed problem without shift or absorbing side is singular")
+		}
+		if _, err := volume.SingleClass(m); err != nil {
+			return nil, err
+		}
+	}
+	kind := cycleKind{line: s.Smoother == Line, gamma: 1}
+	if kind.line {
+		kind.gamma = 2
+	}
+	h, err := newHierarchy(ctx, m, c, shift, adjoint, kind)
+	if err != nil {
+		return nil, err
+	}
+	sv := &Solver{m: m, h: h, kind: kind, settings: s}
+	l := h.levels[0]
+	sv.inv = l.scale
+	for i, v := range sv.inv {
+		if v > 0 {
+			sv.inv[i] = 1 / v
+		}
+	}
+	l.scale = nil
+	for i := range sv.work {
+		sv.work[i] = m.Layout.Vector()
+	}
+	sv.part = make([]float64, 4*m.Layout.Rows)
+	sv.setup = time.Since(start)
+	return sv, nil
+}
+
+// Reference returns the density that the hierarchy settled on, a good first
+// guess. The vector is padded and must not be changed.
+func (s *Solver) Reference() []float64 { return s.h.levels[0].ref }
+
+// Stationary solves M p = 0 from the reference density. The result is scaled
+// to mass one.
+func (s *Solver) Stationary(ctx context.Context) ([]float64, Stats) {
+	p := append([]float64(nil), s.h.levels[0].ref...)
+	tol := s.settings.Tolerance
+	if tol == 0 {
+		tol = 1e-14
+	}
+	n := math.Sqrt(float64(s.m.Grid.Cells()))
+	st := s.iterate(ctx, p, nil, tol*n, n)
+	if s.m.Report.Monotone {
+		s.cleanNegative(p)
+	}
+	mass := s.m.Mass(p)
+	for i := range p {
+		p[i] /= mass
+	}
+	return p, st
+}
+
+// Solve improves x until (M + shift V) x = b, or the transposed system, holds to the
+// tolerance relative to the scaled right-hand side.
+func (s *Solver) Solve(ctx context.Context, x, b []float64) Stats {
+	tol := s.settings.Tolerance
+	if tol == 0 {
+		tol = 1e-12
+	}
+	norm := s.scaledNorm(b)
+	if norm == 0 {
+		clear(x)
+		return Stats{Levels: len(s.h.levels)}
+	}
+	return s.iterate(ctx, x, b, tol*norm, norm)
+}
+
+// cleanNegative replaces what rounding left below zero by sums of neighbours:
+// Gauss-Seidel steps of an M-matrix on a non-negative vector stay non-negative.
+func (s *Solver) cleanNegative(p []float64) {
+	l := &s.m.Layout
+	for r := 0; r < l.Rows; r++ {
+		for i := l.Row(r); i < l.Row(r)+l.Nx; i++ {
+			if p[i] < 0 {
+				p[i] = 0
+			}
+		}
+		l.Wrap(p, r)
+	}
+}
