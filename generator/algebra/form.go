@@ -115,7 +115,6 @@ func (b *former) expr(e Expr, depth int) *Form {
 
 // arrange tries the arrangements and keeps the shortest.
 func (b *former) arrange(e Expr, depth int) *Form {
-	r := b.r
 	num, den, ok := b.realParts(e)
 	if !ok {
 		return b.complex(e, depth)
@@ -130,10 +129,37 @@ func (b *former) arrange(e Expr, depth int) *Form {
 		}
 		if len(num) <= 40 {
 			best = shorter(best, b.unrationalised(e, num, depth))
+			best = shorter(best, b.divided(e, depth))
 		}
 	}
-	_ = r
 	return best
+}
+
+// divided splits off the polynomial part: x + 1/(x - 1) for (x^2-x+1)/(x-1).
+func (b *former) divided(e Expr, depth int) *Form {
+	r := b.r
+	if len(e.n.den) == 0 || hasCis(e.n.num) {
+		return nil
+	}
+	num, den := e.NumDen()
+	quo, rem := r.divRem(num.n.num, den.n.num)
+	if len(quo) == 0 || len(rem) == 0 || len(den.n.den) > 0 || len(num.n.den) > 0 || len(quo) > 6 {
+		return nil
+	}
+	frac := r.fromPoly(rem).over(den)
+	if frac.Size() >= e.Size() {
+		return nil
+	}
+	parts := []*Form{b.expr(r.fromPoly(quo), depth+1), b.expr(frac, depth+1)}
+	var flat []*Form
+	for _, p := range parts {
+		if p.Op == FormSum {
+			flat = append(flat, p.Args...)
+		} else {
+			flat = append(flat, p)
+		}
+	}
+	return positiveFirst(flat)
 }
 
 func shorter(a, b *Form) *Form {

@@ -106,6 +106,7 @@ func (c *Closure) basis(ctx context.Context, n *fnNode) (*Solution, error) {
 	}
 	n.sol, n.err = c.solveBasis(ctx, n)
 	if n.err == nil {
+		c.addConditions(n.sol)
 		if res := c.p.Residual(n.fn, *n.sol); !res.IsZero() {
 			n.sol, n.err = nil, fmt.Errorf("internal error: the corrector of %s leaves the residual %s", n.fn, res)
 		}
@@ -118,26 +119,27 @@ func (c *Closure) solveBasis(ctx context.Context, n *fnNode) (*Solution, error) 
 	if n.fn.IsOne() {
 		return &Solution{r.Int(0), r.Int(1)}, nil
 	}
-	set, err := c.close(ctx, []*fnNode{n})
-	if err != nil {
-		return nil, err
+	set, open := c.close(ctx, []*fnNode{n})
+	if open != nil && !errors.Is(open, ErrDoesNotApply) {
+		return nil, open
 	}
-	if !c.hasEnds() {
+	if open == nil {
 		s, err := c.solveBlocks(n, set)
-		if err == nil {
-			return s, nil
+		if c.hasEnds() {
+			c.dropMisfits(set)
 		}
-		if !errors.Is(err, errSingular) {
-			return nil, err
-		}
-	} else {
-		s, err := c.solveBlocks(n, set)
-		c.dropMisfits(set)
 		if err == nil && n.sol != nil {
 			return s, nil
 		}
+		if err != nil && !errors.Is(err, errSingular) {
+			return nil, err
+		}
 	}
-	return c.twoPoint(ctx, n, set)
+	s, err := c.twoPoint(n, set, open == nil)
+	if err != nil && open != nil {
+		return nil, open
+	}
+	return s, err
 }
 
 // dropMisfits forgets block solutions that violate the conditions at the ends
@@ -180,7 +182,7 @@ func (c *Closure) close(ctx context.Context, start []*fnNode) ([]*fnNode, error)
 			}
 		}
 		if len(next) > 0 && (len(set) > maxSize || step > maxStep) {
-			return nil, doesNotApply("applying the fast generator to %s does not close (%d functions after %d steps, the last %s)",
+			return set, doesNotApply("applying the fast generator to %s does not close (%d functions after %d steps, the last %s)",
 				start[0].fn, len(set), step, next[0].fn)
 		}
 		layer = next
@@ -253,7 +255,6 @@ func (c *Closure) solveBlock(block []*fnNode, want *fnNode) error {
 		if err != nil || len(sol.Free) > 0 {
 			return errSingular
 		}
-		c.addConditions(sol.Pivots)
 		s := Solution{r.Int(0), r.Int(0)}
 		for j := range block {
 			if sol.X[j].IsZero() {
@@ -267,19 +268,22 @@ func (c *Closure) solveBlock(block []*fnNode, want *fnNode) error {
 	return nil
 }
 
-// addConditions keeps the pivots that the declared signs do not keep away
-// from zero.
-func (c *Closure) addConditions(pivots []algebra.Expr) {
-	for _, p := range pivots {
-		if p.Sign()&algebra.Zero == 0 || !p.IsReal() {
-			continue
-		}
-		known := false
-		for _, q := range c.conds {
-			known = known || q.Equal(p)
-		}
-		if !known {
-			c.conds = append(c.conds, p)
+// addConditions keeps the denominators of a solution that the declared signs
+// do not keep away from zero.
+func (c *Closure) addConditions(s *Solution) {
+	for _, e := range []algebra.Expr{s.Mean, s.Phi} {
+		_, den := e.NumDen()
+		for _, f := range den.Factors() {
+			if f.Sign()&algebra.Zero == 0 || !f.IsReal() || dependsOnFast(c.p, f) {
+				continue
+			}
+			known := false
+			for _, q := range c.conds {
+				known = known || q.Equal(f)
+			}
+			if !known {
+				c.conds = append(c.conds, f)
+			}
 		}
 	}
 }

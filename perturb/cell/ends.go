@@ -1,8 +1,6 @@
 package cell
 
 import (
-	"context"
-
 	"epslim/generator/algebra"
 )
 
@@ -87,33 +85,19 @@ func (c *Closure) fitsEnds(phi algebra.Expr) bool {
 }
 
 // twoPoint solves L0 Phi = lambda - f with the end conditions over an
-// enriched set: the closed set times low powers of the variables with ends,
-// which supplies preimages and homogeneous solutions.
-func (c *Closure) twoPoint(ctx context.Context, n *fnNode, set []*fnNode) (*Solution, error) {
-	r := c.p.Ring
-	one := r.Int(1)
+// enriched set of functions, which need not close: the functions at hand times
+// low powers of the variables with ends, and logarithms beside reciprocals,
+// supply the preimages that the set itself lacks.
+func (c *Closure) twoPoint(n *fnNode, set []*fnNode, closed bool) (*Solution, error) {
+	if !closed {
+		set = set[:min(len(set), 6)]
+	}
 	for round := 0; round < 3; round++ {
 		if round > 0 {
-			var grown []*fnNode
-			for _, m := range set {
-				for _, v := range c.p.Fast {
-					if v.Kind != Reflecting && v.Kind != Line {
-						continue
-					}
-					y, _ := r.Symbol(v.Name)
-					for _, l := range c.split(m.fn.Mul(y)) {
-						grown = append(grown, l.to)
-					}
-				}
+			set = c.enrich(set)
+			if len(set) > 120 {
+				break
 			}
-			for _, l := range c.split(one) {
-				grown = append(grown, l.to)
-			}
-			s, err := c.close(ctx, append(append([]*fnNode(nil), set...), grown...))
-			if err != nil {
-				return nil, err
-			}
-			set = s
 		}
 		s, err := c.twoPointIn(n, set)
 		if err != nil {
@@ -124,6 +108,40 @@ func (c *Closure) twoPoint(ctx context.Context, n *fnNode, set []*fnNode) (*Solu
 		}
 	}
 	return nil, doesNotApply("no combination of the functions that the fast generator makes of %s solves the fast problem with its conditions at the ends of the domain", n.fn)
+}
+
+// enrich multiplies by the fast variables that are not angles.
+func (c *Closure) enrich(set []*fnNode) []*fnNode {
+	r := c.p.Ring
+	seen := map[*fnNode]bool{}
+	out := append([]*fnNode(nil), set...)
+	for _, m := range set {
+		seen[m] = true
+	}
+	add := func(e algebra.Expr) {
+		for _, l := range c.split(e) {
+			if !seen[l.to] {
+				seen[l.to] = true
+				out = append(out, l.to)
+			}
+		}
+	}
+	add(r.Int(1))
+	for _, m := range set {
+		for _, v := range c.p.Fast {
+			if v.Kind != Reflecting && v.Kind != Line && v.Kind != HalfLine {
+				continue
+			}
+			y, _ := r.Symbol(v.Name)
+			add(m.fn.Mul(y))
+			if d, _, ok := m.fn.Leading(v.Name, false); ok && d.Sign() < 0 {
+				if l, err := r.Call("log", y); err == nil {
+					add(l)
+				}
+			}
+		}
+	}
+	return out
 }
 
 // twoPointIn returns nil without an error when the set is too small.
@@ -151,7 +169,7 @@ func (c *Closure) twoPointIn(n *fnNode, set []*fnNode) (*Solution, error) {
 		row[j] = row[j].Add(v)
 	}
 	for j, m := range unknowns {
-		for _, l := range m.image {
+		for _, l := range c.expand(m) {
 			put("L "+l.to.key, j, l.coef)
 		}
 		conds, err := c.endConditions(m.fn)
@@ -189,7 +207,6 @@ func (c *Closure) twoPointIn(n *fnNode, set []*fnNode) (*Solution, error) {
 	if !c.averageDetermined(a, lambda) {
 		return nil, nil
 	}
-	c.addConditions(sol.Pivots)
 	phi := r.Int(0)
 	for j, m := range unknowns {
 		phi = phi.Add(sol.X[j].Mul(m.fn))
