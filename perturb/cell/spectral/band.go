@@ -5,6 +5,8 @@ import (
 	"errors"
 	"math"
 	"sort"
+
+	"epslim/perturb/cell/quadrature/fast"
 )
 
 // errSingular is a matrix without an inverse.
@@ -23,9 +25,18 @@ type banded struct {
 
 func (b *banded) width() int { return b.lower + b.upper + 1 }
 
-func factorize(ctx context.Context, a sparse) (*banded, error) {
+// factorize tries the reverse Cuthill-McKee order and the given ones and takes
+// that with the narrowest band.
+func factorize(ctx context.Context, a sparse, orders ...[]int) (*banded, error) {
 	n := len(a)
-	b := &banded{n: n, order: cuthillMcKee(a), scale: make([]float64, n), pivot: make([]int, n)}
+	best := cuthillMcKee(a)
+	cost := bandCost(a, best)
+	for _, o := range orders {
+		if c := bandCost(a, o); c < cost {
+			best, cost = o, c
+		}
+	}
+	b := &banded{n: n, order: best, scale: make([]float64, n), pivot: make([]int, n)}
 	place := make([]int, n)
 	for i, o := range b.order {
 		place[o] = i
@@ -45,6 +56,9 @@ func factorize(ctx context.Context, a sparse) (*banded, error) {
 	}
 	b.upper = up + b.lower
 	w := b.width()
+	if n*w > maxEntries {
+		return nil, fast.ErrBudget
+	}
 	b.lu = make([]float64, n*w)
 	for i, row := range a {
 		r := place[i]
@@ -53,6 +67,49 @@ func factorize(ctx context.Context, a sparse) (*banded, error) {
 		}
 	}
 	return b, b.eliminate(ctx)
+}
+
+// bandCost is the product lower*(lower+upper) that the elimination costs per
+// row.
+func bandCost(a sparse, order []int) float64 {
+	place := make([]int, len(order))
+	for i, o := range order {
+		place[o] = i
+	}
+	lower, upper := 1, 1
+	for i, row := range a {
+		for _, e := range row {
+			d := place[e.col] - place[i]
+			lower, upper = max(lower, -d), max(upper, d)
+		}
+	}
+	return float64(lower) * float64(lower+upper)
+}
+
+// tensorOrders are the orders of a tensor basis in which one axis varies
+// slowest.
+func tensorOrders(sizes []int) [][]int {
+	var out [][]int
+	n := 1
+	for _, s := range sizes {
+		n *= s
+	}
+	for k := range sizes {
+		inner := 1
+		for _, s := range sizes[k+1:] {
+			inner *= s
+		}
+		order := make([]int, 0, n)
+		for v := 0; v < sizes[k]; v++ {
+			for i := 0; i < n; i++ {
+				if i/inner%sizes[k] == v {
+					order = append(order, i)
+				}
+			}
+		}
+		out = append(out, order)
+	}
+	return out
 }
 
 func (b *banded) eliminate(ctx context.Context) error {

@@ -12,6 +12,7 @@ import (
 func (l *level) gridSize() int {
 	q := 1
 	for _, s := range l.spaces {
+		s.ready()
 		q *= s.q
 	}
 	return q
@@ -21,6 +22,7 @@ func (l *level) gridSize() int {
 func (l *level) toGrid(u []float64) []float64 {
 	outerSize, v := 1, u
 	for k, s := range l.spaces {
+		s.ready()
 		inner := 1
 		for _, m := range l.sizes[k+1:] {
 			inner *= m

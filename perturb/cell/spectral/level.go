@@ -49,7 +49,7 @@ func newLevel(ctx context.Context, p *fast.Problem, spaces []*space) (*level, er
 	}
 	m[0] = append([]entry{{0, -1}}, m[0]...)
 	l.matrix = m
-	if l.lu, err = factorize(ctx, m); err != nil {
+	if l.lu, err = factorize(ctx, m, tensorOrders(l.sizes)...); err != nil {
 		if err == errSingular {
 			return nil, l.reducible()
 		}

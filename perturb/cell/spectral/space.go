@@ -35,8 +35,11 @@ type space struct {
 	wall bool
 	// multiply, when not nil, gives exact sparse products for polynomials.
 	multiply func(powers []int) sparse
-	cache    map[string]sparse
-	about    string
+	// fill makes nodes, root and basis when they are first needed; nil when
+	// they are there.
+	fill  func()
+	cache map[string]sparse
+	about string
 }
 
 // fourier is the real Fourier basis 1, sqrt2 cos, sqrt2 sin, ... with k modes.
@@ -213,6 +216,14 @@ func recurrence(a, b []float64, n int, y float64) (p, dp []float64) {
 	return p, dp
 }
 
+// ready makes sure that the quadrature nodes exist.
+func (s *space) ready() {
+	if s.fill != nil {
+		s.fill()
+		s.fill = nil
+	}
+}
+
 // own returns the factors that concern this space, with coordinates counted
 // from its first, and a key for the cache.
 func (s *space) own(factors []fast.Factor) (mine []fast.Factor, key string, cacheable bool) {
@@ -235,6 +246,7 @@ func (s *space) own(factors []fast.Factor) (mine []fast.Factor, key string, cach
 
 // sample evaluates a product of factors at the nodes.
 func (s *space) sample(factors []fast.Factor) []float64 {
+	s.ready()
 	h := make([]float64, s.q)
 	for j := range h {
 		h[j] = 1
@@ -413,6 +425,14 @@ func (s *space) expand(factors []fast.Factor) []float64 {
 	out := make([]float64, s.n)
 	if len(mine) == 0 {
 		out[0] = 1
+		return out
+	}
+	if p, ok := powers(mine, len(s.deriv)); ok && s.multiply != nil {
+		for i, row := range s.multiply(p) {
+			if len(row) > 0 && row[0].col == 0 {
+				out[i] = row[0].v
+			}
+		}
 		return out
 	}
 	for j, h := range s.sample(mine) {

@@ -24,22 +24,22 @@ func identity(n int) sparse {
 	return m
 }
 
-// fromDense keeps the elements above a relative size; what is smaller is
-// rounding of the quadrature.
+// fromDense keeps the elements that are larger than rounding in their row or
+// in their column; what is smaller is noise of the quadrature and would only
+// widen the band.
 func fromDense(n int, a []float64) sparse {
 	m := newSparse(n)
-	var largest float64
-	for _, v := range a {
-		largest = math.Max(largest, math.Abs(v))
+	row, col := make([]float64, n), make([]float64, n)
+	noise := 4e-14 * math.Max(1, float64(n)/20)
+	for i := range row {
+		for j, v := range a[i*n : (i+1)*n] {
+			v = math.Abs(v)
+			row[i], col[j] = math.Max(row[i], v), math.Max(col[j], v)
+		}
 	}
 	for i := range m {
-		var row float64
-		for _, v := range a[i*n : (i+1)*n] {
-			row = math.Max(row, math.Abs(v))
-		}
-		tol := 2e-15*row + 1e-17*largest
 		for j, v := range a[i*n : (i+1)*n] {
-			if math.Abs(v) > tol {
+			if math.Abs(v) > noise*math.Min(row[i], col[j]) {
 				m[i] = append(m[i], entry{j, v})
 			}
 		}

@@ -42,7 +42,7 @@ func sphere(d fast.Domain, first, degree int) *space {
 	s.deriv = []sparse{deriv[0].cut(n), deriv[1].cut(n), deriv[2].cut(n)}
 	s.values = func(y []float64) []float64 { return harmonics(degree, y) }
 	s.density = func([]float64) float64 { return 1 / (4 * math.Pi) }
-	s.sphereNodes(degree)
+	s.fill = func() { s.sphereNodes(degree) }
 	// Products of derivatives must be formed before the cut.
 	seconds := map[[2]int]sparse{}
 	for i := 0; i < 3; i++ {
