@@ -45,7 +45,7 @@ func (s *Solver) dot(a, b []float64) float64 {
 	return s.rowSum(func(r int) float64 { return dotRow(s.row(a, r), s.row(b, r)) })
 }
 
-// scaledNorm returns |D^-1 b / q|.
+// scaledNorm returns |D^-1 b|.
 func (s *Solver) scaledNorm(b []float64) float64 {
 	return math.Sqrt(s.rowSum(func(r int) float64 {
 		var t float64
@@ -95,7 +95,7 @@ func (s *Solver) residual(r, x, b []float64) float64 {
 	}))
 }
 
-// precondition writes q times the result of one cycle on r.
+// precondition writes the result of one cycle on r.
 func (s *Solver) precondition(z, r []float64, norm float64) {
 	l := s.h.levels[0]
 	n := s.m.Layout.Nx
@@ -112,9 +112,9 @@ func (s *Solver) precondition(z, r []float64, norm float64) {
 	down := 1 / up
 	s.m.Each(func(_, lo, hi int) {
 		for q := lo; q < hi; q++ {
-			x, ref, zz := l.x[s.m.Layout.Row(q):][:n], s.row(l.ref, q), s.row(z, q)
+			x, zz := l.x[s.m.Layout.Row(q):][:n], s.row(z, q)
 			for i := range zz {
-				zz[i] = float64(x[i]) * ref[i] * down
+				zz[i] = float64(x[i]) * down
 			}
 		}
 	})

@@ -17,8 +17,7 @@ type level struct {
 	coef   [][]float32 // coef[2*link]: from the upper neighbour, coef[2*link+1]: from the lower one
 	shift  []int       // displacement along the first axis of each neighbour
 	rows   [][]int32   // row of each neighbour, -1 beyond a side
-	scale  []float64   // diagonal times reference density
-	ref    []float64   // reference density
+	scale  []float64   // diagonal of the operator; dropped when the level is complete
 	weight []float32   // scale of a cell over scale of its parent: residuals add up with these weights
 	x, b   []float32
 	xs, bs []float32 // second visit of a W-cycle
@@ -80,35 +79,28 @@ func (l *level) each(body func(worker, lo, hi int)) {
 	volume.Parallel(l.workers(), l.slabs, func(w, a, e int) { body(w, a*l.slab, e*l.slab) })
 }
 
-// normalise fills the coefficients from the operator and the reference density.
+// normalise fills the coefficients from the operator.
 func (l *level) normalise(shift float64, adjoint bool) {
-	if l.scale == nil {
-		l.scale = l.op.Layout.Vector()
-	}
-	for r := 0; r < l.lay.Rows; r++ {
-		l.lay.Wrap(l.ref, r)
-	}
+	l.scale = l.op.Layout.Vector()
 	l.each(func(_, lo, hi int) {
 		n := l.lay.Nx
 		inv := make([]float64, n)
 		for r := lo; r < hi; r++ {
 			s := l.lay.Row(r)
-			l.op.DiagonalRow(inv, r, shift)
-			sc, ref := l.scale[s:][:n], l.ref[s:][:n]
-			for i := range inv {
-				sc[i] = inv[i] * ref[i]
+			sc := l.scale[s:][:n]
+			l.op.DiagonalRow(sc, r, shift)
+			for i, d := range sc {
 				inv[i] = 0
-				if sc[i] > 0 {
-					inv[i] = 1 / sc[i]
+				if d > 0 {
+					inv[i] = 1 / d
 				}
 			}
 			for c := range l.coef {
 				link := &l.op.Links[c/2]
-				t := l.lay.Row(int(l.rows[c][r])) + l.shift[c]
 				at := s // where the link is stored, and which of its sides feeds this row
 				rate := link.Back
 				if c%2 == 1 {
-					at, rate = t, link.Out
+					at, rate = l.lay.Row(int(l.rows[c][r]))+l.shift[c], link.Out
 				}
 				if adjoint {
 					rate = link.Out
@@ -116,44 +108,10 @@ func (l *level) normalise(shift float64, adjoint bool) {
 						rate = link.Back
 					}
 				}
-				co, v, q := l.coef[c][s:][:n], rate[at:][:n], l.ref[t:][:n]
+				co, v := l.coef[c][s:][:n], rate[at:][:n]
 				for i := range co {
-					co[i] = float32(v[i] * q[i] * inv[i])
+					co[i] = float32(v[i] * inv[i])
 				}
-			}
-		}
-	})
-}
-
-// absorb multiplies the reference density by the present solution x, which
-// becomes one everywhere, and rescales the coefficients. Cells where x is not
-// a moderate positive number keep their reference.
-func (l *level) absorb() {
-	for r := 0; r < l.lay.Rows; r++ {
-		s := l.lay.Row(r)
-		for i, v := range l.x[s:][:l.lay.Nx] {
-			if !(v > 0.1 && v < 10) {
-				l.x[s+i] = 1
-			}
-		}
-		l.wrap(l.x, r)
-	}
-	l.each(func(_, lo, hi int) {
-		n := l.lay.Nx
-		for r := lo; r < hi; r++ {
-			s := l.lay.Row(r)
-			x := l.x[s:][:n]
-			for c := range l.coef {
-				t := l.lay.Row(int(l.rows[c][r])) + l.shift[c]
-				co, xn := l.coef[c][s:][:n], l.x[t:][:n]
-				for i := range co {
-					co[i] *= xn[i] / x[i]
-				}
-			}
-			ref, sc := l.ref[s:][:n], l.scale[s:][:n]
-			for i, v := range x {
-				ref[i] *= float64(v)
-				sc[i] *= float64(v)
 			}
 		}
 	})
@@ -248,7 +206,7 @@ const coarsestCells = 300
 
 // assembleLevels discretises all grids from the operator's down to the
 // coarsest.
-func assembleLevels(ctx context.Context, m *volume.Operator, c volume.Coefficients, adjoint bool) ([]*level, error) {
+func assembleLevels(ctx context.Context, m *volume.Operator, c volume.Coefficients) ([]*level, error) {
 	levels := []*level{newLevel(m)}
 	for g := m.Grid; g.Cells() > coarsestCells; {
 		merge := coarsen(g)

@@ -51,7 +51,7 @@ const (
 
 // Settings steers a solve. The zero value is usable.
 type Settings struct {
-	Tolerance     float64 // on the scaled residual |D^-1 r|/|u|, D the diagonal and u the ratio to the reference density; 0 means 1e-14 for stationary problems, 1e-12 for others
+	Tolerance     float64 // on the scaled residual: |D^-1 M p|/|p| for stationary problems, |D^-1 r|/|D^-1 b| for others, D the diagonal; 0 means 1e-14 for stationary problems, 1e-12 for others
 	MaxIterations int     // of BiCGStab, two cycles each; 0 means 200
 	Smoother      Smoother
 	Progress      func(iteration int, residual float64) // called after every iteration; may be nil
@@ -76,7 +76,7 @@ type Solver struct {
 	h        *hierarchy
 	kind     cycleKind
 	settings Settings
-	inv      []float64 // 1/(diagonal * reference)
+	inv      []float64 // 1/diagonal
 	setup    time.Duration
 	work     [7][]float64
 	part     []float64
@@ -128,22 +128,25 @@ func New(ctx context.Context, m *volume.Operator, c volume.Coefficients, shift f
 	return sv, nil
 }
 
-// Reference returns the density that the hierarchy settled on, a good first
-// guess. The vector is padded and must not be changed.
-func (s *Solver) Reference() []float64 { return s.h.levels[0].ref }
-
-// Stationary solves M p = 0 from the reference density. The result is scaled
+// Stationary solves M p = 0 from the first guess of the full multigrid pass. The result is scaled
 // to mass one.
 func (s *Solver) Stationary(ctx context.Context) ([]float64, Stats) {
-	p := append([]float64(nil), s.h.levels[0].ref...)
+	p := s.m.Layout.Vector()
+	for r := 0; r < s.m.Layout.Rows; r++ {
+		x := s.h.levels[0].x[s.m.Layout.Row(r):][:s.m.Layout.Nx]
+		dst := s.row(p, r)
+		for i, v := range x {
+			dst[i] = float64(v)
+		}
+	}
 	tol := s.settings.Tolerance
 	if tol == 0 {
 		tol = 1e-14
 	}
-	n := math.Sqrt(float64(s.m.Grid.Cells()))
-	st := s.iterate(ctx, p, nil, tol*n, n)
+	unit := math.Sqrt(s.dot(p, p))
+	st := s.iterate(ctx, p, nil, tol*unit, unit)
 	if s.m.Report.Monotone {
-		s.cleanNegative(p)
+		volume.Positive(s.m, p)
 	}
 	mass := s.m.Mass(p)
 	for i := range p {
@@ -167,16 +170,3 @@ func (s *Solver) Solve(ctx context.Context, x, b []float64) Stats {
 	return s.iterate(ctx, x, b, tol*norm, norm)
 }
 
-// cleanNegative replaces what rounding left below zero by sums of neighbours:
-// Gauss-Seidel steps of an M-matrix on a non-negative vector stay non-negative.
-func (s *Solver) cleanNegative(p []float64) {
-	l := &s.m.Layout
-	for r := 0; r < l.Rows; r++ {
-		for i := l.Row(r); i < l.Row(r)+l.Nx; i++ {
-			if p[i] < 0 {
-				p[i] = 0
-			}
-		}
-		l.Wrap(p, r)
-	}
-}
