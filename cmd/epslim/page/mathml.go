@@ -38,7 +38,7 @@ func Upright(name string) MathML {
 
 // Differential is the upright d of dt and dW, with the space that stands before it.
 func Differential() MathML {
-	return MathML(`<mspace width="0.1667em"></mspace>`) + Upright("d")
+	return ThinSpace() + Upright("d")
 }
 
 // Partial is the sign of a partial derivative. It is an identifier: as an operator browsers put
@@ -71,6 +71,9 @@ func Minus() MathML { return MathML(`<mo form="prefix">−</mo>`) }
 
 // Plus is a plus sign in front of a term.
 func Plus() MathML { return MathML(`<mo form="prefix">+</mo>`) }
+
+// ThinSpace stands between a factor and the name of a function: v sin x.
+func ThinSpace() MathML { return MathML(`<mspace width="0.1667em"></mspace>`) }
 
 // Times is a multiplication that is not written.
 func Times() MathML { return MathML("<mo>\u2062</mo>") }
@@ -139,10 +142,17 @@ func Apply(function MathML, args ...MathML) MathML {
 	return Row(function, MathML("<mo>\u2061</mo>"), Fenced("(", Row(parts...), ")"))
 }
 
-// Fenced puts a pair of brackets that grow with their contents around a formula.
+// Fenced puts a pair of brackets around a formula. They grow with it if it is taller than a line; around
+// others they are told not to, because browsers put gaps beside brackets that may grow.
 func Fenced(left string, body MathML, right string) MathML {
-	return Row(leaf("mo", `form="prefix" fence="true" stretchy="true"`, left), body,
-		leaf("mo", `form="postfix" fence="true" stretchy="true"`, right))
+	grow := "false"
+	for _, tall := range []string{"<mfrac", "<mtable", "<munder", "<mover", "<msubsup", "<msqrt", "∫", "∑", "∏"} {
+		if strings.Contains(string(body), tall) {
+			grow = "true"
+		}
+	}
+	return Row(leaf("mo", `form="prefix" fence="true" stretchy="`+grow+`"`, left), body,
+		leaf("mo", `form="postfix" fence="true" stretchy="`+grow+`"`, right))
 }
 
 // Matrix is a matrix in brackets, its entries centred.

@@ -265,6 +265,8 @@ func TestMathML(t *testing.T) {
 		{ScriptL(), `<mi>ℒ</mi>`},
 		{Upright("d"), `<mi mathvariant="normal">d</mi>`},
 		{Frac(Number("1"), Ident("x")), `<mfrac><mrow><mn>1</mn></mrow><mrow><mi>x</mi></mrow></mfrac>`},
+		{Fenced("(", Ident("x"), ")"), `<mrow><mo form="prefix" fence="true" stretchy="false">(</mo><mi>x</mi><mo form="postfix" fence="true" stretchy="false">)</mo></mrow>`},
+		{Fenced("[", Frac(Ident("x"), Number("2")), "]"), `<mrow><mo form="prefix" fence="true" stretchy="true">[</mo><mfrac><mrow><mi>x</mi></mrow><mrow><mn>2</mn></mrow></mfrac><mo form="postfix" fence="true" stretchy="true">]</mo></mrow>`},
 		{Ident("<"), `<mi>&lt;</mi>`},
 		{Rows("rl", [][]MathML{{Ident("a"), Ident("b")}}), `<mtable class="rows" displaystyle="true"><mtr><mtd class="right"><mi>a</mi></mtd><mtd class="left"><mi>b</mi></mtd></mtr></mtable>`},
 	} {
