@@ -166,7 +166,13 @@ func TestRefusals(t *testing.T) {
 	stuck := &fast.Problem{Domains: []fast.Domain{circle, line},
 		Drift:     []fast.Coefficient{fast.Constant(0), sum("-y", tm(-1, pow(1, 1)))},
 		Diffusion: diagonal(fast.Constant(0), fast.Constant(2))}
-	for name, p := range map[string]*fast.Problem{"free particle": free, "undamped": undamped, "angle at rest": stuck} {
+	locked := &fast.Problem{Domains: []fast.Domain{circle, line},
+		Drift:     []fast.Coefficient{sum("f", tm(0.5), tm(1, sinf(0, 1))), sum("-y", tm(-1, pow(1, 1)), tm(1, cosf(0, 1)))},
+		Diffusion: diagonal(fast.Constant(0), fast.Constant(2))}
+	halves := &fast.Problem{Domains: []fast.Domain{line, line},
+		Drift:     []fast.Coefficient{sum("f", tm(1, pow(0, 1)), tm(-1, pow(0, 3))), sum("-y", tm(-1, pow(1, 1)), tm(1, pow(0, 1)))},
+		Diffusion: diagonal(sum("a", tm(0.5, pow(0, 2))), fast.Constant(2))}
+	for name, p := range map[string]*fast.Problem{"locked angle": locked, "two half-planes": halves, "free particle": free, "undamped": undamped, "angle at rest": stuck} {
 		s, err := spectral.New(context.Background(), p, spectral.Settings{})
 		if err == nil {
 			_, err = s.Mean(context.Background(), s.Coefficient(sum("q", tm(1, pow(0, 1)))))

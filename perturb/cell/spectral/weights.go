@@ -102,8 +102,60 @@ func (f *fitter) slopeIn(c fast.Coefficient, j int) float64 {
 	return (8*(g(y+h)-g(y-h)) - (g(y+2*h) - g(y-2*h))) / (12 * h)
 }
 
+// autonomous returns the one-dimensional problem of a coordinate whose own
+// equation does not contain the others, nil where there is none.
+func (f *fitter) autonomous(i int) *fast.Problem {
+	d := f.domain(i)
+	if d.Kind == fast.Sphere {
+		return nil
+	}
+	for _, c := range []fast.Coefficient{f.p.Drift[i], f.p.Diffusion[i][i]} {
+		for t := 0; t < 8; t++ {
+			y, z := probe(f.p, t), probe(f.p, t+9)
+			z[i] = y[i]
+			if c.At(y...) != c.At(z...) {
+				return nil
+			}
+		}
+	}
+	base := probe(f.p, 0)
+	alone := func(c fast.Coefficient) fast.Coefficient {
+		if c.IsZero() {
+			return fast.Constant(0)
+		}
+		return fast.Func1(c.Label(), func(v float64) float64 {
+			y := append([]float64{}, base...)
+			y[i] = v
+			return c.At(y...)
+		})
+	}
+	return &fast.Problem{Domains: []fast.Domain{d}, Drift: []fast.Coefficient{alone(f.p.Drift[i])},
+		Diffusion: [][]fast.Coefficient{{alone(f.p.Diffusion[i][i])}}}
+}
+
+// exists refuses when a coordinate that does not depend on the others has no
+// unique stationary law.
+func (f *fitter) exists(ctx context.Context) error {
+	for i := range f.owner {
+		p := f.autonomous(i)
+		if p == nil {
+			continue
+		}
+		_, err := quadrature.New(ctx, p, quadrature.Settings{})
+		var ne *fast.NotErgodic
+		var u *fast.Undefined
+		if errors.As(err, &ne) || errors.As(err, &u) {
+			return err
+		}
+	}
+	return ctx.Err()
+}
+
 // fit chooses all weights.
 func (f *fitter) fit(ctx context.Context) error {
+	if err := f.exists(ctx); err != nil {
+		return err
+	}
 	done, err := f.linear(ctx)
 	if err != nil || done {
 		return err

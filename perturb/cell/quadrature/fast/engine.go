@@ -256,6 +256,11 @@ func (e *Engine) Mean(ctx context.Context, g Function) (Value, error) {
 		var ns *NotSettled
 		if err != nil && !errors.As(err, &ns) {
 			if best.Scale > 0 && (errors.Is(err, ErrBudget) || ctx.Err() != nil) {
+				// Fall back to the finest pair of levels that could be made.
+				e.at = max(1, e.at-1)
+				if errors.Is(err, ErrBudget) {
+					e.route.Levels = e.at + 1
+				}
 				return best, e.unsettled(g.id, best)
 			}
 			return Value{}, err
@@ -277,8 +282,8 @@ func (e *Engine) Mean(ctx context.Context, g Function) (Value, error) {
 			return best, e.unsettled(g.id, best)
 		}
 		e.at++
-		if e.at >= 2 {
-			e.levels[e.at-2] = nil
+		if e.at >= 3 {
+			e.levels[e.at-3] = nil
 		}
 	}
 }
