@@ -121,7 +121,7 @@ func (p *reader) expect(c byte) {
 
 func (p *reader) ident() string {
 	start := p.pos
-	for p.pos < len(p.s) && (unicode.IsLetter(rune(p.s[p.pos])) || unicode.IsDigit(rune(p.s[p.pos])) || p.s[p.pos] == '_') {
+	for p.pos < len(p.s) && (p.s[p.pos] >= 128 || unicode.IsLetter(rune(p.s[p.pos])) || unicode.IsDigit(rune(p.s[p.pos])) || p.s[p.pos] == '_') {
 		p.pos++
 	}
 	return p.s[start:p.pos]
