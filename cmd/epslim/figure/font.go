@@ -2,6 +2,7 @@ package figure
 
 import (
 	"fmt"
+	"math"
 
 	"codeberg.org/go-fonts/liberation/liberationsansitalic"
 	"codeberg.org/go-fonts/liberation/liberationsansregular"
@@ -151,12 +152,13 @@ func strokeOutline(lines [][]point, width float64) []outline {
 // placed is one run with its place relative to the start of the label, in units of the text size.
 type placed struct {
 	run
-	x, y, scale float64
+	x, y, scale, width float64
 }
 
-// place sets runs one after the other and returns the width of the whole.
+// place sets runs one after the other and returns the width of the whole. A subscript and a superscript of
+// one base stand above each other.
 func (t *typeface) place(runs []run) (out []placed, width float64) {
-	for _, r := range runs {
+	for i, r := range runs {
 		p := placed{run: r, x: width, scale: 1}
 		switch r.script {
 		case -1:
@@ -164,10 +166,14 @@ func (t *typeface) place(runs []run) (out []placed, width float64) {
 		case 1:
 			p.y, p.scale = -scriptRise, scriptSize
 		}
+		if i > 0 && r.script*runs[i-1].script == -1 {
+			p.x = out[i-1].x
+		}
 		for _, c := range r.text {
 			a, _ := t.glyph(c, r.italic)
-			width += a * p.scale
+			p.width += a * p.scale
 		}
+		width = math.Max(width, p.x+p.width)
 		out = append(out, p)
 	}
 	return out, width

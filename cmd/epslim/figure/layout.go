@@ -211,13 +211,13 @@ func (d *drawing) setTicks() {
 	}
 }
 
-// labelWidth is the width of the widest tick label of an axis.
+// labelWidth is the width of the widest tick label of an axis, with some slack for other fonts.
 func (d *drawing) labelWidth(a *axis) float64 {
 	w := 0.0
 	for _, t := range a.ticks {
 		w = math.Max(w, d.s.face.width(t.label, tickSize))
 	}
-	return w
+	return fontSlack * w
 }
 
 func (d *drawing) margins() {

@@ -116,7 +116,7 @@ func (sh *shape) svgText(b *bytes.Buffer) {
 	} else {
 		fmt.Fprintf(b, ` x="%s" y="%s">`, num(sh.at.x), num(sh.at.y))
 	}
-	y := 0.0
+	x, y := 0.0, 0.0 // where the text stands, in units of its size
 	for _, r := range sh.runs {
 		var attr string
 		if r.italic {
@@ -128,7 +128,10 @@ func (sh *shape) svgText(b *bytes.Buffer) {
 		if dy := r.y - y; dy != 0 {
 			attr += fmt.Sprintf(` dy="%s"`, num(dy*sh.size))
 		}
-		y = r.y
+		if dx := r.x - x; math.Abs(dx) > 1e-9 { // scripts above each other
+			attr += fmt.Sprintf(` dx="%s"`, num(dx*sh.size))
+		}
+		x, y = r.x+r.width, r.y
 		if attr == "" {
 			b.WriteString(escapeXML(r.text))
 			continue
