@@ -43,7 +43,7 @@ func (r *runner) sample(g segment, before, k uint64) error {
 		return nil
 	}
 	r.wrapState(g.stepper)
-	if err := r.observe(g.from+float64(k+1)*g.stepper.h, r.values); err != nil {
+	if err := r.observe(g.at(k+1), r.values); err != nil {
 		return err
 	}
 	for i, v := range r.values {

@@ -29,6 +29,10 @@ type segment struct {
 	observed bool // whether `to` is an observation time
 }
 
+// at returns the time at the start of step k, rounded in the same way on all
+// processors.
+func (g segment) at(k uint64) float64 { return g.from + float64(float64(k)*g.stepper.h) }
+
 // newPlan compiles a run; multiple is a number the steps of each segment must be
 // divisible by.
 func newPlan(m *Model, s *Settings, multiple uint64) (*plan, error) {

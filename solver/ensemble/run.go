@@ -18,23 +18,37 @@ func Run(ctx context.Context, m *Model, s Settings) (*Result, error) {
 	if err != nil {
 		return nil, err
 	}
-	key := p.fingerprint()
-	total := newTally(m, &s)
-	if s.Resume && s.Checkpoint != "" {
-		switch saved, err := LoadPart(s.Checkpoint); {
-		case errors.Is(err, os.ErrNotExist):
-		case err != nil:
-			return nil, err
-		case saved.Key != key:
-			return nil, fmt.Errorf("ensemble: the checkpoint %s belongs to another model or other settings", s.Checkpoint)
-		default:
-			total = saved.Tally
-		}
+	total, err := p.resumed()
+	if err != nil {
+		return nil, err
 	}
-	c := &campaign{p: p, key: key, total: total, started: time.Now(), lastSave: time.Now()}
-	c.next.Store(s.From / block)
+	return p.run(ctx, total)
+}
+
+// resumed returns the tally to go on from: that of the checkpoint where there is
+// one to resume, an empty one otherwise.
+func (p *plan) resumed() (*Tally, error) {
+	if !p.s.Resume || p.s.Checkpoint == "" {
+		return newTally(p.m, p.s), nil
+	}
+	saved, err := LoadPart(p.s.Checkpoint)
+	switch {
+	case errors.Is(err, os.ErrNotExist):
+		return newTally(p.m, p.s), nil
+	case err != nil:
+		return nil, err
+	case saved.Key != p.fingerprint():
+		return nil, fmt.Errorf("ensemble: the checkpoint %s belongs to another model or other settings", p.s.Checkpoint)
+	}
+	return saved.Tally, nil
+}
+
+// run adds the paths of the settings that are not in total to it.
+func (p *plan) run(ctx context.Context, total *Tally) (*Result, error) {
+	c := &campaign{p: p, key: p.fingerprint(), total: total, started: time.Now(), lastSave: time.Now()}
+	c.next.Store(p.s.From / block)
 	runErr := c.work(ctx)
-	if s.Checkpoint != "" {
+	if p.s.Checkpoint != "" {
 		if err := c.save(); err != nil {
 			return nil, err
 		}

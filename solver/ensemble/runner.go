@@ -234,7 +234,7 @@ func (r *runner) step(g segment, k uint64) error {
 func (r *runner) move(g segment, k uint64) error {
 	st := g.stepper
 	d := len(r.state)
-	r.time[0] = g.from + float64(k)*st.h
+	r.time[0] = g.at(k)
 	r.in = r.in[:0]
 	for _, i := range st.order {
 		switch {
@@ -281,7 +281,7 @@ func (r *runner) carefulStep(g segment, k uint64) error {
 		return err
 	}
 	st := g.stepper
-	t := g.from + float64(k)*st.h
+	t := g.at(k)
 	if !r.finite() {
 		r.removeBlownUp(t, st.h)
 	}
@@ -390,7 +390,7 @@ func (r *runner) wrapState(st *stepper) {
 			if x >= w.lo && x < hi {
 				continue
 			}
-			y := x - w.length*math.Floor((x-w.lo)/w.length)
+			y := x - float64(w.length*math.Floor((x-w.lo)/w.length)) // not fused
 			if !(y >= w.lo && y < hi) {
 				y = w.lo
 			}
