@@ -50,6 +50,7 @@ func (a *app) deriveCommand() *cobra.Command {
 
 // formats are the renderings of a derivation.
 var formats = map[string]func(*derivation.Result) ([]byte, error){
+	"text": func(r *derivation.Result) ([]byte, error) { return present.Text(r, present.TextSettings{}), nil },
 	"json": func(r *derivation.Result) ([]byte, error) { return present.JSON(r, version) },
 }
 
