@@ -169,7 +169,11 @@ func (e *expansion) origins(ctx context.Context, o Order) error {
 		if err != nil {
 			return err
 		}
-		d, _, err := e.coefficients(s.Mean)
+		mean, _, err := e.settle(ctx, s.Mean)
+		if err != nil {
+			return err
+		}
+		d, _, err := e.coefficients(mean)
 		if err != nil {
 			return err
 		}
@@ -215,7 +219,7 @@ func (e *expansion) origins(ctx context.Context, o Order) error {
 			}
 		}
 	}
-	return e.checkTerms()
+	return e.checkTerms(ctx)
 }
 
 func (e *expansion) addTerm(i int, origin string, v algebra.Expr) {
@@ -237,13 +241,21 @@ func (e *expansion) addTerm(i int, origin string, v algebra.Expr) {
 }
 
 // checkTerms makes sure that the terms add up to the drift.
-func (e *expansion) checkTerms() error {
+func (e *expansion) checkTerms(ctx context.Context) error {
 	for i, ts := range e.out.Terms {
 		sum := e.Ring.Int(0)
 		for _, t := range ts {
 			sum = sum.Add(t.Value)
 		}
-		if !sum.Equal(e.out.Drift[i]) {
+		diff := sum.Sub(e.out.Drift[i])
+		zero := diff.IsZero()
+		if !zero && e.Settle != nil {
+			var err error
+			if zero, _, err = e.Settle(ctx, diff); err != nil {
+				return err
+			}
+		}
+		if !zero {
 			return fmt.Errorf("internal error: the terms of the drift of %s add up to %s, not %s", e.Slow[i], sum, e.out.Drift[i])
 		}
 	}

@@ -30,6 +30,9 @@ type Problem struct {
 	// Routes are tried in order for every fast problem; nil means closure
 	// alone.
 	Routes []cell.Route
+	// Settle decides whether an average that is known only by name vanishes;
+	// nil takes the canonical form for the answer.
+	Settle func(ctx context.Context, e algebra.Expr) (zero bool, note string, err error)
 	// MaxPower bounds the search for a limit on longer times: the largest
 	// power of the small parameter at which the averaged operator is still
 	// looked for. Zero means 4.
@@ -70,6 +73,7 @@ type Order struct {
 	Mean      algebra.Expr // its average: an operator acting on u0
 	Corrector algebra.Expr // u_J, with L_lead u_J = Mean - Sum
 	Limit     bool         // the solvability condition is the limit equation
+	Note      string       // how the average was found to vanish, if by numbers
 }
 
 // Contribution is L_power u_index in the source of an order.
@@ -292,6 +296,9 @@ func (e *expansion) order(ctx context.Context, j int, power *big.Rat) (done bool
 		return false, fmt.Errorf("at order %s^(%s): %w", e.Gen.Small, power.RatString(), err)
 	}
 	o.Mean, o.Corrector = s.Mean, s.Phi
+	if o.Mean, o.Note, err = e.settle(ctx, o.Mean); err != nil {
+		return false, fmt.Errorf("at order %s^(%s): %w", e.Gen.Small, power.RatString(), err)
+	}
 	o.Limit = !o.Mean.IsZero()
 	e.out.Orders = append(e.out.Orders, o)
 	if !o.Limit {
@@ -299,6 +306,39 @@ func (e *expansion) order(ctx context.Context, j int, power *big.Rat) (done bool
 		return false, nil
 	}
 	return true, e.limit(ctx, o)
+}
+
+// settle drops the parts of an averaged operator that vanish numerically.
+func (e *expansion) settle(ctx context.Context, mean algebra.Expr) (algebra.Expr, string, error) {
+	if e.Settle == nil || mean.IsZero() {
+		return mean, "", nil
+	}
+	ts, err := mean.Derivatives(e.out.U0)
+	if err != nil {
+		return mean, "", err
+	}
+	out := mean
+	notes := ""
+	for _, t := range ts {
+		zero, note, err := e.Settle(ctx, t.Coef)
+		if err != nil {
+			return mean, "", err
+		}
+		if zero {
+			out = out.Sub(t.Coef.Mul(e.derivative(t.Index)))
+			notes = note
+		}
+	}
+	return out, notes, nil
+}
+
+// derivative is a derivative of u0.
+func (e *expansion) derivative(index []int) algebra.Expr {
+	d := e.u[0]
+	for i, n := range index {
+		d = d.DiffN(e.Slow[i], n)
+	}
+	return d
 }
 
 // solve tries the routes in turn.

@@ -1,6 +1,9 @@
 package algebra
 
-import "math/big"
+import (
+	"math/big"
+	"sort"
+)
 
 // Leading is the leading behaviour coef * name^power of e as the symbol goes
 // to zero (from above) or to infinity. ok is false when the symbol occurs
@@ -113,4 +116,38 @@ func (e Expr) Primitive() Expr {
 		c = ratGCD(ratGCD(c, t.c.re), t.c.im)
 	}
 	return e.Mul(r.ratExpr(c.inv()))
+}
+
+// Summands lists the terms of the numerator over the denominator.
+func (e Expr) Summands() []Expr {
+	r := e.n.r
+	out := make([]Expr, 0, len(e.n.num))
+	for _, t := range e.n.num {
+		out = append(out, r.reduce(poly{t}, e.n.den, nil))
+	}
+	return out
+}
+
+// SymbolNames lists the declared symbols in order of declaration.
+func (r *Ring) SymbolNames() []string {
+	ks := make([]*kernel, 0, len(r.symbols))
+	for _, k := range r.symbols {
+		if k.name != "pi" {
+			ks = append(ks, k)
+		}
+	}
+	sort.Slice(ks, func(i, j int) bool { return compareKernels(ks[i], ks[j]) < 0 })
+	out := make([]string, len(ks))
+	for i, k := range ks {
+		out[i] = k.name
+	}
+	return out
+}
+
+// SignOf is the declared sign of a symbol.
+func (r *Ring) SignOf(name string) Sign {
+	if k, ok := r.symbols[name]; ok {
+		return k.sign
+	}
+	return AnyReal
 }

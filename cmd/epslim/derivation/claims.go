@@ -3,6 +3,7 @@ package derivation
 import (
 	"context"
 	"fmt"
+	"math"
 	"math/big"
 
 	"epslim/fokkerplanck"
@@ -50,10 +51,10 @@ func (res *Result) judge(ctx context.Context, c *ito.Claim) Verdict {
 	switch c.Kind {
 	case ito.ClaimDrift:
 		i := index(c.Names[0])
-		return res.compare(c, c.Right, lim.Drift[i], func() string { return res.driftSlip(i, c.Right) })
+		return res.compare(ctx, c, c.Right, lim.Drift[i], func() string { return res.driftSlip(i, c.Right) })
 	case ito.ClaimDiffusion:
 		i, j := index(c.Names[0]), index(c.Names[1])
-		return res.compare(c, c.Right, lim.Diffusion[i][j], func() string { return res.diffusionSlip(i, j, c.Right) })
+		return res.compare(ctx, c, c.Right, lim.Diffusion[i][j], func() string { return res.diffusionSlip(i, j, c.Right) })
 	case ito.ClaimDensity:
 		return res.judgeDensity(c)
 	case ito.ClaimMean:
@@ -61,20 +62,23 @@ func (res *Result) judge(ctx context.Context, c *ito.Claim) Verdict {
 		if err != nil {
 			return Verdict{Claim: c, Verdict: Undecided, Reason: "the average could not be found: " + err.Error()}
 		}
-		return res.compare(c, c.Right, s, func() string { return ratioSlip(c.Right, s) })
+		return res.compare(ctx, c, c.Right, s, func() string { return ratioSlip(c.Right, s) })
 	case ito.ClaimInvariant:
 		return res.judgeInvariant(c)
 	case ito.ClaimCorrector:
-		return res.judgeCorrector(c, index(c.Names[0]))
+		return res.judgeCorrector(ctx, c, index(c.Names[0]))
 	case ito.ClaimNoise:
-		return res.judgeNoise(c, index(c.Names[0]))
+		return res.judgeNoise(ctx, c, index(c.Names[0]))
 	}
 	return Verdict{Claim: c, Verdict: Undecided, Reason: "this kind of claim is not known"}
 }
 
 // compare tests claimed = derived with names first, then with the formulas.
-func (res *Result) compare(c *ito.Claim, claimed, derived algebra.Expr, slip func() string) Verdict {
+func (res *Result) compare(ctx context.Context, c *ito.Claim, claimed, derived algebra.Expr, slip func() string) Verdict {
 	diff := claimed.Sub(derived)
+	if res.Route.IsNumerical(diff) {
+		return res.compareNumbers(ctx, c, claimed, derived, slip)
+	}
 	switch diff.ZeroTest() {
 	case algebra.VerdictZero:
 		return Verdict{Claim: c, Verdict: Proven, Reason: "equal by exact algebra"}
@@ -93,6 +97,39 @@ func (res *Result) compare(c *ito.Claim, claimed, derived algebra.Expr, slip fun
 	w.Difference = diff
 	w.Slip = slip()
 	return Verdict{Claim: c, Verdict: Refuted, Reason: "differs from the derived " + derived.String(), Witness: w}
+}
+
+// compareNumbers tests a claim about a quantity known by numbers only, at
+// sample points.
+func (res *Result) compareNumbers(ctx context.Context, c *ito.Claim, claimed, derived algebra.Expr, slip func() string) Verdict {
+	worst := 0.0
+	for k := 0; k < 4; k++ {
+		p := res.Route.Sample(k)
+		v, de, err := p.Value(ctx, derived)
+		if err != nil {
+			return Verdict{Claim: c, Verdict: Undecided, Reason: "the derived quantity could not be evaluated: " + err.Error()}
+		}
+		w, dw, err := p.Value(ctx, claimed)
+		if err != nil {
+			return Verdict{Claim: c, Verdict: Undecided, Reason: "the claimed quantity could not be evaluated: " + err.Error()}
+		}
+		scale := math.Max(math.Abs(v), math.Abs(w))
+		if math.Abs(v-w) > 100*(de+dw)+1e-9*scale+1e-12 {
+			at := map[string]string{}
+			for n, x := range p.Values() {
+				if f, _ := x.Float64(); claimed.Sub(derived).DependsOn(n) || res.System.Variable(n) != nil {
+					at[n] = fmt.Sprintf("%.6g", f)
+				}
+			}
+			return Verdict{Claim: c, Verdict: Refuted, Reason: "differs numerically from the derived quantity", Witness: &Witness{
+				At: at, Claimed: fmt.Sprintf("%.10g", w), Derived: fmt.Sprintf("%.10g", v), Slip: slip(),
+			}}
+		}
+		if scale > 0 {
+			worst = math.Max(worst, math.Abs(v-w)/scale)
+		}
+	}
+	return Verdict{Claim: c, Verdict: Agrees, Reason: fmt.Sprintf("equal at sample points to %.1g relative", math.Max(worst, 1e-16))}
 }
 
 // witness evaluates both sides at a point where they differ.
@@ -268,17 +305,17 @@ func (res *Result) judgeInvariant(c *ito.Claim) Verdict {
 }
 
 // judgeCorrector compares up to a function of the slow variables.
-func (res *Result) judgeCorrector(c *ito.Claim, i int) Verdict {
+func (res *Result) judgeCorrector(ctx context.Context, c *ito.Claim, i int) Verdict {
 	diff := res.Limit.Process.Reduce(c.Right.Sub(res.Limit.Cell[i]))
 	for _, v := range res.System.Fast {
 		if diff.DependsOn(v.Name) {
-			return res.compare(c, c.Right, res.Limit.Cell[i], func() string { return ratioSlip(c.Right, res.Limit.Cell[i]) })
+			return res.compare(ctx, c, c.Right, res.Limit.Cell[i], func() string { return ratioSlip(c.Right, res.Limit.Cell[i]) })
 		}
 	}
 	return Verdict{Claim: c, Verdict: Proven, Reason: "equal up to a shift that does not depend on the fast variables"}
 }
 
-func (res *Result) judgeNoise(c *ito.Claim, i int) Verdict {
+func (res *Result) judgeNoise(ctx context.Context, c *ito.Claim, i int) Verdict {
 	if res.Noise == nil || c.Index < 1 || c.Index > len(res.Noise[i]) {
 		return Verdict{Claim: c, Verdict: Undecided, Reason: fmt.Sprintf("the smallest noise factor has no column %d", c.Index)}
 	}
@@ -286,7 +323,7 @@ func (res *Result) judgeNoise(c *ito.Claim, i int) Verdict {
 	if c.Right.Equal(s.Neg()) {
 		return Verdict{Claim: c, Verdict: Proven, Reason: "equal up to the sign of the column, which does not change the law"}
 	}
-	return res.compare(c, c.Right, s, func() string { return ratioSlip(c.Right, s) })
+	return res.compare(ctx, c, c.Right, s, func() string { return ratioSlip(c.Right, s) })
 }
 
 // solveCell averages a function over the fast process.

@@ -16,6 +16,7 @@ import (
 	"epslim/generator/ito"
 	"epslim/perturb"
 	"epslim/perturb/cell"
+	"epslim/perturb/cell/numeric"
 )
 
 // Options of a derivation.
@@ -39,6 +40,7 @@ type Result struct {
 	Claims       []Verdict
 	Values       []Value
 	Exact        bool
+	Route        *numeric.Route // evaluates averages that are known by name only
 }
 
 // Status of a certificate.
@@ -93,6 +95,10 @@ func (res *Result) run(ctx context.Context, opt Options) error {
 		Ring: sys.Ring, Gen: g, Slow: names(sys.Slow), Fast: fastVariables(sys),
 		Numbers: cell.Numbers{Formulas: sys.Definitions(), Values: sys.Values()},
 	}
+	proc := &cell.Process{Ring: sys.Ring, L0: g.Parts[0].Op, Fast: prob.Fast}
+	res.Route = numeric.New(proc, prob.Slow, prob.Numbers)
+	prob.Routes = []cell.Route{cell.NewClosure(proc), res.Route}
+	prob.Settle = res.Route.Settle
 	lim, err := perturb.Derive(ctx, prob)
 	var refused *perturb.Refusal
 	if errors.As(err, &refused) {
@@ -110,13 +116,14 @@ func (res *Result) run(ctx context.Context, opt Options) error {
 	if res.Stationary, err = res.Diffusion.Solve(ctx); err != nil {
 		return err
 	}
+	res.Exact = len(res.Route.Names()) == 0
 	res.conditions()
 	res.certify()
 	for _, c := range sys.Claims {
 		res.Claims = append(res.Claims, res.judge(ctx, c))
 	}
 	for _, p := range points {
-		v, err := res.valueAt(p)
+		v, err := res.valueAt(ctx, p)
 		if err != nil {
 			return err
 		}
@@ -233,7 +240,14 @@ func (res *Result) certify() {
 			What:   fmt.Sprintf("corrector at order %s^(%s)", res.System.Small, o.Power.RatString()),
 			Status: Exact, Detail: "L0 Phi + f - <f> = 0 identically",
 		}
-		if !r.IsZero() {
+		switch {
+		case res.Route.IsNumerical(r) || res.Route.IsNumerical(o.Corrector):
+			c.Status = Numerical
+			c.Detail = "the named correctors are defined by their fast problems, solved by the " + res.Route.Name() + " route"
+			if o.Note != "" {
+				c.Detail += "; an average is " + o.Note
+			}
+		case !r.IsZero():
 			c.Status, c.Detail = Failed, "L0 Phi + f - <f> = "+r.String()
 		}
 		res.Certificates = append(res.Certificates, c)

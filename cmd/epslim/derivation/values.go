@@ -1,9 +1,9 @@
 package derivation
 
 import (
+	"context"
 	"fmt"
 	"math"
-	"math/big"
 
 	"epslim/generator/algebra"
 	"epslim/generator/ito"
@@ -29,73 +29,98 @@ func (m *MissingValue) Error() string {
 }
 
 // valueAt evaluates the limit at a point.
-func (res *Result) valueAt(p *ito.Point) (*Value, error) {
+func (res *Result) valueAt(ctx context.Context, p *ito.Point) (*Value, error) {
 	v := &Value{At: p}
+	eval, err := res.evaluator(ctx, p)
+	if err != nil {
+		return nil, err
+	}
 	n := len(res.System.Slow)
 	for i := 0; i < n; i++ {
-		f, err := res.number(res.Limit.Drift[i], p)
+		f, de, err := eval(res.Limit.Drift[i])
 		if err != nil {
 			return nil, fmt.Errorf("drift of %s at %s: %w", res.System.Slow[i].Name, p.Text, err)
 		}
 		v.Drift = append(v.Drift, f)
 		row := make([]float64, n)
 		for j := range row {
-			if row[j], err = res.number(res.Limit.Diffusion[i][j], p); err != nil {
+			var de float64
+			if row[j], de, err = eval(res.Limit.Diffusion[i][j]); err != nil {
 				return nil, fmt.Errorf("diffusion of %s, %s at %s: %w", res.System.Slow[i].Name, res.System.Slow[j].Name, p.Text, err)
 			}
-			v.Error = math.Max(v.Error, math.Abs(row[j]))
+			v.Error = math.Max(v.Error, de)
 		}
 		v.Diffusion = append(v.Diffusion, row)
-		v.Error = math.Max(v.Error, math.Abs(f))
+		v.Error = math.Max(v.Error, de)
 	}
-	v.Error = math.Max(v.Error, 1) * 0x1p-52
 	return v, nil
 }
 
-// number evaluates e at a point, with formulas for functions and values for
-// parameters.
-func (res *Result) number(e algebra.Expr, p *ito.Point) (float64, error) {
-	e, err := e.SubsFunc(res.System.Definitions())
-	if err != nil {
-		return 0, err
-	}
-	values := res.System.Values()
-	for n, x := range p.Parameters {
-		values[n] = x.Expr
-	}
-	for _, s := range e.Symbols() {
-		if q := res.System.Parameter(s); q != nil && !values[s].Valid() {
-			return 0, &MissingValue{s, "parameter"}
-		}
-	}
-	for _, f := range e.Functions() {
-		return 0, &MissingValue{f, "function"}
-	}
-	at := algebra.Binding{Values: map[string]*big.Float{}}
+// evaluator evaluates expressions at a point, with formulas for functions and
+// values for parameters; averages that are known by name only are computed.
+// The second result bounds the absolute error.
+func (res *Result) evaluator(ctx context.Context, p *ito.Point) (func(algebra.Expr) (float64, float64, error), error) {
+	point := res.Route.At(nil, false)
 	bind := func(name string, x algebra.Expr) error {
-		v, err := x.EvalBig(algebra.Binding{}, 160)
+		v, err := x.EvalBig(algebra.Binding{}, 200)
 		if err == nil {
-			at.Values[name] = v
+			point.Bind(name, v)
 		}
 		return err
 	}
-	for n, x := range values {
-		if err := bind(n, x); err != nil {
-			return 0, err
+	known := map[string]bool{"pi": true}
+	for n, x := range p.Parameters {
+		if err := bind(n, x.Expr); err != nil {
+			return nil, err
 		}
+		known[n] = true
 	}
 	for i, v := range res.System.Slow {
 		if err := bind(v.Name, p.Slow[i].Expr); err != nil {
-			return 0, err
+			return nil, err
 		}
 	}
-	v, err := e.EvalBig(at, 160)
-	if err != nil {
-		return 0, err
+	for n := range res.System.Values() {
+		known[n] = true
 	}
-	f, _ := v.Float64()
-	if math.IsInf(f, 0) || math.IsNaN(f) {
-		return 0, fmt.Errorf("the value is not finite")
+	return func(e algebra.Expr) (float64, float64, error) {
+		if err := res.missing(e, known); err != nil {
+			return 0, 0, err
+		}
+		v, de, err := point.Value(ctx, e)
+		if err == nil && (math.IsInf(v, 0) || math.IsNaN(v)) {
+			err = fmt.Errorf("the value is not finite")
+		}
+		return v, de, err
+	}, nil
+}
+
+// missing names the first parameter without a value or function without a
+// formula that e needs. What stands behind named averages is checked with the
+// fast process.
+func (res *Result) missing(e algebra.Expr, known map[string]bool) error {
+	exprs := []algebra.Expr{e}
+	if res.Route.IsNumerical(e) {
+		for _, t := range res.Limit.Process.L0.Terms() {
+			exprs = append(exprs, t.Coef)
+		}
 	}
-	return f, nil
+	defs := res.System.Definitions()
+	for _, x := range exprs {
+		x, err := x.SubsFunc(defs)
+		if err != nil {
+			return err
+		}
+		for _, s := range x.Symbols() {
+			if q := res.System.Parameter(s); q != nil && !known[s] {
+				return &MissingValue{s, "parameter"}
+			}
+		}
+		for _, f := range x.Functions() {
+			if res.System.Function(f) != nil {
+				return &MissingValue{f, "function"}
+			}
+		}
+	}
+	return nil
 }

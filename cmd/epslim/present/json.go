@@ -175,8 +175,8 @@ func generatorParts(res *derivation.Result) []object {
 	return out
 }
 
-func formula(e algebra.Expr) any {
-	if !e.Valid() {
+func closedForm(res *derivation.Result, e algebra.Expr) any {
+	if !e.Valid() || res.Route != nil && res.Route.IsNumerical(e) {
 		return nil
 	}
 	return e.String()
@@ -187,14 +187,14 @@ func fastProcess(res *derivation.Result) object {
 	if x == nil {
 		return object{{"name", ""}, {"invariant_density", nil}}
 	}
-	return object{{"name", x.Name}, {"invariant_density", formula(x.Density)}}
+	return object{{"name", x.Name}, {"invariant_density", closedForm(res, x.Density)}}
 }
 
 func byVariable(res *derivation.Result, es []algebra.Expr) object {
 	o := object{}
 	for i, v := range res.System.Slow {
 		if i < len(es) {
-			o = append(o, member{v.Name, formula(es[i])})
+			o = append(o, member{v.Name, closedForm(res, es[i])})
 		}
 	}
 	return o
@@ -207,18 +207,18 @@ func limitObject(res *derivation.Result) object {
 	terms := object{}
 	for i, v := range res.System.Slow {
 		for j := i; j < len(res.System.Slow); j++ {
-			diff = append(diff, member{v.Name + "," + res.System.Slow[j].Name, formula(lim.Diffusion[i][j])})
+			diff = append(diff, member{v.Name + "," + res.System.Slow[j].Name, closedForm(res, lim.Diffusion[i][j])})
 		}
 		if res.Noise != nil {
-			row := []string{}
+			row := []any{}
 			for _, s := range res.Noise[i] {
-				row = append(row, s.String())
+				row = append(row, closedForm(res, s))
 			}
 			noise = append(noise, member{v.Name, row})
 		}
 		ts := []object{}
 		for _, t := range lim.Terms[i] {
-			ts = append(ts, object{{"origin", t.Origin}, {"term", formula(t.Value)}})
+			ts = append(ts, object{{"origin", t.Origin}, {"term", closedForm(res, t.Value)}})
 		}
 		terms = append(terms, member{v.Name, ts})
 	}
@@ -245,7 +245,7 @@ func stationary(res *derivation.Result) object {
 	s := res.Stationary
 	o := object{
 		{"reversible", truth(s.Reversible)},
-		{"density", formula(s.Density)},
+		{"density", closedForm(res, s.Density)},
 		{"normalizable", truth(s.Normal)},
 	}
 	if s.Current != nil {
@@ -275,14 +275,14 @@ func claims(res *derivation.Result) []object {
 		if v.Witness == nil {
 			o = append(o, member{"witness", nil})
 		} else {
-			o = append(o, member{"witness", witness(v.Witness)})
+			o = append(o, member{"witness", witness(res, v.Witness)})
 		}
 		out = append(out, o)
 	}
 	return out
 }
 
-func witness(w *derivation.Witness) object {
+func witness(res *derivation.Result, w *derivation.Witness) object {
 	at := object{}
 	for _, k := range sortedKeys(w.At) {
 		at = append(at, member{k, json.Number(w.At[k])})
@@ -295,7 +295,7 @@ func witness(w *derivation.Witness) object {
 			o = append(o, member{m.name, json.Number(m.text)})
 		}
 	}
-	o = append(o, member{"difference", formula(w.Difference)})
+	o = append(o, member{"difference", closedForm(res, w.Difference)})
 	return append(o, member{"slip", w.Slip})
 }
 
