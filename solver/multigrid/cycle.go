@@ -124,36 +124,32 @@ func (l *level) restrict(c *level, x, b []float32) {
 		for R := lo; R < hi; R++ {
 			J, K := c.lay.RowCoordinates(R)
 			dst := c.b[c.lay.Row(R):][:nc]
-			acc := v.acc[:n]
-			first := true
+			acc, buf := v.acc[:n], v.buf[:n]
 			j0, j1 := c.up.children(1, J)
 			k0, k1 := c.up.children(2, K)
+			rows, left := 0, (j1-j0)*(k1-k0)
 			for k := k0; k < k1; k++ {
 				for j := j0; j < j1; j++ {
-					r := j + len(c.up.parent[1])*k
+					r := j + l.lay.Shape(1)*k
 					s := l.lay.Row(r)
 					v.set(l, x, r)
-					if first {
-						residualRow(acc, x[s:][:n], b[s:][:n], l.weight[s:][:n], v.coef, v.nb)
-						first = false
-						continue
+					into := buf
+					if rows == 0 {
+						into = acc
 					}
-					buf := v.buf[:n]
-					residualRow(buf, x[s:][:n], b[s:][:n], l.weight[s:][:n], v.coef, v.nb)
-					for i, t := range buf {
-						acc[i] += t
+					residualRow(into, x[s:][:n], b[s:][:n], l.weight[s:][:n], v.coef, v.nb)
+					if rows++; rows > 1 && rows < left {
+						blendRow(acc, acc, buf, 1, 1)
 					}
 				}
 			}
-			if !c.up.merged[0] {
-				copy(dst, acc)
-				continue
+			if left == 1 {
+				clear(buf)
 			}
-			for i := 0; i < n/2; i++ {
-				dst[i] = acc[2*i] + acc[2*i+1]
-			}
-			if n%2 == 1 {
-				dst[n/2] = acc[n-1]
+			if c.up.merged[0] {
+				pairSum(dst, acc, buf)
+			} else {
+				blendRow(dst, acc, buf, 1, 1)
 			}
 		}
 	})
@@ -163,66 +159,51 @@ func (l *level) restrict(c *level, x, b []float32) {
 // level, interpolated linearly in every merged direction.
 func (l *level) prolong(c *level, x, xc []float32, set bool) {
 	l.each(func(_, lo, hi int) {
-		v := l.views()
+		v := c.views()
 		for r := lo; r < hi; r++ {
 			t := c.blendRows(v, xc, l, r)
-			c.spread(x[l.lay.Row(r):][:l.lay.Nx], t, set)
+			f := x[l.lay.Row(r):][:l.lay.Nx]
+			if set {
+				clear(f)
+			}
+			c.spread(f, t)
 			l.wrap(x, r)
 		}
 	})
 }
 
-// blendRows interpolates the coarse rows around fine row r across the rows.
+// blendRows interpolates the coarse rows around fine row r across the rows. The
+// result has one more value at either end.
 func (c *level) blendRows(v *views, xc []float32, l *level, r int) []float32 {
 	j, k := l.lay.RowCoordinates(r)
-	t := v.acc[:c.lay.Nx]
+	n := c.lay.Nx
+	ext := v.acc[:n+2]
+	t := ext[1 : n+1]
 	ny := c.lay.Shape(1)
-	row := func(J, K int32) []float32 { return xc[c.lay.Row(int(J)+ny*int(K)):][:c.lay.Nx] }
+	row := func(J, K int32) []float32 { return xc[c.lay.Row(int(J)+ny*int(K)):][:n] }
 	p1, o1, w1 := c.up.parent[1][j], c.up.other[1][j], c.up.share[1][j]
 	p2, o2, w2 := c.up.parent[2][k], c.up.other[2][k], c.up.share[2][k]
-	a, b := row(p1, p2), row(o1, p2)
-	if w2 == 0 {
-		u := 1 - w1
-		for i := range t {
-			t[i] = float32(u*a[i]) + float32(w1*b[i])
-		}
-		return t
+	blendRow(t, row(p1, p2), row(o1, p2), 1-w1, w1)
+	if w2 != 0 {
+		buf := v.buf[:n]
+		blendRow(buf, row(p1, o2), row(o1, o2), 1-w1, w1)
+		blendRow(t, t, buf, 1-w2, w2)
 	}
-	d, e := row(p1, o2), row(o1, o2)
-	u1, u2 := 1-w1, 1-w2
-	for i := range t {
-		t[i] = float32(u2*(float32(u1*a[i])+float32(w1*b[i]))) + float32(w2*(float32(u1*d[i])+float32(w1*e[i])))
+	ext[0], ext[n+1] = t[0], t[n-1]
+	if c.lay.PeriodicX {
+		ext[0], ext[n+1] = t[n-1], t[0]
 	}
-	return t
+	return ext
 }
 
 // spread interpolates along the row.
-func (c *level) spread(f, t []float32, set bool) {
-	if set {
-		clear(f)
-	}
-	n := len(t)
+func (c *level) spread(f, ext []float32) {
+	t := ext[1 : len(ext)-1]
 	switch {
 	case !c.up.merged[0]:
-		for i := range f {
-			f[i] += t[i]
-		}
-	case c.up.even && n > 1:
-		left, right := t[0], t[n-1]
-		if c.lay.PeriodicX {
-			left, right = right, left
-		}
-		prev, cur := left, t[0]
-		for i := 0; i < n; i++ {
-			next := right
-			if i+1 < n {
-				next = t[i+1]
-			}
-			m := 0.75 * cur
-			f[2*i] += m + float32(0.25*prev)
-			f[2*i+1] += m + float32(0.25*next)
-			prev, cur = cur, next
-		}
+		blendRow(f, f, t, 1, 1)
+	case c.up.even:
+		spreadRow(f, ext)
 	default:
 		p, o, w := c.up.parent[0], c.up.other[0], c.up.share[0]
 		for i := range f {

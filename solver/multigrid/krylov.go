@@ -6,80 +6,67 @@ import (
 	"time"
 )
 
-// rowSum adds up what body returns for every row, in the order of the rows,
-// whatever the number of workers.
-func (s *Solver) rowSum(body func(r int) float64) float64 {
+// rowSums adds up the triples that body returns for every row, in the order of
+// the rows, whatever the number of workers.
+func (s *Solver) rowSums(body func(r int) (a, b, c float64)) (a, b, c float64) {
 	s.m.Each(func(_, lo, hi int) {
 		for r := lo; r < hi; r++ {
-			s.part[r] = body(r)
+			s.part[3*r], s.part[3*r+1], s.part[3*r+2] = body(r)
 		}
 	})
-	var t float64
-	for _, v := range s.part[:s.m.Layout.Rows] {
-		t += v
+	for r := 0; r < s.m.Layout.Rows; r++ {
+		a += s.part[3*r]
+		b += s.part[3*r+1]
+		c += s.part[3*r+2]
 	}
-	return t
-}
-
-func dotRow(a, b []float64) float64 {
-	b = b[:len(a)]
-	var s0, s1, s2, s3 float64
-	i := 0
-	for ; i+4 <= len(a); i += 4 {
-		s0 += float64(a[i] * b[i])
-		s1 += float64(a[i+1] * b[i+1])
-		s2 += float64(a[i+2] * b[i+2])
-		s3 += float64(a[i+3] * b[i+3])
-	}
-	for ; i < len(a); i++ {
-		s0 += float64(a[i] * b[i])
-	}
-	return (s0 + s1) + (s2 + s3)
+	return a, b, c
 }
 
 func (s *Solver) row(v []float64, r int) []float64 {
 	return v[s.m.Layout.Row(r):][:s.m.Layout.Nx]
 }
 
-func (s *Solver) dot(a, b []float64) float64 {
-	return s.rowSum(func(r int) float64 { return dotRow(s.row(a, r), s.row(b, r)) })
+// norm returns |v|.
+func (s *Solver) norm(v []float64) float64 {
+	t, _, _ := s.rowSums(func(r int) (float64, float64, float64) {
+		a := s.row(v, r)
+		rr, _ := subtract(a, a, a, 0)
+		return rr, 0, 0
+	})
+	return math.Sqrt(t)
 }
 
 // scaledNorm returns |D^-1 b|.
 func (s *Solver) scaledNorm(b []float64) float64 {
-	return math.Sqrt(s.rowSum(func(r int) float64 {
+	t, _, _ := s.rowSums(func(r int) (float64, float64, float64) {
 		var t float64
 		inv := s.row(s.inv, r)
 		for i, v := range s.row(b, r) {
 			w := v * inv[i]
-			t += w * w
+			t += float64(w * w)
 		}
-		return t
-	}))
+		return t, 0, 0
+	})
+	return math.Sqrt(t)
 }
 
-// apply computes y = D^-1 A x for an unscaled x.
-func (s *Solver) apply(y, x []float64) {
-	if s.h.adjoint {
-		s.m.ApplyAdjoint(y, x, s.h.shift)
-	} else {
-		s.m.Apply(y, x, s.h.shift)
-	}
-	s.m.Each(func(_, lo, hi int) {
-		for r := lo; r < hi; r++ {
-			inv := s.row(s.inv, r)
-			yy := s.row(y, r)
-			for i := range yy {
-				yy[i] *= inv[i]
-			}
+// apply computes y = D^-1 A x and returns y.a, y.b and y.y.
+func (s *Solver) apply(y, x, a, b []float64) (ya, yb, yy float64) {
+	s.m.WrapAll(x)
+	return s.rowSums(func(r int) (float64, float64, float64) {
+		if s.h.adjoint {
+			s.m.ApplyAdjointRow(y, x, r, s.h.shift)
+		} else {
+			s.m.ApplyRow(y, x, r, s.h.shift)
 		}
+		return scaleDots(s.row(y, r), s.row(s.inv, r), s.row(a, r), s.row(b, r))
 	})
 }
 
 // residual writes D^-1 (b - A x) and returns its norm; b nil stands for zero.
 func (s *Solver) residual(r, x, b []float64) float64 {
-	s.apply(r, x)
-	return math.Sqrt(s.rowSum(func(q int) float64 {
+	s.apply(r, x, x, x)
+	t, _, _ := s.rowSums(func(q int) (float64, float64, float64) {
 		rr := s.row(r, q)
 		if b == nil {
 			for i := range rr {
@@ -91,31 +78,26 @@ func (s *Solver) residual(r, x, b []float64) float64 {
 				rr[i] = float64(bb[i]*inv[i]) - rr[i]
 			}
 		}
-		return dotRow(rr, rr)
-	}))
+		t, _ := subtract(rr, rr, rr, 0)
+		return t, 0, 0
+	})
+	return math.Sqrt(t)
 }
 
-// precondition writes the result of one cycle on r.
+// precondition writes the result of one cycle on r, whose norm must be known.
 func (s *Solver) precondition(z, r []float64, norm float64) {
 	l := s.h.levels[0]
 	n := s.m.Layout.Nx
 	up := math.Sqrt(float64(s.m.Grid.Cells())) / norm
 	s.m.Each(func(_, lo, hi int) {
 		for q := lo; q < hi; q++ {
-			b := l.b[s.m.Layout.Row(q):][:n]
-			for i, v := range s.row(r, q) {
-				b[i] = float32(v * up)
-			}
+			narrow(l.b[s.m.Layout.Row(q):][:n], s.row(r, q), up)
 		}
 	})
 	s.h.cycle(0, l.x, l.b, s.kind, true)
-	down := 1 / up
 	s.m.Each(func(_, lo, hi int) {
 		for q := lo; q < hi; q++ {
-			x, zz := l.x[s.m.Layout.Row(q):][:n], s.row(z, q)
-			for i := range zz {
-				zz[i] = float64(x[i]) * down
-			}
+			widen(s.row(z, q), l.x[s.m.Layout.Row(q):][:n], 1/up)
 		}
 	})
 }
@@ -169,77 +151,59 @@ func (s *Solver) bicgstab(ctx context.Context, x, r []float64, tol, unit float64
 	shadow, p, v, t, ph, sh := s.work[1], s.work[2], s.work[3], s.work[4], s.work[5], s.work[6]
 	copy(shadow, r)
 	copy(p, r)
-	norm := math.Sqrt(s.dot(r, r))
+	norm := s.norm(r)
+	pNorm := norm
 	first, firstNorm := st.Iterations, norm
 	rho := norm * norm
 	for st.Iterations < limit && ctx.Err() == nil {
-		s.precondition(ph, p, math.Sqrt(s.dot(p, p)))
-		s.apply(v, ph)
-		denom := s.dot(shadow, v)
-		if denom == 0 || math.IsNaN(denom) {
+		s.precondition(ph, p, pNorm)
+		denom, _, _ := s.apply(v, ph, shadow, shadow)
+		alpha := rho / denom
+		if !finite(alpha) {
 			return
 		}
-		alpha := rho / denom
-		sNorm := math.Sqrt(s.rowSum(func(q int) float64 {
-			rr, vv := s.row(r, q), s.row(v, q)
-			for i := range rr {
-				rr[i] -= float64(alpha * vv[i])
-			}
-			return dotRow(rr, rr)
-		}))
+		ss, sh0, _ := s.rowSums(func(q int) (float64, float64, float64) {
+			a, b := subtract(s.row(r, q), s.row(v, q), s.row(shadow, q), alpha)
+			return a, b, 0
+		})
+		sNorm := math.Sqrt(ss)
 		if math.IsNaN(sNorm) {
 			return
 		}
 		if sNorm <= tol {
-			s.each(func(q int) {
-				xx, a := s.row(x, q), s.row(ph, q)
-				for i := range xx {
-					xx[i] += float64(alpha * a[i])
+			s.m.Each(func(_, lo, hi int) {
+				for q := lo; q < hi; q++ {
+					subtract(s.row(x, q), s.row(ph, q), s.row(ph, q), -alpha)
 				}
 			})
 			s.note(st, sNorm/unit)
 			return
 		}
 		s.precondition(sh, r, sNorm)
-		s.apply(t, sh)
-		tt, ts, st0 := s.dot(t, t), s.dot(t, r), s.dot(shadow, t)
-		if tt == 0 || math.IsNaN(tt) {
+		ts, th, tt := s.apply(t, sh, r, shadow)
+		omega := ts / tt
+		newRho := sh0 - omega*th
+		beta := newRho / rho * alpha / omega
+		if !finite(omega) || !finite(beta) {
 			return
 		}
-		omega := ts / tt
-		newRho := s.dot(shadow, r) - omega*st0
-		beta := newRho / rho * alpha / omega
-		norm = math.Sqrt(s.rowSum(func(q int) float64 {
-			xx, a, c, rr, tt, pp, vv := s.row(x, q), s.row(ph, q), s.row(sh, q), s.row(r, q), s.row(t, q), s.row(p, q), s.row(v, q)
-			for i := range xx {
-				xx[i] += float64(alpha*a[i]) + float64(omega*c[i])
-				rr[i] -= float64(omega * tt[i])
-				pp[i] = rr[i] + float64(beta*(pp[i]-float64(omega*vv[i])))
-			}
-			return dotRow(rr, rr)
-		}))
-		rho = newRho
+		rr, pp, _ := s.rowSums(func(q int) (float64, float64, float64) {
+			a, b := step(s.row(x, q), s.row(ph, q), s.row(sh, q), s.row(r, q), s.row(t, q), s.row(p, q), s.row(v, q), alpha, omega, beta)
+			return a, b, 0
+		})
+		norm, pNorm, rho = math.Sqrt(rr), math.Sqrt(pp), newRho
 		s.note(st, norm/unit)
-		if norm <= tol || math.IsNaN(norm) || rho == 0 || omega == 0 {
+		if norm <= tol || !finite(norm) || rho == 0 || norm > 1e3*firstNorm {
 			return
 		}
 		if s.slow(st.Iterations-first, norm/firstNorm, tol/firstNorm) {
 			s.kind = cycleKind{line: true, gamma: 2}
 			return
 		}
-		if norm > 1e3*firstNorm {
-			return
-		}
 	}
 }
 
-func (s *Solver) each(body func(r int)) {
-	s.m.Each(func(_, lo, hi int) {
-		for r := lo; r < hi; r++ {
-			body(r)
-		}
-	})
-}
+func finite(v float64) bool { return v-v == 0 }
 
 func (s *Solver) note(st *Stats, residual float64) {
 	st.Iterations++

@@ -4,7 +4,6 @@ import (
 	"context"
 	"errors"
 	"fmt"
-	"math"
 	"time"
 
 	"epslim/solver/volume"
@@ -48,6 +47,9 @@ const (
 	Point                 // Gauss-Seidel in colours, V-cycle
 	Line                  // zebra line Gauss-Seidel along every axis, W-cycle
 )
+
+// String names the smoother in reports.
+func (s Smoother) String() string { return [...]string{"auto", "point", "line"}[s] }
 
 // Settings steers a solve. The zero value is usable.
 type Settings struct {
@@ -123,7 +125,7 @@ func New(ctx context.Context, m *volume.Operator, c volume.Coefficients, shift f
 	for i := range sv.work {
 		sv.work[i] = m.Layout.Vector()
 	}
-	sv.part = make([]float64, 4*m.Layout.Rows)
+	sv.part = make([]float64, 3*m.Layout.Rows)
 	sv.setup = time.Since(start)
 	return sv, nil
 }
@@ -143,7 +145,7 @@ func (s *Solver) Stationary(ctx context.Context) ([]float64, Stats) {
 	if tol == 0 {
 		tol = 1e-14
 	}
-	unit := math.Sqrt(s.dot(p, p))
+	unit := s.norm(p)
 	st := s.iterate(ctx, p, nil, tol*unit, unit)
 	if s.m.Report.Monotone {
 		volume.Positive(s.m, p)
@@ -169,4 +171,3 @@ func (s *Solver) Solve(ctx context.Context, x, b []float64) Stats {
 	}
 	return s.iterate(ctx, x, b, tol*norm, norm)
 }
-

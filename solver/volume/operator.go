@@ -12,6 +12,10 @@ type Link struct {
 	Out, Back []float64
 }
 
+// maxLinks is the largest number of link directions: three axes and the two
+// diagonals of three coordinate planes.
+const maxLinks = 9
+
 // Operator is the assembled finite-volume operator. It is immutable and safe
 // for concurrent use.
 type Operator struct {
@@ -87,19 +91,31 @@ func (m *Operator) Width(i int) float64 { return m.width[i] }
 // flux is evaluated alike from both its ends, so the outflows of all cells add
 // up to what the absorbing sides take, to rounding of the fluxes themselves.
 func (m *Operator) Apply(y, x []float64, shift float64) {
-	m.wrapAll(x)
+	m.WrapAll(x)
 	m.Each(func(_, lo, hi int) {
 		for r := lo; r < hi; r++ {
-			m.applyRow(y, x, r)
-			m.addShift(y, x, r, shift)
+			m.ApplyRow(y, x, r, shift)
 		}
 	})
+}
+
+// ApplyRow computes row r of Apply; the ghost cells of x must be up to date.
+func (m *Operator) ApplyRow(y, x []float64, r int, shift float64) {
+	m.applyRow(y, x, r)
+	m.addShift(y, x, r, shift)
+}
+
+// ApplyAdjointRow computes row r of ApplyAdjoint; the ghost cells of x must be
+// up to date.
+func (m *Operator) ApplyAdjointRow(y, x []float64, r int, shift float64) {
+	m.applyAdjointRow(y, x, r)
+	m.addShift(y, x, r, shift)
 }
 
 // ApplyAdjoint computes y = (M^T + shift V) x, minus the generator of the
 // process times the cell volumes.
 func (m *Operator) ApplyAdjoint(y, x []float64, shift float64) {
-	m.wrapAll(x)
+	m.WrapAll(x)
 	m.Each(func(_, lo, hi int) {
 		for r := lo; r < hi; r++ {
 			m.applyAdjointRow(y, x, r)
@@ -108,7 +124,8 @@ func (m *Operator) ApplyAdjoint(y, x []float64, shift float64) {
 	})
 }
 
-func (m *Operator) wrapAll(x []float64) {
+// WrapAll refreshes the ghost cells of x.
+func (m *Operator) WrapAll(x []float64) {
 	if m.Layout.PeriodicX {
 		for r := 0; r < m.Layout.Rows; r++ {
 			m.Layout.Wrap(x, r)
@@ -116,26 +133,43 @@ func (m *Operator) wrapAll(x []float64) {
 	}
 }
 
+// linkRow points to what one row needs of one link direction: the link upwards
+// with the value at its far end, and the link from below with the value there.
+type linkRow struct {
+	out, back, xu, outd, backd, xd *float64
+}
+
+// linkView is linkRow as slices.
+type linkView struct {
+	out, back, xu, outd, backd, xd []float64
+}
+
 func (m *Operator) applyRow(y, x []float64, r int) {
 	l := &m.Layout
 	n := l.Nx
 	s := l.Row(r)
-	xc, yy := x[s:][:n], y[s:][:n]
+	var views [maxLinks]linkView
+	var rows [maxLinks]linkRow
 	for li := range m.Links {
 		link := &m.Links[li]
 		e := link.Step[0]
 		u, d := l.Row(int(m.up[li][r]))+e, l.Row(int(m.down[li][r]))-e
-		out, back, xu := link.Out[s:][:n], link.Back[s:][:n], x[u:][:n]
-		outd, backd, xd := link.Out[d:][:n], link.Back[d:][:n], x[d:][:n]
-		if li == 0 {
-			for i := range yy {
-				yy[i] = (out[i]*xc[i] - back[i]*xu[i]) - (outd[i]*xd[i] - backd[i]*xc[i])
-			}
-			continue
+		v := linkView{link.Out[s:][:n], link.Back[s:][:n], x[u:][:n], link.Out[d:][:n], link.Back[d:][:n], x[d:][:n]}
+		views[li] = v
+		rows[li] = linkRow{&v.out[0], &v.back[0], &v.xu[0], &v.outd[0], &v.backd[0], &v.xd[0]}
+	}
+	fluxRow(y[s:][:n], x[s:][:n], views[:len(m.Links)], rows[:len(m.Links)])
+}
+
+// fluxRow writes the net outflow of every cell of a row.
+func fluxRow(y, x []float64, views []linkView, rows []linkRow) {
+	for i := fluxFast(y, x, rows); i < len(y); i++ {
+		var t float64
+		for li := range views {
+			v := &views[li]
+			t += (float64(v.out[i]*x[i]) - float64(v.back[i]*v.xu[i])) - (float64(v.outd[i]*v.xd[i]) - float64(v.backd[i]*x[i]))
 		}
-		for i := range yy {
-			yy[i] += (out[i]*xc[i] - back[i]*xu[i]) - (outd[i]*xd[i] - backd[i]*xc[i])
-		}
+		y[i] = t
 	}
 }
 

@@ -152,3 +152,37 @@ func TestOperatorIdentities(t *testing.T) {
 		}
 	}
 }
+
+// The vector kernel gives the bits of the portable loop.
+func TestFluxKernelBits(t *testing.T) {
+	rng := rand.New(rand.NewPCG(5, 6))
+	random := func(n int) []float64 {
+		v := make([]float64, n)
+		for i := range v {
+			v[i] = rng.Float64()*2 - 1
+		}
+		return v
+	}
+	for _, n := range []int{1, 8, 13, 64} {
+		for links := 1; links <= maxLinks; links++ {
+			x, y := random(n), random(n)
+			var views []linkView
+			var rows []linkRow
+			for i := 0; i < links; i++ {
+				v := linkView{random(n), random(n), random(n), random(n), random(n), random(n)}
+				views = append(views, v)
+				rows = append(rows, linkRow{&v.out[0], &v.back[0], &v.xu[0], &v.outd[0], &v.backd[0], &v.xd[0]})
+			}
+			fluxRow(y, x, views, rows)
+			for i := range y {
+				var want float64
+				for _, v := range views {
+					want += (float64(v.out[i]*x[i]) - float64(v.back[i]*v.xu[i])) - (float64(v.outd[i]*v.xd[i]) - float64(v.backd[i]*x[i]))
+				}
+				if y[i] != want {
+					t.Fatalf("n=%d links=%d cell %d: %v, portable %v", n, links, i, y[i], want)
+				}
+			}
+		}
+	}
+}
