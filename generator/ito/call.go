@@ -53,6 +53,7 @@ func (l *lowering) call(e *syntax.Call) (value, bool) {
 	for i, a := range args {
 		exprs[i] = a.expr
 		out.bits = max(out.bits, a.bits)
+		out.depth = max(out.depth, a.depth)
 		if a.grade.none() {
 			continue
 		}
@@ -65,6 +66,15 @@ func (l *lowering) call(e *syntax.Call) (value, bool) {
 			l.gradeError(e.Args[i], "the small parameter appears inside sqrt in another way than as an integer power")
 			return value{}, false
 		}
+	}
+	if out.depth++; !l.shallow(e, out.depth) {
+		return value{}, false
+	}
+	if name == "sqrt" {
+		if !l.rationalizable(e.Args[0], args[0]) {
+			return value{}, false
+		}
+		out.addRoot(e, args[0])
 	}
 	err := algebra.Guard(func() (err error) {
 		out.expr, err = r.ring.Call(name, exprs...)
@@ -213,8 +223,9 @@ func (l *lowering) replaced(e *syntax.Call) (value, bool) {
 		ok = ok && good
 		with[n.Name] = a.expr
 		v.bits += a.bits
+		v.depth += a.depth
 	}
-	if !ok || !l.affordable(e, v.expr.Size(), v.bits) {
+	if !ok || !l.affordable(e, v.expr.Size(), v.bits) || !l.shallow(e, v.depth) {
 		return value{}, false
 	}
 	err := algebra.Guard(func() (err error) {

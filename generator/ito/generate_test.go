@@ -108,12 +108,12 @@ func checkGenerated(t *testing.T, e string) (accepted bool) {
 func TestGeneratedExpressions(t *testing.T) {
 	r := rand.New(rand.NewSource(7))
 	accepted := 0
-	for range 1500 {
+	for range 700 {
 		if checkGenerated(t, generate(r, 4, false)) {
 			accepted++
 		}
 	}
-	if accepted < 500 {
+	if accepted < 400 {
 		t.Errorf("only %d expressions were accepted", accepted)
 	}
 }
@@ -138,7 +138,7 @@ dtheta = 0 dt
 `
 	r := rand.New(rand.NewSource(5))
 	compared := 0
-	for range 1500 {
+	for range 700 {
 		text := generate(r, 4, true)
 		s, err := Parse("m", []byte(model+"let q = "+text), Options{})
 		if err != nil {
@@ -166,7 +166,7 @@ dtheta = 0 dt
 			}
 		}
 	}
-	if compared < 1500 {
+	if compared < 700 {
 		t.Errorf("only %d values were compared", compared)
 	}
 }

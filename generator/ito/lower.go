@@ -3,6 +3,7 @@ package ito
 import (
 	"errors"
 	"math/big"
+	"slices"
 
 	"epslim/generator/algebra"
 	"epslim/generator/ito/diagnostic"
@@ -13,7 +14,12 @@ import (
 type value struct {
 	expr  algebra.Expr
 	bits  int   // bound on the size of the numbers in it
+	depth int   // how deep functions and roots are nested in it
 	grade grade // how it depends on the small parameter
+
+	fraction bool     // it was made by a division by a sum
+	roots    []string // the roots it is made of, sorted, as typed
+	nested   bool     // one of them contains roots
 }
 
 // The arithmetic of a model is bounded: a short text such as (x+y)^100000
@@ -23,6 +29,7 @@ const (
 	maxPair  = 40_000     // product of the sizes of two operands
 	maxBits  = 100_000    // of the numbers in a result
 	maxWork  = 30_000_000 // sum of the products of sizes over the file
+	maxDepth = 10         // of functions and roots within each other, through abbreviations too
 )
 
 // lowering turns expressions of one text into algebra. Its methods report errors
@@ -164,19 +171,61 @@ func (r *reader) abbreviation(e *entity) (value, bool) {
 	return e.low, e.ok
 }
 
+// mergeRoots notes the roots of both operands in the result.
+func (out *value) mergeRoots(x, y value) {
+	out.nested = x.nested || y.nested
+	out.fraction = x.fraction || y.fraction
+	out.roots = x.roots
+	if len(y.roots) > 0 {
+		out.roots = append(append([]string(nil), x.roots...), y.roots...)
+		slices.Sort(out.roots)
+		out.roots = slices.Compact(out.roots)
+	}
+}
+
+// addRoot makes e, a root of x, the one root of the result.
+func (out *value) addRoot(e syntax.Expr, x value) {
+	if _, constant := x.expr.IsConstant(); constant {
+		return
+	}
+	out.nested = len(x.roots) > 0
+	out.roots = []string{e.String()}
+}
+
+// rationalizable guards divisors and radicands: roots are brought out of them,
+// and where one root also stands inside another that work grows without bound.
+func (l *lowering) rationalizable(e syntax.Expr, x value) bool {
+	if x.expr.Size() > 1 && x.nested && len(x.roots) > 1 {
+		l.tooComplex(e, "it divides by, or takes the root of, a sum of several nested roots")
+		return false
+	}
+	return true
+}
+
 func (l *lowering) binary(e *syntax.Binary, x, y value) (out value, ok bool) {
+	out.mergeRoots(x, y)
+	cost := x.expr.Size() * y.expr.Size()
 	switch e.Op {
 	case "+", "-":
+		out.depth = max(x.depth, y.depth)
+		if out.fraction {
+			// A common denominator multiplies both sides out.
+			sizes := x.expr.Size() + y.expr.Size()
+			cost = sizes * sizes / 2
+			l.r.work += 6 * cost
+		}
 		out.bits = max(x.bits, y.bits) + 1
 		out.grade = x.grade.add(y.grade)
 	case "*", "/":
+		out.depth = max(x.depth, y.depth)
 		out.bits = x.bits + y.bits
 	case "^":
 		return l.power(e, x, y)
 	}
-	if !l.affordable(e, x.expr.Size()*y.expr.Size(), out.bits) {
+	if !l.affordable(e, cost, out.bits) || e.Op == "/" && !l.rationalizable(e.Y, y) {
 		return out, false
 	}
+	out.fraction = out.fraction || e.Op == "/" && y.expr.Size() > 1
 	switch e.Op {
 	case "*":
 		out.grade, ok = x.grade.mul(y.grade)
@@ -222,6 +271,22 @@ func (l *lowering) power(e *syntax.Binary, x, y value) (out value, ok bool) {
 	}
 	q, constant := y.expr.IsConstant()
 	terms, bits := x.expr.Size(), x.bits
+	out.depth = max(x.depth, y.depth)
+	out.mergeRoots(x, value{})
+	if constant && q.Sign() < 0 || constant && !q.IsInt() {
+		if !l.rationalizable(e.X, x) {
+			return out, false
+		}
+		out.fraction = out.fraction || terms > 1
+	}
+	if constant && !q.IsInt() {
+		out.addRoot(e, x)
+	}
+	if !constant || !q.IsInt() {
+		if out.depth++; !l.shallow(e, out.depth) {
+			return out, false
+		}
+	}
 	if constant && q.IsInt() {
 		n := new(big.Int).Abs(q.Num())
 		if !n.IsInt64() || n.Int64() > 1_000_000 {
@@ -293,6 +358,15 @@ func (l *lowering) tooComplex(e syntax.Expr, why string) {
 		text = "this expression"
 	}
 	l.fail(e.Where(), diagnostic.TooComplex, text+" is too large to be worked out: "+why)
+}
+
+// shallow checks how deep functions are nested: the work grows exponentially
+// with the depth.
+func (l *lowering) shallow(e syntax.Expr, depth int) bool {
+	if depth > maxDepth {
+		l.tooComplex(e, "functions and roots are nested more than "+itoa(maxDepth)+" deep")
+	}
+	return depth <= maxDepth
 }
 
 // affordable counts the work of an operation against the budget.

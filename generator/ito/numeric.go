@@ -18,7 +18,10 @@ type numeric struct {
 	ok    bool               // cleared when something has no number
 }
 
-const numericSteps = 50_000
+const (
+	numericSteps = 50_000    // for one value
+	evaluatedMax = 3_000_000 // for one reading; checks that are left then are left out
+)
 
 // number evaluates an expression of numbers and parameters; set may be nil. It
 // is not known when a parameter has no value.
@@ -35,7 +38,9 @@ func (n *numeric) unknown() (float64, float64) {
 
 // eval returns the value and its scale.
 func (n *numeric) eval(e syntax.Expr) (v, scale float64) {
-	if n.steps--; n.steps < 0 || !n.ok || e == nil {
+	n.steps--
+	n.r.evaluated++
+	if n.steps < 0 || n.r.evaluated > evaluatedMax || !n.ok || e == nil {
 		return n.unknown()
 	}
 	switch e := e.(type) {

@@ -32,6 +32,7 @@ const atOption = "--at"
 func (s *System) At(text string) (*Point, error) {
 	r := *s.scope
 	r.errs, r.undeclared, r.missing = nil, map[string]*Diagnostic{}, map[string]int{}
+	r.work, r.evaluated = 0, 0
 	list, src, errs := syntax.ParseAssignments(atOption, text, Limits{})
 	if len(errs) > 0 {
 		return nil, errs

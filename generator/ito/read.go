@@ -122,7 +122,8 @@ type reader struct {
 	sequence  []*syntax.Equation
 	linear    map[string]*linear
 
-	work int // spent on arithmetic, against a budget
+	work      int // spent on arithmetic, against a budget
+	evaluated int // steps of floating-point evaluation
 }
 
 func newReader(file *syntax.File, errs ErrorList) *reader {
