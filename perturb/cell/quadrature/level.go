@@ -157,7 +157,7 @@ func (l *level) Coefficient(c *fast.Coefficient) (fast.Vector, error) {
 	if err != nil {
 		return nil, err
 	}
-	return &vec{v: v, rel: l.coefficientError(v)}, nil
+	return &vec{v: v, rel: l.coefficientError(v) + l.b.left[c]}, nil
 }
 
 // coefficientError is the relative rounding error of a coefficient: its own
@@ -202,10 +202,34 @@ func (l *level) values(c *fast.Coefficient) ([]float64, error) {
 		}
 	})
 	var u *fast.Undefined
-	if l.mirror && errors.As(err, &u) {
-		u.At[0] = -u.At[0]
+	if errors.As(err, &u) {
+		if l.mirror {
+			u.At[0] = -u.At[0]
+		}
+		if d := l.overflow(u); d != nil {
+			return nil, d
+		}
 	}
 	return v, err
+}
+
+// overflow turns a coefficient that overflows where the density is all but
+// zero, towards an end, into a divergence.
+func (l *level) overflow(u *fast.Undefined) error {
+	d, err := l.Density([][]float64{{u.At[0]}})
+	if !math.IsInf(u.Value, 0) || err != nil || d[0] > 1e-100 || l.iv.periodic {
+		return nil
+	}
+	side := 0
+	if l.locatePanel(u.At[0]) > len(l.ps)/2 {
+		side = 1
+	}
+	return &fast.Divergent{Where: l.endName(side), Exponent: math.Inf(1)}
+}
+
+func (l *level) locatePanel(y float64) int {
+	i, _ := l.locate(l.inside(y))
+	return i
 }
 
 // mirrored is c(-y).
@@ -486,18 +510,19 @@ func (l *level) resolves(c *fast.Coefficient) bool {
 	if l.mirror {
 		src = mirrored(c)
 	}
-	split := make([]bool, len(l.ps))
-	var w []float64
-	if l.b.noiseless {
-		w = make([]float64, len(l.ps))
-	} else {
-		w = levels(l.ps)
-	}
-	if err := l.b.markCoefficient(src, l.ps, w, split, 0, len(l.ps)); err != nil {
-		return true // the error is reported when the coefficient is used
-	}
-	for _, s := range split {
-		if s {
+	for i, p := range l.ps {
+		if p.fixed {
+			continue
+		}
+		var x coefficientStat
+		if err := l.b.stat(src, p, &x); err != nil {
+			return true // the error is reported when the coefficient is used
+		}
+		share := 0.0
+		for _, w := range l.wq[i*l.cheb.n : (i+1)*l.cheb.n] {
+			share += w
+		}
+		if !x.resolved && share > 1e-16 {
 			return false
 		}
 	}

@@ -53,6 +53,10 @@ type builder struct {
 	ends        [2]endKind
 	dropped     [2]bool // panels were dropped: the density fell below the cutoff
 	scratch     [4][]float64
+	// left is the share of a coefficient on panels that cannot be bisected, and
+	// history that on the worst panel, pass by pass.
+	left    map[*fast.Coefficient]float64
+	history map[*fast.Coefficient][]float64
 }
 
 type endKind uint8
@@ -64,7 +68,7 @@ const (
 )
 
 func newBuilder(drift, diff *fast.Coefficient, iv interval, fid fidelity, used []*fast.Coefficient) *builder {
-	b := &builder{cheb: newChebyshev(nodesPerPanel), drift: drift, diff: diff, iv: iv, fid: fid, used: used,
+	b := &builder{left: map[*fast.Coefficient]float64{}, history: map[*fast.Coefficient][]float64{}, cheb: newChebyshev(nodesPerPanel), drift: drift, diff: diff, iv: iv, fid: fid, used: used,
 		eval: &evaluator{expansions: map[expansionKey]*expansion{}, lo: iv.lo, hi: iv.hi}}
 	for i := range b.scratch {
 		b.scratch[i] = make([]float64, nodesPerPanel)
@@ -321,8 +325,9 @@ func (b *builder) logPanel(base float64, dir int, kind endKind, near, far float6
 	} else if base == b.iv.lo || base == b.iv.hi {
 		p.finiteEnd = -dir
 	}
-	// Nodes must run with growing y.
-	if p.value(p.t0) > p.value(p.t1) {
+	// Nodes must run with growing y. (The places themselves may round to the
+	// same number.)
+	if (p.t1 > p.t0) != (p.sign > 0) {
 		p.t0, p.t1 = p.t1, p.t0
 	}
 	return p
@@ -437,7 +442,10 @@ func (b *builder) marks(ps []*panel) ([]bool, error) {
 	}
 	for i := first; i < last; i++ {
 		p := ps[i]
-		if p.fixed || b.resolved(p) {
+		if p.fixed || p.settled {
+			continue
+		}
+		if p.settled = b.resolved(p); p.settled {
 			continue
 		}
 		if b.atomic(p) {
@@ -449,8 +457,13 @@ func (b *builder) marks(ps []*panel) ([]bool, error) {
 		}
 		split[i] = true
 	}
-	for _, c := range b.used {
-		if err := b.markCoefficient(c, ps, w, split, first, last); err != nil {
+	for _, x := range split {
+		if x {
+			return split, nil // coefficients are looked at where the density is known
+		}
+	}
+	for k, c := range b.used {
+		if err := b.markCoefficient(k, c, ps, w, split, first, last); err != nil {
 			return nil, err
 		}
 	}
@@ -517,42 +530,75 @@ func (b *builder) resolved(p *panel) bool {
 }
 
 // markCoefficient marks panels on which a coefficient is not resolved and the
-// law has mass enough for that to matter.
-func (b *builder) markCoefficient(c *fast.Coefficient, ps []*panel, w []float64, split []bool, first, last int) error {
-	v, u := b.scratch[2], b.scratch[3]
-	type bad struct {
-		i    int
-		size float64
-	}
-	var bads []bad
+// law has mass enough for that to matter. A coefficient whose share on the
+// worst panel does not shrink as the panel is bisected has a singularity that
+// is not integrable.
+func (b *builder) markCoefficient(k int, c *fast.Coefficient, ps []*panel, w []float64, split []bool, first, last int) error {
 	var total float64
 	for i := first; i < last; i++ {
 		p := ps[i]
-		if err := b.eval.values(c, p, v); err != nil {
-			return err
+		if len(p.stats) <= k {
+			p.stats = append(p.stats, make([]coefficientStat, len(b.used)+1-len(p.stats))...)
 		}
-		var mass float64
-		for j := range v {
-			m := b.cheb.weights[j] * math.Abs(p.jac[j])
-			if !b.noiseless && !b.iv.periodic {
-				m *= math.Exp(w[i] + p.cumW[j] + math.Log(2/p.a[j]))
+		if !p.stats[k].known {
+			if err := b.stat(c, p, &p.stats[k]); err != nil {
+				return err
 			}
-			mass += m
-			total += m * math.Abs(v[j])
-			u[j] = v[j]
 		}
-		if p.fixed || split[i] {
+		total += p.stats[k].size * b.weight(p, w[i])
+	}
+	worst, at := 0.0, 0
+	for i := first; i < last; i++ {
+		p := ps[i]
+		x := &p.stats[k]
+		if x.resolved || p.fixed || x.tail*b.weight(p, w[i]) <= 1e-16*total {
 			continue
 		}
-		tail, largest := b.cheb.tail(u)
-		if tail > (b.fid.strict+p.grain())*largest {
-			bads = append(bads, bad{i, tail * mass})
+		if s := x.size * b.weight(p, w[i]); s > worst {
+			worst, at = s, i
+		}
+		if b.atomic(p) {
+			b.left[c] = math.Max(b.left[c], x.size*b.weight(p, w[i])/total)
+			continue
+		}
+		split[i] = true
+	}
+	h := append(b.history[c], worst)
+	b.history[c] = h
+	if n := len(h); worst > 0 && n > 50 && math.Abs(ps[at].t1-ps[at].t0) < 1e-9*math.Max(1e-290, math.Abs(ps[last-1].right()-ps[first].left())) {
+		// The share goes like width^(1+p).
+		if p := math.Log2(h[n-26]/worst)/25 - 1; p < -0.999 {
+			return &fast.Divergent{Quantity: c.Label(), Where: fmt.Sprintf("y = %.6g", ps[at].left()), Exponent: p}
 		}
 	}
-	for _, x := range bads {
-		if x.size > 1e-16*total && !b.atomic(ps[x.i]) {
-			split[x.i] = true
-		}
+	return nil
+}
+
+// weight is the factor of the sizes of a panel.
+func (b *builder) weight(p *panel, w float64) float64 {
+	if b.noiseless || b.iv.periodic {
+		return 1
 	}
+	return math.Exp(w + p.high)
+}
+
+func (b *builder) stat(c *fast.Coefficient, p *panel, x *coefficientStat) error {
+	v := b.scratch[2]
+	if err := b.eval.values(c, p, v); err != nil {
+		return err
+	}
+	var mass float64
+	for j := range v {
+		m := b.cheb.weights[j] * math.Abs(p.jac[j])
+		if !b.noiseless && !b.iv.periodic {
+			m *= math.Exp(p.cumW[j] + math.Log(2/p.a[j]) - p.high)
+		}
+		mass += m
+		x.size += m * math.Abs(v[j])
+	}
+	tail, largest := b.cheb.tail(v)
+	x.tail = tail * mass
+	x.resolved = tail <= (b.fid.strict+p.grain())*largest
+	x.known = true
 	return nil
 }

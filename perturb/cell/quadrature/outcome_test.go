@@ -28,6 +28,7 @@ func TestRefusals(t *testing.T) {
 		{"circle without noise, locked", one(circle, func(y float64) float64 { return 0.5 + math.Sin(y) }, constant(0)), "stops there"},
 		{"circle without anything", one(circle, constant(0), constant(0)), "neither"},
 		{"absorbing corner", one(wall(0, 1), constant(0), func(y float64) float64 { return y * (1 - y) }), "not integrable at 0"},
+		{"absorbed at a wall far from zero", one(wall(1000, 1001), constant(-1), func(y float64) float64 { return (y - 1000) * (1001 - y) }), "not integrable at 1000"},
 		{"unconfined tail", one(line, lin(-1), constant(2)), "attracting"},
 	} {
 		t.Run(c.name, func(t *testing.T) {
@@ -133,5 +134,43 @@ func TestUndefined(t *testing.T) {
 	var u *fast.Undefined
 	if !errors.As(err, &u) || u.Coefficient != "log(y)" {
 		t.Error(err)
+	}
+}
+
+// A singularity inside the domain that no average survives, and some that do.
+func TestInteriorSingularities(t *testing.T) {
+	ctx := context.Background()
+	gauss := one(line, func(y float64) float64 { return -y }, constant(2))
+	for _, c := range []struct {
+		name string
+		g    func(float64) float64
+		want float64 // +Inf: divergent
+	}{
+		{"1/y", func(y float64) float64 { return 1 / y }, math.Inf(1)},
+		{"1/y^2", func(y float64) float64 { return 1 / (y * y) }, math.Inf(1)},
+		{"exp(y^2/2)", func(y float64) float64 { return math.Exp(y * y / 2) }, math.Inf(1)},
+		{"exp(y^2)", func(y float64) float64 { return math.Exp(y * y) }, math.Inf(1)},
+		{"log|y|", func(y float64) float64 { return math.Log(math.Abs(y)) }, -(0.57721566490153286061 + math.Ln2) / 2},
+		{"|y|^(-1/2)", func(y float64) float64 { return 1 / math.Sqrt(math.Abs(y)) }, math.Pow(2, -0.25) * math.Gamma(0.25) / math.Sqrt(math.Pi)},
+		{"|y-0.3|", func(y float64) float64 { return math.Abs(y - 0.3) }, 0.3*math.Erf(0.3/math.Sqrt2) + 2*math.Exp(-0.045)/math.Sqrt(2*math.Pi)},
+		{"step at 0.3", func(y float64) float64 { return math.Max(0, math.Copysign(1, y-0.3)) }, 0.5 * math.Erfc(0.3/math.Sqrt2)},
+	} {
+		s, err := quadrature.New(ctx, gauss, quadrature.Settings{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		m, err := s.Mean(ctx, s.Coefficient(fast.Func1(c.name, c.g)))
+		if math.IsInf(c.want, 1) {
+			var d *fast.Divergent
+			if !errors.As(err, &d) || d.Quantity != c.name {
+				t.Errorf("%s: %v, %v", c.name, m, err)
+			}
+			continue
+		}
+		if err != nil {
+			t.Error(err)
+			continue
+		}
+		check(t, c.name+" under the normal law", m, c.want, 1e-14)
 	}
 }

@@ -32,6 +32,15 @@ type panel struct {
 	dW        float64   // W(right end) - W(left end)
 	low, high float64   // extreme values of log m + log|dy/dt| relative to W(left end)
 	fixed     bool      // may not be bisected any more
+	settled   bool      // known to be resolved
+	stats     []coefficientStat
+}
+
+// coefficientStat is how well a panel resolves one of the coefficients in use.
+type coefficientStat struct {
+	known      bool
+	size, tail float64 // int |g| m and the part in the last Chebyshev coefficients, relative to the highest m of the panel
+	resolved   bool
 }
 
 func (p *panel) value(t float64) float64 {
@@ -74,6 +83,7 @@ func (p *panel) bisect() (l, r *panel) {
 	mid := (p.t0 + p.t1) / 2
 	lp, rp := *p, *p
 	lp.t1, rp.t0 = mid, mid
+	lp.stats, rp.stats = nil, nil
 	return &lp, &rp
 }
 
@@ -179,21 +189,21 @@ func newExpansion(c *fast.Coefficient, end float64, side int, reach float64) *ex
 		if !(tail <= 1e-11*largest) || math.IsInf(largest, 0) {
 			continue
 		}
-		x.strip(d)
+		x.strip(d, 1e-12+100*unitRounding*math.Abs(end)/reach)
 		return x
 	}
 	return nil
 }
 
 // strip divides by the power of d with which the function vanishes at the end.
-func (x *expansion) strip(d []float64) {
+func (x *expansion) strip(d []float64, zero float64) {
 	step := 1.0
 	if x.root {
 		step = 0.5
 	}
 	for k := 0; k < 6; k++ {
 		_, largest := x.cheb.tail(x.values)
-		if largest == 0 || math.Abs(x.cheb.at(x.values, -1)) > 1e-12*largest {
+		if largest == 0 || math.Abs(x.cheb.at(x.values, -1)) > zero*largest {
 			return
 		}
 		for j := range x.values {
