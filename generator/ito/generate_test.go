@@ -70,9 +70,11 @@ func generate(r source, depth int, nested bool) string {
 	case 7:
 		return "-" + paren()
 	case 8, 9, 10:
-		names := []string{"sin", "cos", "exp", "log", "sqrt", "tanh", "cosh", "sinh", "tan", "abs", "sign", "erf", "gamma"}
+		names := []string{"sin", "cos", "exp", "log", "sqrt", "tanh", "cosh", "sinh", "tan", "erf", "abs", "sign", "gamma"}
 		if !nested {
-			names = names[:len(names)-1] // gamma(u) is shifted to gamma(u + 1)/u anew each time u has a denominator
+			// Values only, for these: sums of absolute values over their arguments, and
+			// gamma functions of quotients, are not always printed as they are.
+			names = names[:len(names)-3]
 		}
 		return names[r.Intn(len(names))] + argument()
 	case 11:

@@ -113,6 +113,9 @@ func (r *reader) bounds(v *Variable, b *syntax.Bounds, what string) (lo, hi alge
 	width := y.expr.Sub(x.expr)
 	wrong := width.Sign().Is(algebra.NonPositive)
 	if !wrong && !width.Sign().Is(algebra.Positive) {
+		if b == v.Domain.interval {
+			r.system.MustBePositive = append(r.system.MustBePositive, width)
+		}
 		a, known := r.number(b.A, nil)
 		c, known2 := r.number(b.B, nil)
 		wrong = known && known2 && a >= c

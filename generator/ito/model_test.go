@@ -248,6 +248,39 @@ func TestSphereUnderRoots(t *testing.T) {
 	}
 }
 
+func TestConditionsOfDomains(t *testing.T) {
+	s := mustParse(t, `slow x in [0, L] periodic
+slow z in [0, H] reflecting
+fast y in [a, b] reflecting
+param L positive
+param H = 2
+param a = -1 negative
+param b = 1
+dx = 0 dt
+dz = 0 dt
+dy = 1/eps dW1`)
+	var got []string
+	for _, e := range s.MustBePositive {
+		got = append(got, e.String())
+	}
+	if strings.Join(got, "; ") != "H; b - a" {
+		t.Errorf("conditions %q", got)
+	}
+}
+
+// TestVariableCalledW: the differential of a variable W is no Wiener increment.
+func TestVariableCalledW(t *testing.T) {
+	s := mustParse(t, "slow x\nfast W\ndx = W dt\ndW = -W/eps dt + 1/sqrt(eps) dW1\n")
+	if s.Equation("W") == nil || len(s.Noises) != 1 || s.Noises[0] != "W1" {
+		t.Errorf("%v", s.Noises)
+	}
+	_, err := Parse("m", []byte("slow x\nfast W\ndx = W dt\ndW = -W/eps dt + 1/sqrt(eps) dW\n"), Options{})
+	var errs ErrorList
+	if !errors.As(err, &errs) || len(errs) != 1 || errs[0].Code != "not-a-noise" {
+		t.Errorf("%v", err)
+	}
+}
+
 func TestDefaults(t *testing.T) {
 	s := mustParse(t, "slow x\nfast y\ndx = y dt\ndy = -y/eps dt + 1/sqrt(eps) dW\n")
 	if s.Small != "eps" || s.Calculus != Ito || s.Slow[0].Domain.Kind != Line || s.Noises[0] != "W" {

@@ -96,6 +96,10 @@ type System struct {
 	Starts      []*Start
 	Observables []*Observable
 
+	// MustBePositive holds the lengths of intervals whose sign the declared
+	// assumptions do not settle: they are conditions of every result.
+	MustBePositive []algebra.Expr
+
 	// Warnings are remarks that do not stop the reading: a formula that breaks its
 	// declared sign somewhere outside the box that matters.
 	Warnings ErrorList
