@@ -11,8 +11,9 @@ import (
 //
 // Sources: the polynomials for sine and cosine on [-pi/4, pi/4] and for the
 // logarithm are those of FDLIBM (K. C. Ng, Sun Microsystems, 1993: k_sin.c,
-// k_cos.c, e_log.c); the sine on [-pi/2, pi/2] and the exponential use Taylor
-// coefficients with the last ones adjusted. Reduction by three parts of pi after
+// k_cos.c, e_log.c); the sine on [-pi/2, pi/2] is a least-squares fit of relative
+// accuracy 2^-61 whose coefficients were rounded one after the other, the fit of
+// the remaining ones absorbing each rounding; the exponential is a Taylor sum. Reduction by three parts of pi after
 // W. Cody and W. Waite, Software Manual for the Elementary Functions (1980), with
 // fused multiply-adds, by which the first part is exact; for large arguments
 // M. Payne and R. Hanek, SIGNUM Newsletter 18 (1983) 19-24.
@@ -54,13 +55,13 @@ const (
 	cos6 = -1.13596475577881948265e-11
 
 	wide0 = -0.16666666666666666
-	wide1 = 0.008333333333333316
-	wide2 = -0.00019841269841254955
-	wide3 = 2.755731921915843e-06
-	wide4 = -2.5052107616384624e-08
-	wide5 = 1.6058977272817488e-10
-	wide6 = -7.64396903111606e-13
-	wide7 = 2.7314289869116175e-15
+	wide1 = 0.00833333333333321
+	wide2 = -0.0001984126984121424
+	wide3 = 2.7557319211911476e-06
+	wide4 = -2.505210693752678e-08
+	wide5 = 1.6058942709858692e-10
+	wide6 = -7.643064299457894e-13
+	wide7 = 2.721894008054035e-15
 
 	log1 = 6.666666666666735130e-01
 	log2 = 3.999999999940941908e-01

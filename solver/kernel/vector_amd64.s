@@ -410,20 +410,20 @@ loop:
 	VFNMADD231PD constantb92f1976b7ed8fbc<>+0(SB), Y7, Y3
 	VMULPD       Y2, Y2, Y6
 	VMULPD       Y3, Y3, Y7
-	VMOVUPD      constant3ce89a3f165714c1<>+0(SB), Y8
-	VMOVUPD      constant3ce89a3f165714c1<>+0(SB), Y9
-	VFMADD213PD  constantbd6ae513415ba2a4<>+0(SB), Y6, Y8
-	VFMADD213PD  constantbd6ae513415ba2a4<>+0(SB), Y7, Y9
-	VFMADD213PD  constant3de6124014cbe5fb<>+0(SB), Y6, Y8
-	VFMADD213PD  constant3de6124014cbe5fb<>+0(SB), Y7, Y9
-	VFMADD213PD  constantbe5ae6455a1a9e87<>+0(SB), Y6, Y8
-	VFMADD213PD  constantbe5ae6455a1a9e87<>+0(SB), Y7, Y9
-	VFMADD213PD  constant3ec71de3a54562a8<>+0(SB), Y6, Y8
-	VFMADD213PD  constant3ec71de3a54562a8<>+0(SB), Y7, Y9
-	VFMADD213PD  constantbf2a01a01a018aa6<>+0(SB), Y6, Y8
-	VFMADD213PD  constantbf2a01a01a018aa6<>+0(SB), Y7, Y9
-	VFMADD213PD  constant3f81111111111107<>+0(SB), Y6, Y8
-	VFMADD213PD  constant3f81111111111107<>+0(SB), Y7, Y9
+	VMOVUPD      constant3ce88442a112e86d<>+0(SB), Y8
+	VMOVUPD      constant3ce88442a112e86d<>+0(SB), Y9
+	VFMADD213PD  constantbd6ae442a36d5e3a<>+0(SB), Y6, Y8
+	VFMADD213PD  constantbd6ae442a36d5e3a<>+0(SB), Y7, Y9
+	VFMADD213PD  constant3de6123cf7d4335e<>+0(SB), Y6, Y8
+	VFMADD213PD  constant3de6123cf7d4335e<>+0(SB), Y7, Y9
+	VFMADD213PD  constantbe5ae6454ddff0a5<>+0(SB), Y6, Y8
+	VFMADD213PD  constantbe5ae6454ddff0a5<>+0(SB), Y7, Y9
+	VFMADD213PD  constant3ec71de3a52b4685<>+0(SB), Y6, Y8
+	VFMADD213PD  constant3ec71de3a52b4685<>+0(SB), Y7, Y9
+	VFMADD213PD  constantbf2a01a01a014ff9<>+0(SB), Y6, Y8
+	VFMADD213PD  constantbf2a01a01a014ff9<>+0(SB), Y7, Y9
+	VFMADD213PD  constant3f811111111110ca<>+0(SB), Y6, Y8
+	VFMADD213PD  constant3f811111111110ca<>+0(SB), Y7, Y9
 	VFMADD213PD  constantbfc5555555555555<>+0(SB), Y6, Y8
 	VFMADD213PD  constantbfc5555555555555<>+0(SB), Y7, Y9
 	VMULPD       Y2, Y6, Y6
@@ -454,75 +454,75 @@ DATA constantbfc5555555555555<>+48(SB)/8, $0xbfc5555555555555
 DATA constantbfc5555555555555<>+56(SB)/8, $0xbfc5555555555555
 GLOBL constantbfc5555555555555<>(SB), RODATA|NOPTR, $64
 
-DATA constant3f81111111111107<>+0(SB)/8, $0x3f81111111111107
-DATA constant3f81111111111107<>+8(SB)/8, $0x3f81111111111107
-DATA constant3f81111111111107<>+16(SB)/8, $0x3f81111111111107
-DATA constant3f81111111111107<>+24(SB)/8, $0x3f81111111111107
-DATA constant3f81111111111107<>+32(SB)/8, $0x3f81111111111107
-DATA constant3f81111111111107<>+40(SB)/8, $0x3f81111111111107
-DATA constant3f81111111111107<>+48(SB)/8, $0x3f81111111111107
-DATA constant3f81111111111107<>+56(SB)/8, $0x3f81111111111107
-GLOBL constant3f81111111111107<>(SB), RODATA|NOPTR, $64
+DATA constant3f811111111110ca<>+0(SB)/8, $0x3f811111111110ca
+DATA constant3f811111111110ca<>+8(SB)/8, $0x3f811111111110ca
+DATA constant3f811111111110ca<>+16(SB)/8, $0x3f811111111110ca
+DATA constant3f811111111110ca<>+24(SB)/8, $0x3f811111111110ca
+DATA constant3f811111111110ca<>+32(SB)/8, $0x3f811111111110ca
+DATA constant3f811111111110ca<>+40(SB)/8, $0x3f811111111110ca
+DATA constant3f811111111110ca<>+48(SB)/8, $0x3f811111111110ca
+DATA constant3f811111111110ca<>+56(SB)/8, $0x3f811111111110ca
+GLOBL constant3f811111111110ca<>(SB), RODATA|NOPTR, $64
 
-DATA constantbf2a01a01a018aa6<>+0(SB)/8, $0xbf2a01a01a018aa6
-DATA constantbf2a01a01a018aa6<>+8(SB)/8, $0xbf2a01a01a018aa6
-DATA constantbf2a01a01a018aa6<>+16(SB)/8, $0xbf2a01a01a018aa6
-DATA constantbf2a01a01a018aa6<>+24(SB)/8, $0xbf2a01a01a018aa6
-DATA constantbf2a01a01a018aa6<>+32(SB)/8, $0xbf2a01a01a018aa6
-DATA constantbf2a01a01a018aa6<>+40(SB)/8, $0xbf2a01a01a018aa6
-DATA constantbf2a01a01a018aa6<>+48(SB)/8, $0xbf2a01a01a018aa6
-DATA constantbf2a01a01a018aa6<>+56(SB)/8, $0xbf2a01a01a018aa6
-GLOBL constantbf2a01a01a018aa6<>(SB), RODATA|NOPTR, $64
+DATA constantbf2a01a01a014ff9<>+0(SB)/8, $0xbf2a01a01a014ff9
+DATA constantbf2a01a01a014ff9<>+8(SB)/8, $0xbf2a01a01a014ff9
+DATA constantbf2a01a01a014ff9<>+16(SB)/8, $0xbf2a01a01a014ff9
+DATA constantbf2a01a01a014ff9<>+24(SB)/8, $0xbf2a01a01a014ff9
+DATA constantbf2a01a01a014ff9<>+32(SB)/8, $0xbf2a01a01a014ff9
+DATA constantbf2a01a01a014ff9<>+40(SB)/8, $0xbf2a01a01a014ff9
+DATA constantbf2a01a01a014ff9<>+48(SB)/8, $0xbf2a01a01a014ff9
+DATA constantbf2a01a01a014ff9<>+56(SB)/8, $0xbf2a01a01a014ff9
+GLOBL constantbf2a01a01a014ff9<>(SB), RODATA|NOPTR, $64
 
-DATA constant3ec71de3a54562a8<>+0(SB)/8, $0x3ec71de3a54562a8
-DATA constant3ec71de3a54562a8<>+8(SB)/8, $0x3ec71de3a54562a8
-DATA constant3ec71de3a54562a8<>+16(SB)/8, $0x3ec71de3a54562a8
-DATA constant3ec71de3a54562a8<>+24(SB)/8, $0x3ec71de3a54562a8
-DATA constant3ec71de3a54562a8<>+32(SB)/8, $0x3ec71de3a54562a8
-DATA constant3ec71de3a54562a8<>+40(SB)/8, $0x3ec71de3a54562a8
-DATA constant3ec71de3a54562a8<>+48(SB)/8, $0x3ec71de3a54562a8
-DATA constant3ec71de3a54562a8<>+56(SB)/8, $0x3ec71de3a54562a8
-GLOBL constant3ec71de3a54562a8<>(SB), RODATA|NOPTR, $64
+DATA constant3ec71de3a52b4685<>+0(SB)/8, $0x3ec71de3a52b4685
+DATA constant3ec71de3a52b4685<>+8(SB)/8, $0x3ec71de3a52b4685
+DATA constant3ec71de3a52b4685<>+16(SB)/8, $0x3ec71de3a52b4685
+DATA constant3ec71de3a52b4685<>+24(SB)/8, $0x3ec71de3a52b4685
+DATA constant3ec71de3a52b4685<>+32(SB)/8, $0x3ec71de3a52b4685
+DATA constant3ec71de3a52b4685<>+40(SB)/8, $0x3ec71de3a52b4685
+DATA constant3ec71de3a52b4685<>+48(SB)/8, $0x3ec71de3a52b4685
+DATA constant3ec71de3a52b4685<>+56(SB)/8, $0x3ec71de3a52b4685
+GLOBL constant3ec71de3a52b4685<>(SB), RODATA|NOPTR, $64
 
-DATA constantbe5ae6455a1a9e87<>+0(SB)/8, $0xbe5ae6455a1a9e87
-DATA constantbe5ae6455a1a9e87<>+8(SB)/8, $0xbe5ae6455a1a9e87
-DATA constantbe5ae6455a1a9e87<>+16(SB)/8, $0xbe5ae6455a1a9e87
-DATA constantbe5ae6455a1a9e87<>+24(SB)/8, $0xbe5ae6455a1a9e87
-DATA constantbe5ae6455a1a9e87<>+32(SB)/8, $0xbe5ae6455a1a9e87
-DATA constantbe5ae6455a1a9e87<>+40(SB)/8, $0xbe5ae6455a1a9e87
-DATA constantbe5ae6455a1a9e87<>+48(SB)/8, $0xbe5ae6455a1a9e87
-DATA constantbe5ae6455a1a9e87<>+56(SB)/8, $0xbe5ae6455a1a9e87
-GLOBL constantbe5ae6455a1a9e87<>(SB), RODATA|NOPTR, $64
+DATA constantbe5ae6454ddff0a5<>+0(SB)/8, $0xbe5ae6454ddff0a5
+DATA constantbe5ae6454ddff0a5<>+8(SB)/8, $0xbe5ae6454ddff0a5
+DATA constantbe5ae6454ddff0a5<>+16(SB)/8, $0xbe5ae6454ddff0a5
+DATA constantbe5ae6454ddff0a5<>+24(SB)/8, $0xbe5ae6454ddff0a5
+DATA constantbe5ae6454ddff0a5<>+32(SB)/8, $0xbe5ae6454ddff0a5
+DATA constantbe5ae6454ddff0a5<>+40(SB)/8, $0xbe5ae6454ddff0a5
+DATA constantbe5ae6454ddff0a5<>+48(SB)/8, $0xbe5ae6454ddff0a5
+DATA constantbe5ae6454ddff0a5<>+56(SB)/8, $0xbe5ae6454ddff0a5
+GLOBL constantbe5ae6454ddff0a5<>(SB), RODATA|NOPTR, $64
 
-DATA constant3de6124014cbe5fb<>+0(SB)/8, $0x3de6124014cbe5fb
-DATA constant3de6124014cbe5fb<>+8(SB)/8, $0x3de6124014cbe5fb
-DATA constant3de6124014cbe5fb<>+16(SB)/8, $0x3de6124014cbe5fb
-DATA constant3de6124014cbe5fb<>+24(SB)/8, $0x3de6124014cbe5fb
-DATA constant3de6124014cbe5fb<>+32(SB)/8, $0x3de6124014cbe5fb
-DATA constant3de6124014cbe5fb<>+40(SB)/8, $0x3de6124014cbe5fb
-DATA constant3de6124014cbe5fb<>+48(SB)/8, $0x3de6124014cbe5fb
-DATA constant3de6124014cbe5fb<>+56(SB)/8, $0x3de6124014cbe5fb
-GLOBL constant3de6124014cbe5fb<>(SB), RODATA|NOPTR, $64
+DATA constant3de6123cf7d4335e<>+0(SB)/8, $0x3de6123cf7d4335e
+DATA constant3de6123cf7d4335e<>+8(SB)/8, $0x3de6123cf7d4335e
+DATA constant3de6123cf7d4335e<>+16(SB)/8, $0x3de6123cf7d4335e
+DATA constant3de6123cf7d4335e<>+24(SB)/8, $0x3de6123cf7d4335e
+DATA constant3de6123cf7d4335e<>+32(SB)/8, $0x3de6123cf7d4335e
+DATA constant3de6123cf7d4335e<>+40(SB)/8, $0x3de6123cf7d4335e
+DATA constant3de6123cf7d4335e<>+48(SB)/8, $0x3de6123cf7d4335e
+DATA constant3de6123cf7d4335e<>+56(SB)/8, $0x3de6123cf7d4335e
+GLOBL constant3de6123cf7d4335e<>(SB), RODATA|NOPTR, $64
 
-DATA constantbd6ae513415ba2a4<>+0(SB)/8, $0xbd6ae513415ba2a4
-DATA constantbd6ae513415ba2a4<>+8(SB)/8, $0xbd6ae513415ba2a4
-DATA constantbd6ae513415ba2a4<>+16(SB)/8, $0xbd6ae513415ba2a4
-DATA constantbd6ae513415ba2a4<>+24(SB)/8, $0xbd6ae513415ba2a4
-DATA constantbd6ae513415ba2a4<>+32(SB)/8, $0xbd6ae513415ba2a4
-DATA constantbd6ae513415ba2a4<>+40(SB)/8, $0xbd6ae513415ba2a4
-DATA constantbd6ae513415ba2a4<>+48(SB)/8, $0xbd6ae513415ba2a4
-DATA constantbd6ae513415ba2a4<>+56(SB)/8, $0xbd6ae513415ba2a4
-GLOBL constantbd6ae513415ba2a4<>(SB), RODATA|NOPTR, $64
+DATA constantbd6ae442a36d5e3a<>+0(SB)/8, $0xbd6ae442a36d5e3a
+DATA constantbd6ae442a36d5e3a<>+8(SB)/8, $0xbd6ae442a36d5e3a
+DATA constantbd6ae442a36d5e3a<>+16(SB)/8, $0xbd6ae442a36d5e3a
+DATA constantbd6ae442a36d5e3a<>+24(SB)/8, $0xbd6ae442a36d5e3a
+DATA constantbd6ae442a36d5e3a<>+32(SB)/8, $0xbd6ae442a36d5e3a
+DATA constantbd6ae442a36d5e3a<>+40(SB)/8, $0xbd6ae442a36d5e3a
+DATA constantbd6ae442a36d5e3a<>+48(SB)/8, $0xbd6ae442a36d5e3a
+DATA constantbd6ae442a36d5e3a<>+56(SB)/8, $0xbd6ae442a36d5e3a
+GLOBL constantbd6ae442a36d5e3a<>(SB), RODATA|NOPTR, $64
 
-DATA constant3ce89a3f165714c1<>+0(SB)/8, $0x3ce89a3f165714c1
-DATA constant3ce89a3f165714c1<>+8(SB)/8, $0x3ce89a3f165714c1
-DATA constant3ce89a3f165714c1<>+16(SB)/8, $0x3ce89a3f165714c1
-DATA constant3ce89a3f165714c1<>+24(SB)/8, $0x3ce89a3f165714c1
-DATA constant3ce89a3f165714c1<>+32(SB)/8, $0x3ce89a3f165714c1
-DATA constant3ce89a3f165714c1<>+40(SB)/8, $0x3ce89a3f165714c1
-DATA constant3ce89a3f165714c1<>+48(SB)/8, $0x3ce89a3f165714c1
-DATA constant3ce89a3f165714c1<>+56(SB)/8, $0x3ce89a3f165714c1
-GLOBL constant3ce89a3f165714c1<>(SB), RODATA|NOPTR, $64
+DATA constant3ce88442a112e86d<>+0(SB)/8, $0x3ce88442a112e86d
+DATA constant3ce88442a112e86d<>+8(SB)/8, $0x3ce88442a112e86d
+DATA constant3ce88442a112e86d<>+16(SB)/8, $0x3ce88442a112e86d
+DATA constant3ce88442a112e86d<>+24(SB)/8, $0x3ce88442a112e86d
+DATA constant3ce88442a112e86d<>+32(SB)/8, $0x3ce88442a112e86d
+DATA constant3ce88442a112e86d<>+40(SB)/8, $0x3ce88442a112e86d
+DATA constant3ce88442a112e86d<>+48(SB)/8, $0x3ce88442a112e86d
+DATA constant3ce88442a112e86d<>+56(SB)/8, $0x3ce88442a112e86d
+GLOBL constant3ce88442a112e86d<>(SB), RODATA|NOPTR, $64
 
 DATA constant3fd45f306dc9c883<>+0(SB)/8, $0x3fd45f306dc9c883
 DATA constant3fd45f306dc9c883<>+8(SB)/8, $0x3fd45f306dc9c883
@@ -624,20 +624,20 @@ loop:
 	VFNMADD231PD constantb92f1976b7ed8fbc<>+0(SB), Y7, Y3
 	VMULPD       Y2, Y2, Y6
 	VMULPD       Y3, Y3, Y7
-	VMOVUPD      constant3ce89a3f165714c1<>+0(SB), Y8
-	VMOVUPD      constant3ce89a3f165714c1<>+0(SB), Y9
-	VFMADD213PD  constantbd6ae513415ba2a4<>+0(SB), Y6, Y8
-	VFMADD213PD  constantbd6ae513415ba2a4<>+0(SB), Y7, Y9
-	VFMADD213PD  constant3de6124014cbe5fb<>+0(SB), Y6, Y8
-	VFMADD213PD  constant3de6124014cbe5fb<>+0(SB), Y7, Y9
-	VFMADD213PD  constantbe5ae6455a1a9e87<>+0(SB), Y6, Y8
-	VFMADD213PD  constantbe5ae6455a1a9e87<>+0(SB), Y7, Y9
-	VFMADD213PD  constant3ec71de3a54562a8<>+0(SB), Y6, Y8
-	VFMADD213PD  constant3ec71de3a54562a8<>+0(SB), Y7, Y9
-	VFMADD213PD  constantbf2a01a01a018aa6<>+0(SB), Y6, Y8
-	VFMADD213PD  constantbf2a01a01a018aa6<>+0(SB), Y7, Y9
-	VFMADD213PD  constant3f81111111111107<>+0(SB), Y6, Y8
-	VFMADD213PD  constant3f81111111111107<>+0(SB), Y7, Y9
+	VMOVUPD      constant3ce88442a112e86d<>+0(SB), Y8
+	VMOVUPD      constant3ce88442a112e86d<>+0(SB), Y9
+	VFMADD213PD  constantbd6ae442a36d5e3a<>+0(SB), Y6, Y8
+	VFMADD213PD  constantbd6ae442a36d5e3a<>+0(SB), Y7, Y9
+	VFMADD213PD  constant3de6123cf7d4335e<>+0(SB), Y6, Y8
+	VFMADD213PD  constant3de6123cf7d4335e<>+0(SB), Y7, Y9
+	VFMADD213PD  constantbe5ae6454ddff0a5<>+0(SB), Y6, Y8
+	VFMADD213PD  constantbe5ae6454ddff0a5<>+0(SB), Y7, Y9
+	VFMADD213PD  constant3ec71de3a52b4685<>+0(SB), Y6, Y8
+	VFMADD213PD  constant3ec71de3a52b4685<>+0(SB), Y7, Y9
+	VFMADD213PD  constantbf2a01a01a014ff9<>+0(SB), Y6, Y8
+	VFMADD213PD  constantbf2a01a01a014ff9<>+0(SB), Y7, Y9
+	VFMADD213PD  constant3f811111111110ca<>+0(SB), Y6, Y8
+	VFMADD213PD  constant3f811111111110ca<>+0(SB), Y7, Y9
 	VFMADD213PD  constantbfc5555555555555<>+0(SB), Y6, Y8
 	VFMADD213PD  constantbfc5555555555555<>+0(SB), Y7, Y9
 	VMULPD       Y2, Y6, Y6
@@ -1863,13 +1863,13 @@ TEXT ·sinAVX512(SB), NOSPLIT, $0-64
 	MOVQ         a_base+24(FP), CX
 	VBROADCASTSD c+48(FP), Z0
 	VMOVUPD      constantbfc5555555555555<>+0(SB), Z1
-	VMOVUPD      constant3f81111111111107<>+0(SB), Z2
-	VMOVUPD      constantbf2a01a01a018aa6<>+0(SB), Z3
-	VMOVUPD      constant3ec71de3a54562a8<>+0(SB), Z4
-	VMOVUPD      constantbe5ae6455a1a9e87<>+0(SB), Z5
-	VMOVUPD      constant3de6124014cbe5fb<>+0(SB), Z6
-	VMOVUPD      constantbd6ae513415ba2a4<>+0(SB), Z7
-	VMOVUPD      constant3ce89a3f165714c1<>+0(SB), Z8
+	VMOVUPD      constant3f811111111110ca<>+0(SB), Z2
+	VMOVUPD      constantbf2a01a01a014ff9<>+0(SB), Z3
+	VMOVUPD      constant3ec71de3a52b4685<>+0(SB), Z4
+	VMOVUPD      constantbe5ae6454ddff0a5<>+0(SB), Z5
+	VMOVUPD      constant3de6123cf7d4335e<>+0(SB), Z6
+	VMOVUPD      constantbd6ae442a36d5e3a<>+0(SB), Z7
+	VMOVUPD      constant3ce88442a112e86d<>+0(SB), Z8
 	VMOVUPD      constant3fd45f306dc9c883<>+0(SB), Z9
 	VMOVUPD      constant4338000000000000<>+0(SB), Z10
 	VMOVUPD      constant400921fb54442d18<>+0(SB), Z11
@@ -1996,13 +1996,13 @@ TEXT ·cosAVX512(SB), NOSPLIT, $0-64
 	MOVQ         a_base+24(FP), CX
 	VBROADCASTSD c+48(FP), Z0
 	VMOVUPD      constantbfc5555555555555<>+0(SB), Z1
-	VMOVUPD      constant3f81111111111107<>+0(SB), Z2
-	VMOVUPD      constantbf2a01a01a018aa6<>+0(SB), Z3
-	VMOVUPD      constant3ec71de3a54562a8<>+0(SB), Z4
-	VMOVUPD      constantbe5ae6455a1a9e87<>+0(SB), Z5
-	VMOVUPD      constant3de6124014cbe5fb<>+0(SB), Z6
-	VMOVUPD      constantbd6ae513415ba2a4<>+0(SB), Z7
-	VMOVUPD      constant3ce89a3f165714c1<>+0(SB), Z8
+	VMOVUPD      constant3f811111111110ca<>+0(SB), Z2
+	VMOVUPD      constantbf2a01a01a014ff9<>+0(SB), Z3
+	VMOVUPD      constant3ec71de3a52b4685<>+0(SB), Z4
+	VMOVUPD      constantbe5ae6454ddff0a5<>+0(SB), Z5
+	VMOVUPD      constant3de6123cf7d4335e<>+0(SB), Z6
+	VMOVUPD      constantbd6ae442a36d5e3a<>+0(SB), Z7
+	VMOVUPD      constant3ce88442a112e86d<>+0(SB), Z8
 	VMOVUPD      constant3fd45f306dc9c883<>+0(SB), Z9
 	VMOVUPD      constant4338000000000000<>+0(SB), Z10
 	VMOVUPD      constant400921fb54442d18<>+0(SB), Z11
