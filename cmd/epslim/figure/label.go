@@ -1,6 +1,7 @@
 package figure
 
 import (
+	"fmt"
 	"strings"
 	"unicode"
 	"unicode/utf8"
@@ -110,10 +111,16 @@ func mathEscape(s string) string {
 	return b.String()
 }
 
+// maxLabel is the length in bytes beyond which a label cannot be meant to stand in a figure.
+const maxLabel = 1000
+
 // parseLabel splits a label into runs; neighbouring runs of one style are merged.
 func parseLabel(s string) ([]run, error) {
 	if !utf8.ValidString(s) {
 		return nil, &LabelError{s, "is not UTF-8"}
+	}
+	if len(s) > maxLabel {
+		return nil, &LabelError{s[:40] + "...", fmt.Sprintf("has %d bytes, more than %d", len(s), maxLabel)}
 	}
 	p := &labelParser{label: s, rest: s}
 	for p.rest != "" {

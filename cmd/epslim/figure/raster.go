@@ -34,8 +34,7 @@ func (s *scene) png(dpi float64) ([]byte, error) {
 		r.draw(&s.shapes[i])
 	}
 	var b bytes.Buffer
-	e := png.Encoder{CompressionLevel: png.BestCompression}
-	if err := e.Encode(&b, r.img); err != nil {
+	if err := png.Encode(&b, r.img); err != nil {
 		return nil, fmt.Errorf("figure: writing a PNG: %w", err)
 	}
 	return withText(b.Bytes(), scale*72, append([]Field{{"Title", s.title}, {"Description", s.alt}}, s.meta...)), nil
