@@ -61,7 +61,7 @@ func ParseAssignments(option, text string, limits Limits) ([]Assignment, *Source
 const assignmentForm = "NAME=VALUE, or several separated by commas"
 
 func (s *Source) expected(at Position, message, expected string) *diagnostic.Diagnostic {
-	d := s.diagnostic(at, diagnostic.Syntax, message)
+	d := s.Diagnostic(at, diagnostic.Syntax, message)
 	d.Expected = expected
 	return d
 }

@@ -63,7 +63,7 @@ func (p *expression) parse(after Position) (Expr, *diagnostic.Diagnostic) {
 }
 
 func (p *expression) fail(at Position, code diagnostic.Code, message, expected string) *diagnostic.Diagnostic {
-	d := p.src.diagnostic(at, code, message)
+	d := p.src.Diagnostic(at, code, message)
 	d.Expected = expected
 	return d
 }

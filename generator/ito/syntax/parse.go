@@ -37,7 +37,7 @@ func Parse(name string, src []byte, limits Limits) (*File, diagnostic.List) {
 		}
 	}
 	if len(f.Statements) == 0 && len(errs) == 0 {
-		errs = append(errs, f.Source.diagnostic(Position{Line: 1, Column: 1}, diagnostic.Empty,
+		errs = append(errs, f.Source.Diagnostic(Position{Line: 1, Column: 1}, diagnostic.Empty,
 			"the file holds no statement"))
 	}
 	errs.Sort()
@@ -82,7 +82,7 @@ type statementParser struct {
 
 func (s *statementParser) fail(at Position, code diagnostic.Code, message, expected, nearest string) {
 	if !s.bad {
-		d := s.src.diagnostic(at, code, message)
+		d := s.src.Diagnostic(at, code, message)
 		d.Expected, d.Nearest = expected, nearest
 		*s.errs = append(*s.errs, d)
 	}

@@ -67,14 +67,9 @@ func (s *Source) Line(n int) string {
 	return text
 }
 
-// Errorf-like construction of a diagnostic with the line it refers to.
-func (s *Source) diagnostic(at diagnostic.Position, code diagnostic.Code, message string) *diagnostic.Diagnostic {
-	return &diagnostic.Diagnostic{File: s.Name, Position: at, Code: code, Message: message, Text: s.Line(at.Line)}
-}
-
 // Diagnostic returns an error at a place of this text.
 func (s *Source) Diagnostic(at diagnostic.Position, code diagnostic.Code, message string) *diagnostic.Diagnostic {
-	return s.diagnostic(at, code, message)
+	return &diagnostic.Diagnostic{File: s.Name, Position: at, Code: code, Message: message, Text: s.Line(at.Line)}
 }
 
 // checkText reports what is wrong with the text as a whole; after such an error

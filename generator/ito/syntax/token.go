@@ -136,7 +136,7 @@ func (l *lexer) run() {
 			}
 		default:
 			if statements++; statements > l.limits.Statements {
-				l.report(l.src.diagnostic(Position{Line: line, Column: l.column, Length: 1}, diagnostic.TooMany,
+				l.report(l.src.Diagnostic(Position{Line: line, Column: l.column, Length: 1}, diagnostic.TooMany,
 					"the file has more than "+itoa(l.limits.Statements)+" statements"))
 				return
 			}
@@ -213,7 +213,7 @@ func (l *lexer) here(length int) Position {
 // first error of a statement is guesswork.
 func (l *lexer) fail(at Position, code diagnostic.Code, message, expected string) {
 	if !l.current.bad {
-		d := l.src.diagnostic(at, code, message)
+		d := l.src.Diagnostic(at, code, message)
 		d.Expected = expected
 		l.report(d)
 	}
