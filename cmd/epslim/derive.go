@@ -33,7 +33,7 @@ func (a *app) deriveCommand() *cobra.Command {
 			if err != nil {
 				return a.deriveError(err)
 			}
-			text, err := render(res)
+			text, err := render(res, a.provenance(cmd, sys, args[0]), colour(a.out))
 			if err != nil {
 				return err
 			}
@@ -48,10 +48,23 @@ func (a *app) deriveCommand() *cobra.Command {
 	return cmd
 }
 
+// rendering is how a derivation is printed.
+type rendering func(r *derivation.Result, p present.Provenance, colour bool) ([]byte, error)
+
 // formats are the renderings of a derivation.
-var formats = map[string]func(*derivation.Result) ([]byte, error){
-	"text": func(r *derivation.Result) ([]byte, error) { return present.Text(r, present.TextSettings{}), nil },
-	"json": func(r *derivation.Result) ([]byte, error) { return present.JSON(r, version) },
+var formats = map[string]rendering{
+	"text": func(r *derivation.Result, _ present.Provenance, colour bool) ([]byte, error) {
+		return present.Text(r, present.TextSettings{Colour: colour}), nil
+	},
+	"json": func(r *derivation.Result, _ present.Provenance, _ bool) ([]byte, error) {
+		return present.JSON(r, version)
+	},
+	"latex": func(r *derivation.Result, p present.Provenance, _ bool) ([]byte, error) {
+		return present.LaTeX(r, p, present.LatexSettings{}), nil
+	},
+	"markdown": func(r *derivation.Result, p present.Provenance, _ bool) ([]byte, error) {
+		return present.Markdown(r, p), nil
+	},
 }
 
 func (a *app) deriveError(err error) error {

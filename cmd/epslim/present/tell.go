@@ -1,7 +1,6 @@
 package present
 
 import (
-	"fmt"
 	"math/big"
 
 	"epslim/cmd/epslim/derivation"
@@ -449,7 +448,7 @@ func (t *teller) order(o perturb.Order) Order {
 		row.Equation = line(left, equals, src...)
 		c := line(averaged, equals, Term{Pre: integer(0)})
 		row.Condition = &c
-		y := line(t.u(o.J), equals, t.terms(o.Corrector)...)
+		y := line(t.u(o.J), equals, t.acting(o.Corrector)...)
 		row.Yield = &y
 		return row
 	}
@@ -457,9 +456,32 @@ func (t *teller) order(o perturb.Order) Order {
 	row.Equation = line(left, equals, append([]Term{{Post: du}}, src...)...)
 	c := line(du, equals, Term{Post: averaged})
 	row.Condition = &c
-	y := line(du, equals, t.terms(o.Mean)...)
+	y := line(du, equals, t.acting(o.Mean)...)
 	row.Yield = &y
 	return row
+}
+
+// acting writes an expression linear in the derivatives of u0 as an operator
+// that acts on it, lower order first.
+func (t *teller) acting(e algebra.Expr) []Term {
+	ds, err := e.Derivatives(t.res.Limit.U0)
+	if err != nil || len(ds) == 0 {
+		return t.terms(e)
+	}
+	o := generator.New(e.Ring(), t.names)
+	for _, d := range ds {
+		o.Add(d.Index, d.Coef)
+	}
+	u0 := t.u(0)
+	var out []Term
+	for _, x := range o.Terms() {
+		d := u0
+		if p := t.derivative(t.names, x.Index); !p.Empty() {
+			d = join(p, Math{Text: " "}, u0)
+		}
+		out = append(out, t.scaled(x.Coef, d)...)
+	}
+	return out
 }
 
 // correctors are the solutions of the fast problems.
@@ -477,16 +499,48 @@ func (t *teller) correctors() Section {
 	b := lit("b", "b")
 	eq := join(sub(scriptL, integer(0)), thin, bigPhi, equals, Math{"−", "-", `<mo form="prefix">−</mo>`}, paren(join(b, op("−", "-"), mean(b))))
 	p := Para{text("The corrector of each slow drift "), inline(b), text(" at the first order, with "), inline(eq), text(":")}
-	return t.withBlocks(sec, p, Equations{ID: "correctors", Lines: ls})
+	return t.withBlocks(sec, append([]Block{p, Equations{ID: "correctors", Lines: ls}}, t.named()...)...)
+}
+
+// named explains the averages and correctors that have no closed form.
+func (t *teller) named() []Block {
+	if t.res.Route == nil {
+		return nil
+	}
+	var ls []Line
+	l0 := sub(scriptL, integer(0))
+	for _, n := range t.res.Route.Names() {
+		phi, avg := t.symbol(n.Phi), t.symbol(n.Mean)
+		right := []Term{{Post: avg}}
+		if n.Zero {
+			right = nil
+		}
+		l := line(join(l0, phi), equals, append(right, negated(t.terms(n.Of))...)...)
+		l.Note = cell(inline(join(avg, equals, mean(t.expr(n.Of)))))
+		if n.Zero {
+			l.Note = cell(inline(join(mean(t.expr(n.Of)), equals, integer(0))), text(" by symmetry"))
+		}
+		ls = append(ls, l)
+	}
+	if len(ls) == 0 {
+		return nil
+	}
+	return []Block{Para{text("These have no closed form and are known by numbers (" + t.res.Route.Name() + "); a name stands for the solution of its fast problem:")},
+		Equations{ID: "named", Lines: ls}}
+}
+
+func negated(ts []Term) []Term {
+	for i := range ts {
+		ts[i].Neg = !ts[i].Neg
+	}
+	return ts
 }
 
 // limit is the limiting SDE.
 func (t *teller) limit() Section {
 	res, lim := t.res, t.res.Limit
 	sec := Section{ID: "limit", Title: "Limit"}
-	intro := fmt.Sprintf("As %s → 0 on times of order %s (%s)", t.eps.Text, minus(res.TimeScale()), lim.Regime)
-	p := Para{text("As "), inline(join(t.eps, op("→", `\to`), integer(0))), text(" on times of order " + res.TimeScale() + " (" + lim.Regime + ")")}
-	_ = intro
+	p := Para{text("As "), inline(join(t.eps, op("→", `\to`), integer(0))), text(" on times "), inline(join(lit("t", "t"), equals, power(t.eps, new(big.Rat).Neg(lim.Power)), thin, lit("T", "T"))), text(" (" + lim.Regime + ")")}
 	if lim.Power.Sign() == 0 {
 		p = Para{text("As "), inline(join(t.eps, op("→", `\to`), integer(0))), text(" (" + lim.Regime + ")")}
 	}
@@ -529,8 +583,6 @@ func (t *teller) timed(l Line) Line {
 
 func (t *teller) stratonovich(noise [][]algebra.Expr) []Block {
 	res := t.res
-	sum := join(half, thin, bare("Σ", `\textstyle\sum_{j,k}`), thin)
-	_ = sum
 	var corr, ls []Line
 	for i, v := range t.names {
 		c := res.Limit.Drift[i].Sub(res.Stratonovich[i])
@@ -693,6 +745,9 @@ func (t *teller) boundaries() Para {
 func (t *teller) stationary() Section {
 	s := t.res.Stationary
 	sec := Section{ID: "stationary", Title: "Stationary density"}
+	if s.H != nil {
+		sec.Blocks = append(sec.Blocks, t.force(s.H)...)
+	}
 	if s.Density.Valid() {
 		l := line(density, propto, t.terms(s.Density)...)
 		sec.Blocks = append(sec.Blocks, Equations{ID: "density", Lines: []Line{l}})
@@ -704,19 +759,20 @@ func (t *teller) stationary() Section {
 			how += "; with the formulas given"
 		}
 		if how != "" {
-			sec.Blocks = append(sec.Blocks, Para{text("Found from: " + how + ".")})
+			sec.Blocks = append(sec.Blocks, append(Para{text("Found from: ")}, t.rich(how+".")...))
 		}
 	} else {
 		sec.Blocks = append(sec.Blocks, Para{text("There is no closed form here; the density is numerical.")})
 	}
-	p := Para{}
+	var p Para
+	why := t.rich(s.Why + ".")
 	switch s.Reversible {
 	case fokkerplanck.Yes:
-		p = append(p, strong("Reversible"), text(": "+s.Why+"."))
+		p = append(Para{strong("Reversible"), text(": ")}, why...)
 	case fokkerplanck.No:
-		p = append(p, strong("Irreversible"), text(": "+s.Why+"."))
+		p = append(Para{strong("Irreversible"), text(": ")}, why...)
 	default:
-		p = append(p, text("Reversibility is open: "+s.Why+"."))
+		p = append(Para{text("Reversibility is open: ")}, why...)
 	}
 	sec.Blocks = append(sec.Blocks, p)
 	if s.Curl.Valid() && !s.Curl.IsZero() {
@@ -733,9 +789,20 @@ func (t *teller) stationary() Section {
 		sec.Blocks = append(sec.Blocks, Para{text("The stationary current, in units of the factor before the density:")}, Equations{ID: "current", Lines: ls})
 	}
 	if s.Density.Valid() {
-		sec.Blocks = append(sec.Blocks, normal(s))
+		sec.Blocks = append(sec.Blocks, t.normal(s))
 	}
 	return sec
+}
+
+// force is the field whose being a gradient decides about reversibility.
+func (t *teller) force(h []algebra.Expr) []Block {
+	var ls []Line
+	for i, e := range h {
+		ls = append(ls, line(sub(lit("h", "h"), t.symbol(t.names[i])), equals, t.terms(e)...))
+	}
+	p := append(Para{text("A density without current is the exponential of a potential of ")}, t.rich("h = A^-1 (2 f - div A)")...)
+	p = append(p, text(", with "), inline(lit("f", "f")), text(" the Itô drift:"))
+	return []Block{p, Equations{ID: "force", Lines: ls}}
 }
 
 func allZero(es []algebra.Expr) bool {
@@ -747,15 +814,16 @@ func allZero(es []algebra.Expr) bool {
 	return true
 }
 
-func normal(s *fokkerplanck.Stationary) Para {
+func (t *teller) normal(s *fokkerplanck.Stationary) Para {
+	why := t.rich(": " + s.NormalWhy + ".")
+	if s.NormalWhy == "" {
+		why = []Span{text(".")}
+	}
 	switch s.Normal {
 	case fokkerplanck.Yes:
-		return Para{text("It can be normalised: " + s.NormalWhy + ".")}
+		return append(Para{text("It can be normalised")}, why...)
 	case fokkerplanck.No:
-		return Para{text("It "), strong("cannot be normalised"), text(": " + s.NormalWhy + ".")}
+		return append(Para{text("It "), strong("cannot be normalised")}, why...)
 	}
-	if s.NormalWhy == "" {
-		return Para{text("Whether it can be normalised is open.")}
-	}
-	return Para{text("Whether it can be normalised is open: " + s.NormalWhy + ".")}
+	return append(Para{text("Whether it can be normalised is open")}, why...)
 }

@@ -22,7 +22,7 @@ func capital(s string) string {
 func (t *teller) refusal() Section {
 	r := t.res.Refused
 	sec := Section{ID: "refusal", Title: "There is no limit"}
-	sec.Blocks = append(sec.Blocks, Para{{Text: capital(string(r.Reason)), Kind: Bad}, text(": " + r.Text + ".")})
+	sec.Blocks = append(sec.Blocks, append(Para{{Text: capital(string(r.Reason)), Kind: Bad}, text(": ")}, t.rich(r.Text+".")...))
 	var ls []Line
 	for _, k := range r.DetailNames() {
 		ls = append(ls, line(t.detailName(k), equals, t.terms(r.Detail[k])...))
@@ -31,7 +31,7 @@ func (t *teller) refusal() Section {
 		sec.Blocks = append(sec.Blocks, Equations{ID: "refusal", Lines: ls})
 	}
 	if r.Mend != "" {
-		sec.Blocks = append(sec.Blocks, Para{text("What would mend it: " + r.Mend + ".")})
+		sec.Blocks = append(sec.Blocks, append(Para{text("What would mend it: ")}, t.rich(r.Mend+".")...))
 	}
 	return sec
 }
@@ -83,7 +83,7 @@ func (t *teller) checks() Section {
 		case derivation.Numerical:
 			k = Strong
 		}
-		tab.Rows = append(tab.Rows, [][]Span{cell(Span{Text: string(c.Status), Kind: k}), cell(text(c.What)), cell(text(c.Detail))})
+		tab.Rows = append(tab.Rows, [][]Span{cell(Span{Text: string(c.Status), Kind: k}), t.rich(c.What), t.rich(c.Detail)})
 	}
 	if len(tab.Rows) == 0 {
 		return sec
@@ -102,7 +102,7 @@ func (t *teller) claims() Section {
 		case derivation.Undecided:
 			k = Strong
 		}
-		tab.Rows = append(tab.Rows, [][]Span{cell(Span{Text: v.Verdict, Kind: k}), cell(text(v.Claim.Label())), cell(text(v.Reason))})
+		tab.Rows = append(tab.Rows, [][]Span{cell(Span{Text: v.Verdict, Kind: k}), cell(text(v.Claim.Label())), t.rich(v.Reason)})
 		for _, w := range t.witness(v.Witness) {
 			tab.Rows = append(tab.Rows, [][]Span{nil, nil, w})
 		}
@@ -134,7 +134,7 @@ func (t *teller) witness(w *derivation.Witness) [][]Span {
 		out = append(out, cell(text("difference "), inline(t.expr(w.Difference))))
 	}
 	if w.Slip != "" {
-		out = append(out, cell(text("likely slip: "+w.Slip)))
+		out = append(out, append(cell(text("likely slip: ")), t.rich(w.Slip)...))
 	}
 	return out
 }

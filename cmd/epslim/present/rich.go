@@ -1,0 +1,82 @@
+package present
+
+import (
+	"math/big"
+	"regexp"
+	"strings"
+)
+
+// The sentences of the derivation hold small pieces of mathematics in plain
+// characters; rich finds them, so that each output sets them in its own way.
+
+var partialSum = Math{"∇·J", `\nabla\cdot J`, mi("∇") + mo("·") + mi("J")}
+
+func transposed(m Math) Math {
+	return Math{m.Text + "ᵀ", m.TeX + `^{\mathsf{T}}`, "<msup><mrow>" + m.MathML + "</mrow><mi>T</mi></msup>"}
+}
+
+// fragments are the pieces with a fixed spelling, longest first.
+func fragments() []struct {
+	plain string
+	m     Math
+} {
+	l0 := sub(scriptL, integer(0))
+	f, h, a := lit("f", "f"), lit("h", "h"), lit("A", "A")
+	zero := join(equals, integer(0))
+	ss := join(sigma, transposed(sigma))
+	inverse := power(a, big.NewRat(-1, 1))
+	divA := Math{"∇·A", `\nabla\cdot A`, mi("∇") + mo("·") + mi("A")}
+	two := join(integer(2), f)
+	return []struct {
+		plain string
+		m     Math
+	}{
+		{"h = A^-1 (2 f - div A)", join(h, equals, inverse, paren(join(two, op("−", "-"), divA)))},
+		{"L0 Phi + f - <f> = 0", join(l0, bigPhi, op("+", "+"), f, op("−", "-"), mean(f), zero)},
+		{"L0 Phi + f - <f>", join(l0, bigPhi, op("+", "+"), f, op("−", "-"), mean(f))},
+		{"sigma sigma^T - A = 0", join(ss, op("−", "-"), a, zero)},
+		{"A = sigma sigma^T", join(a, equals, ss)},
+		{"sigma sigma^T = A", join(ss, equals, a)},
+		{"sigma sigma^T", ss},
+		{"div J / p", join(partialSum, bare("/", "/"), prob)},
+		{"div J = 0", join(partialSum, zero)},
+		{"div J", partialSum},
+	}
+}
+
+var (
+	powerText = regexp.MustCompile(`([\pL_][\pL\pN_]*)\^\((-?[0-9/.e+-]+)\)`)
+	arrowText = regexp.MustCompile(`([\pL_][\pL\pN_]*) -> 0`)
+	loneField = regexp.MustCompile(`\bh\b`)
+)
+
+// rich is a sentence with its formulas set as such.
+func (n *notation) rich(s string) []Span {
+	for _, f := range fragments() {
+		if before, after, ok := strings.Cut(s, f.plain); ok {
+			return append(append(n.rich(before), inline(f.m)), n.rich(after)...)
+		}
+	}
+	if i := powerText.FindStringSubmatchIndex(s); i != nil {
+		if q, ok := new(big.Rat).SetString(s[i[4]:i[5]]); ok {
+			m := power(n.symbol(s[i[2]:i[3]]), q)
+			if !q.IsInt() {
+				b := n.symbol(s[i[2]:i[3]])
+				e := minus(s[i[4]:i[5]])
+				m = Math{b.Text + "^(" + e + ")", b.TeX + "^{" + s[i[4]:i[5]] + "}", "<msup><mrow>" + b.MathML + "</mrow><mn>" + e + "</mn></msup>"}
+			}
+			return append(append(n.rich(s[:i[0]]), inline(m)), n.rich(s[i[1]:])...)
+		}
+	}
+	if i := arrowText.FindStringSubmatchIndex(s); i != nil {
+		m := join(n.symbol(s[i[2]:i[3]]), op("→", `\to`), integer(0))
+		return append(append(n.rich(s[:i[0]]), inline(m)), n.rich(s[i[1]:])...)
+	}
+	if i := loneField.FindStringIndex(s); i != nil {
+		return append(append(n.rich(s[:i[0]]), inline(lit("h", "h"))), n.rich(s[i[1]:])...)
+	}
+	if s == "" {
+		return nil
+	}
+	return []Span{text(s)}
+}
