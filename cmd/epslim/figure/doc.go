@@ -8,6 +8,9 @@
 // golang.org/x/image, and the Liberation fonts (codeberg.org/go-fonts/liberation), whose metrics
 // are those of Arial and Helvetica, so that text measured here fits wherever an SVG is shown.
 //
+// A plotting library is not used: one layout for all formats keeps axes and cells together to the last
+// digit, labels need Greek and scripts in each of them, and an image must fill its box in an SVG.
+//
 // A caller fills one of the data structs of kinds.go and calls its constructor, or composes a [Plot]
 // from the parts of plot.go; the zero value of every settings field works:
 //

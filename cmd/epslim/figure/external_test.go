@@ -1,6 +1,7 @@
 package figure
 
 import (
+	"flag"
 	"image"
 	"image/png"
 	"os"
@@ -13,6 +14,8 @@ import (
 
 // These tests look at the files with the programs of others. Each is skipped, with a line that says so, only when
 // its program is not installed.
+
+var allLaTeX = flag.Bool("latex", false, "set every figure of the gallery with pdflatex, and not only six")
 
 func program(t *testing.T, names ...string) string {
 	t.Helper()
@@ -132,8 +135,9 @@ func TestLaTeXCompiles(t *testing.T) {
 		"\\begin{document}\\noindent\n")
 	for _, e := range examples() {
 		switch e.name {
-		case "band", "arrows", "streamlines", "many-series", "paths", "log-map":
-			if testing.Short() {
+		case "line", "histogram", "eps-convergence", "difference", "uneven", "extremes":
+		default: // -latex sets the whole gallery, which takes a while
+			if !*allLaTeX {
 				continue
 			}
 		}

@@ -247,7 +247,8 @@ func manyExample() *Plot {
 
 func extremesExample() *Plot {
 	return &Plot{Settings: settings(""), X: Axis{Label: `$D_{\mathrm{eff}}^2 / (2\pi)$`}, Y: Axis{Label: Plain(`100% <b>\bad & $5 ∇∝∈ε_θ`)},
-		Series: []Series{{Label: `a & b < c`, X: []float64{-2.5e-7, 1e-7, 3.1e-7}, Y: []float64{1.2e8, -3.4e8, 2e8}}}}
+		Series: []Series{{Label: `a & b < c`, X: []float64{-2.5e-7, 1e-7, 3.1e-7}, Y: []float64{1.2e8, -3.4e8, 2e8}},
+			{Label: "$\\mathrm{日本}_{é} + ϕ$", X: []float64{0, 2e-7}, Y: []float64{1e8, 0}}}}
 }
 
 // TestGallery writes the gallery when asked to; looking at it is part of changing this package.

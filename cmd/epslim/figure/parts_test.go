@@ -444,6 +444,59 @@ func TestMetadataTravels(t *testing.T) {
 	}
 }
 
+func TestFormat(t *testing.T) {
+	p := lineExample()
+	p.DPI = 72
+	for name, begin := range map[string]string{"a.svg": "<svg", "out/B.PNG": "\x89PNG", ".pdf": "%PDF", "png": "\x89PNG"} {
+		b, err := p.Format(name)
+		if err != nil || !strings.HasPrefix(string(b), begin) {
+			t.Errorf("%s: begins with %.8q, error %v", name, b, err)
+		}
+	}
+	for _, name := range []string{"", "a", "a.jpg", "svg.txt"} {
+		if _, err := p.Format(name); err == nil {
+			t.Errorf("the name %q is accepted", name)
+		}
+	}
+}
+
+// TestOddGrids draws the smallest grids, a grid of which only a part is in view, and logarithmic axes.
+func TestOddGrids(t *testing.T) {
+	one := DensityMap(DensityMapData{XEdges: []float64{0, 1}, YEdges: []float64{0, 1}, Density: []float64{3}}, Settings{})
+	part := gaussMap(12)
+	part.Current = rotation(part.XEdges, part.YEdges, Arrows)
+	zoom := DensityMap(part, Settings{})
+	zoom.X.Min, zoom.X.Max, zoom.Y.Min, zoom.Y.Max = -1, 1.3, -0.4, 3
+	logs := DensityMap(DensityMapData{XEdges: []float64{1, 10, 100}, YEdges: []float64{1, 2, 4, 8}, Density: make([]float64, 6)}, Settings{})
+	logs.X.Log, logs.Y.Log = true, true
+	strip := DensityMap(DensityMapData{XEdges: UniformEdges(0, 10, 40), YEdges: []float64{0, 0.5, 1}, Density: make([]float64, 80),
+		Current: &VectorField{X: CellCentres(UniformEdges(0, 10, 40)), Y: []float64{0.25, 0.75}, U: make([]float64, 80), V: append(make([]float64, 79), 1e-320), Style: Streamlines}}, Settings{})
+	for name, p := range map[string]*Plot{"one cell": one, "part": zoom, "log": logs, "strip": strip} {
+		p.DPI = 72
+		files, err := p.Files("f")
+		if err != nil {
+			t.Errorf("%s: %v", name, err)
+			continue
+		}
+		for _, f := range files {
+			if strings.HasSuffix(f.Name, ".svg") && strings.Contains(string(f.Data), "NaN") {
+				t.Errorf("%s: a coordinate is not a number", name)
+			}
+		}
+		n := parseSVG(t, p)
+		frame := frameOf(t, n).grow(0.02)
+		n.group(t, "heat-map", "").walk(func(m *node) {
+			if m.XMLName.Local == "path" {
+				for _, q := range pathPoints(t, m.attr("d")) {
+					if !frame.contains(q) {
+						t.Errorf("%s: a cell reaches to %v, outside of the frame %v", name, q, frame)
+					}
+				}
+			}
+		})
+	}
+}
+
 func BenchmarkSVG(b *testing.B) {
 	p := pathsExample()
 	for b.Loop() {

@@ -455,6 +455,8 @@ func labelTeX(label string) string {
 				b.WriteString(commandTeX(name) + " ")
 			} else if c == '−' {
 				b.WriteByte('-')
+			} else if c > unicode.MaxASCII {
+				b.WriteString(`\mbox{` + textTeX(c) + "}")
 			} else {
 				b.WriteRune(c)
 			}

@@ -1,5 +1,11 @@
 package figure
 
+import (
+	"fmt"
+	"path/filepath"
+	"strings"
+)
+
 // Width is the width of a figure on the page.
 type Width int
 
@@ -197,6 +203,19 @@ func (p *Plot) PDF() ([]byte, error) {
 		return nil, err
 	}
 	return s.pdf()
+}
+
+// Format returns the figure in the format that a file name or its ending asks for: .svg, .png or .pdf.
+func (p *Plot) Format(name string) ([]byte, error) {
+	switch strings.ToLower(filepath.Ext("." + strings.TrimPrefix(name, "."))) {
+	case ".svg":
+		return p.SVG()
+	case ".png":
+		return p.PNG()
+	case ".pdf":
+		return p.PDF()
+	}
+	return nil, &DataError{"file name", -1, fmt.Sprintf("%q ends in none of .svg, .png and .pdf", name)}
 }
 
 // File is a file of a figure. Its name has no folder.
