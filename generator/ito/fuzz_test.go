@@ -70,3 +70,37 @@ func FuzzRead(f *testing.F) {
 		checkReadable(t, s, text)
 	})
 }
+
+// FuzzOptions does the same for the texts of --set and --at options.
+func FuzzOptions(f *testing.F) {
+	for _, s := range []string{"k=1.5", "v(x, z)=1+x^2, k=2", "x=0.3,z=pi/4,k=1e-3", "x=1/0,z=", "v=(", "k=1\nx=2", "x=-1,z=2"} {
+		f.Add(s)
+	}
+	const model = "slow x in [0, k] periodic\nslow z on halfline\nfast y on line\nparam k = 2 positive\nfunction v(x, z) positive\n" +
+		"dx = v*y/eps dt\ndz = 0 dt\ndy = -k*y/eps^2 dt + 1/eps dW1\n"
+	plain, err := Parse("m", []byte(model), Options{})
+	if err != nil {
+		f.Fatal(err)
+	}
+	f.Fuzz(func(t *testing.T, text string) {
+		if len(text) > 500 {
+			return
+		}
+		isList := func(err error) {
+			var errs ErrorList
+			if err != nil && (!errors.As(err, &errs) || len(errs) == 0 || err.Error() == "") {
+				t.Fatalf("%q: not a list of errors: %v", text, err)
+			}
+		}
+		s, err := Parse("m", []byte(model), Options{Set: []string{text}})
+		isList(err)
+		if err == nil && s.Parameter("k").Value.Sign() <= 0 {
+			t.Fatalf("%q sets k = %v", text, s.Parameter("k").Value)
+		}
+		p, err := plain.At(text)
+		isList(err)
+		if err == nil && (p.Slow[0].Float < -1e-9 || p.Slow[1].Float <= 0) {
+			t.Fatalf("%q is a point outside the domain: %+v", text, p)
+		}
+	})
+}
