@@ -1,6 +1,9 @@
 package multigrid
 
-import "epslim/solver/volume"
+import (
+	"epslim/solver/grid"
+	"epslim/solver/volume"
+)
 
 // views collects the coefficient and neighbour slices of one row; every worker
 // has its own.
@@ -52,6 +55,23 @@ func (l *level) half(v *views, x, b []float32, r, half int) {
 	}
 }
 
+// halfSlab runs half a sweep on slab q.
+func (l *level) halfSlab(v *views, x, b []float32, q, half int) {
+	for r := q * l.slab; r < (q+1)*l.slab; r++ {
+		l.half(v, x, b, r, half)
+	}
+}
+
+// startSlab runs the first half of a sweep that starts from zero on slab q.
+func (l *level) startSlab(x, b []float32, q int) {
+	n := l.lay.Nx
+	for r := q * l.slab; r < (q+1)*l.slab; r++ {
+		s := l.lay.Row(r)
+		relaxZero(x[s:][:n], b[s:][:n], l.colourOf(r))
+		l.wrap(x, r)
+	}
+}
+
 // sweep is one Gauss-Seidel sweep over both halves. The second half follows
 // the first one slab behind, so that both pass through the cache together; the
 // slabs at the ends of a worker's piece wait until all workers are there. The
@@ -65,26 +85,92 @@ func (l *level) sweep(x, b []float32, reverse bool) {
 	if reverse {
 		first = 1
 	}
-	run := func(v *views, q, half int) {
-		for r := q * l.slab; r < (q+1)*l.slab; r++ {
-			l.half(v, x, b, r, half)
-		}
-	}
 	workers := l.workers()
 	volume.Parallel(workers, l.slabs, func(_, a, e int) {
 		v := l.views()
 		for q := a; q < e; q++ {
-			run(v, q, first)
+			l.halfSlab(v, x, b, q, first)
 			if q-1 > a {
-				run(v, q-1, 1-first)
+				l.halfSlab(v, x, b, q-1, 1-first)
 			}
 		}
 	})
 	volume.Parallel(workers, l.slabs, func(_, a, e int) {
 		v := l.views()
-		run(v, a, 1-first)
+		l.halfSlab(v, x, b, a, 1-first)
 		if e-1 > a {
-			run(v, e-1, 1-first)
+			l.halfSlab(v, x, b, e-1, 1-first)
+		}
+	})
+}
+
+// canFuse reports whether smoothing and the transfer to the coarser level c can
+// share one pass through the memory: the last axis is merged, the point smoother
+// needs no more than the neighbouring slabs, and the pieces are long enough.
+func (l *level) canFuse(c *level, kind cycleKind) bool {
+	d := l.grid.Dim()
+	return !kind.line && !l.full && d > 1 && c.up.merged[d-1] && l.slabs >= 8*l.workers() && l.slabs%2 == 0
+}
+
+// down is a sweep from zero followed by the restriction of the residual, in one
+// pass: coarse slab J is formed when the fine slabs up to 2J+2 are relaxed.
+// What depends on the pieces of other workers follows after they are done. The
+// arithmetic is that of sweep and restrict.
+func (l *level) down(c *level, x, b []float32) {
+	workers := l.workers()
+	piece := func(body func(v *views, a, e int)) {
+		volume.Parallel(workers, c.slabs, func(_, lo, hi int) { body(l.views(), 2*lo, 2*hi) })
+	}
+	piece(func(v *views, a, e int) {
+		for q := a; q < e; q++ {
+			l.startSlab(x, b, q)
+			if q-1 <= a {
+				continue
+			}
+			l.halfSlab(v, x, b, q-1, 1)
+			if J := (q - 3) / 2; q%2 == 1 && 2*J >= a+2 {
+				l.restrictSlab(c, v, x, b, J)
+			}
+		}
+	})
+	piece(func(v *views, a, e int) {
+		l.halfSlab(v, x, b, a, 1)
+		l.halfSlab(v, x, b, e-1, 1)
+	})
+	piece(func(v *views, a, e int) {
+		for J := a / 2; J < e/2; J++ {
+			if 2*J < a+2 || 2*J+2 > e-2 {
+				l.restrictSlab(c, v, x, b, J)
+			}
+		}
+	})
+}
+
+// climb is the interpolation of the coarse correction followed by a sweep in
+// reverse order, in one pass.
+func (l *level) climb(c *level, x, b []float32) {
+	workers := l.workers()
+	volume.Parallel(workers, l.slabs, func(_, a, e int) {
+		v, vc := l.views(), c.views()
+		for q := a; q < e; q++ {
+			l.prolongSlab(c, vc, x, c.x, q, false)
+			if q-1 > a {
+				l.halfSlab(v, x, b, q-1, 1)
+			}
+			if q-2 > a+1 {
+				l.halfSlab(v, x, b, q-2, 0)
+			}
+		}
+	})
+	volume.Parallel(workers, l.slabs, func(_, a, e int) {
+		v := l.views()
+		l.halfSlab(v, x, b, a, 1)
+		l.halfSlab(v, x, b, e-1, 1)
+	})
+	volume.Parallel(workers, l.slabs, func(_, a, e int) {
+		v := l.views()
+		for _, q := range [4]int{a, a + 1, e - 2, e - 1} {
+			l.halfSlab(v, x, b, q, 0)
 		}
 	})
 }
@@ -118,58 +204,74 @@ func (l *level) sweepClasses(x, b []float32, reverse bool) {
 // restrict adds the weighted residuals of the children into the right-hand
 // side of the coarser level.
 func (l *level) restrict(c *level, x, b []float32) {
-	c.each(func(_, lo, hi int) {
+	volume.Parallel(c.workers(), c.slabs, func(_, lo, hi int) {
 		v := l.views()
-		n, nc := l.lay.Nx, c.lay.Nx
-		for R := lo; R < hi; R++ {
-			J, K := c.lay.RowCoordinates(R)
-			dst := c.b[c.lay.Row(R):][:nc]
-			acc, buf := v.acc[:n], v.buf[:n]
-			j0, j1 := c.up.children(1, J)
-			k0, k1 := c.up.children(2, K)
-			rows, left := 0, (j1-j0)*(k1-k0)
-			for k := k0; k < k1; k++ {
-				for j := j0; j < j1; j++ {
-					r := j + l.lay.Shape(1)*k
-					s := l.lay.Row(r)
-					v.set(l, x, r)
-					into := buf
-					if rows == 0 {
-						into = acc
-					}
-					residualRow(into, x[s:][:n], b[s:][:n], l.weight[s:][:n], v.coef, v.nb)
-					if rows++; rows > 1 && rows < left {
-						blendRow(acc, acc, buf, 1, 1)
-					}
-				}
-			}
-			if left == 1 {
-				clear(buf)
-			}
-			if c.up.merged[0] {
-				pairSum(dst, acc, buf)
-			} else {
-				blendRow(dst, acc, buf, 1, 1)
-			}
+		for J := lo; J < hi; J++ {
+			l.restrictSlab(c, v, x, b, J)
 		}
 	})
+}
+
+func (l *level) restrictSlab(c *level, v *views, x, b []float32, slab int) {
+	for R := slab * c.slab; R < (slab+1)*c.slab; R++ {
+		l.restrictRow(c, v, x, b, R)
+	}
+}
+
+func (l *level) restrictRow(c *level, v *views, x, b []float32, R int) {
+	n, nc := l.lay.Nx, c.lay.Nx
+	J, K := c.lay.RowCoordinates(R)
+	dst := c.b[c.lay.Row(R):][:nc]
+	acc, buf := v.acc[:n], v.buf[:n]
+	j0, j1 := c.up.children(1, J)
+	k0, k1 := c.up.children(2, K)
+	rows, left := 0, (j1-j0)*(k1-k0)
+	for k := k0; k < k1; k++ {
+		for j := j0; j < j1; j++ {
+			r := j + l.lay.Shape(1)*k
+			s := l.lay.Row(r)
+			v.set(l, x, r)
+			into := buf
+			if rows == 0 {
+				into = acc
+			}
+			residualRow(into, x[s:][:n], b[s:][:n], l.weight[s:][:n], v.coef, v.nb)
+			if rows++; rows > 1 && rows < left {
+				blendRow(acc, acc, buf, 1, 1)
+			}
+		}
+	}
+	if left == 1 {
+		clear(buf)
+	}
+	if c.up.merged[0] {
+		pairSum(dst, acc, buf)
+	} else {
+		blendRow(dst, acc, buf, 1, 1)
+	}
 }
 
 // prolong adds to x (or, with set, replaces it by) the values of the coarser
 // level, interpolated linearly in every merged direction.
 func (l *level) prolong(c *level, x, xc []float32, set bool) {
-	l.each(func(_, lo, hi int) {
+	volume.Parallel(l.workers(), l.slabs, func(_, lo, hi int) {
 		v := c.views()
-		for r := lo; r < hi; r++ {
-			t := c.blendRows(v, xc, l, r)
-			f := x[l.lay.Row(r):][:l.lay.Nx]
-			if set {
-				clear(f)
-			}
-			c.spread(f, t)
-			l.wrap(x, r)
+		for q := lo; q < hi; q++ {
+			l.prolongSlab(c, v, x, xc, q, set)
 		}
 	})
+}
+
+func (l *level) prolongSlab(c *level, v *views, x, xc []float32, slab int, set bool) {
+	for r := slab * l.slab; r < (slab+1)*l.slab; r++ {
+		t := c.blendRows(v, xc, l, r)
+		f := x[l.lay.Row(r):][:l.lay.Nx]
+		if set {
+			clear(f)
+		}
+		c.spread(f, t)
+		l.wrap(x, r)
+	}
 }
 
 // blendRows interpolates the coarse rows around fine row r across the rows. The
@@ -212,11 +314,23 @@ func (c *level) spread(f, ext []float32) {
 	}
 }
 
-// cycle settings.
+// cycleKind says how a cycle smooths and how often it visits the coarse levels.
 type cycleKind struct {
 	line  bool
-	gamma int // 1: V, 2: W
+	twice int // levels from this one on visit the next coarser one twice
 }
+
+// pointCycle visits the first coarse grid once in two dimensions, where a
+// second visit costs as much as half a cycle, and all others twice.
+func pointCycle(g *grid.Grid) cycleKind {
+	if g.Dim() == 3 {
+		return cycleKind{twice: 0}
+	}
+	return cycleKind{twice: 1}
+}
+
+// lineCycle is the W-cycle for strong advection and anisotropy.
+var lineCycle = cycleKind{line: true}
 
 // smooth is one sweep of the chosen smoother.
 func (l *level) smooth(kind cycleKind, x, b []float32, reverse bool) {
@@ -235,9 +349,11 @@ func (l *level) solveDense(x, b []float32) {
 		var s float32
 		for r := 0; r < l.lay.Rows; r++ {
 			bb, g := b[l.lay.Row(r):][:nx], row[r*nx:][:nx]
+			var part [4]float32
 			for i := range g {
-				s += float32(g[i] * bb[i])
+				part[i&3] += float32(g[i] * bb[i])
 			}
+			s += (part[0] + part[1]) + (part[2] + part[3])
 		}
 		x[l.lay.Row(k/nx)+k%nx] = s
 	}
@@ -254,20 +370,29 @@ func (h *hierarchy) cycle(k int, x, b []float32, kind cycleKind, zero bool) {
 		l.solveDense(x, b)
 		return
 	}
-	if zero {
-		clear(x)
-	}
 	c := h.levels[k+1]
-	l.smooth(kind, x, b, false)
-	l.restrict(c, x, b)
+	fuse := l.canFuse(c, kind)
+	if fuse && zero {
+		l.down(c, x, b)
+	} else {
+		if zero {
+			clear(x)
+		}
+		l.smooth(kind, x, b, false)
+		l.restrict(c, x, b)
+	}
 	h.cycle(k+1, c.x, c.b, kind, true)
-	if kind.gamma > 1 && c.dense == nil {
+	if k >= kind.twice && c.dense == nil {
 		if c.xs == nil {
 			c.xs, c.bs = make([]float32, len(c.x)), make([]float32, len(c.b))
 		}
 		c.residual(c.bs, c.x, c.b)
 		copy(c.xs, c.x)
 		h.cycleAgain(k+1, kind)
+	}
+	if fuse {
+		l.climb(c, x, b)
+		return
 	}
 	l.prolong(c, x, c.x, false)
 	l.smooth(kind, x, b, true)

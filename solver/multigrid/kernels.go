@@ -54,3 +54,21 @@ func blendRow(t, a, b []float32, u, w float32) {
 		t[i] = float32(u*a[i]) + float32(w*b[i])
 	}
 }
+
+// relaxZero is relaxRow for neighbours that are all zero; the cells of the other
+// colour become zero.
+func relaxZero(x, b []float32, first int) {
+	for i := relaxZeroFast(x, b, first); i < len(x); i++ {
+		x[i] = 0
+		if i&1 == first {
+			x[i] = b[i]
+		}
+	}
+}
+
+// normaliseRow writes v*w in single precision.
+func normaliseRow(dst []float32, v, w []float64) {
+	for i := normaliseFast(dst, v, w); i < len(dst); i++ {
+		dst[i] = float32(v[i] * w[i])
+	}
+}

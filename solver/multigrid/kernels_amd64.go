@@ -10,6 +10,12 @@ var hasAVX2 = cpu.X86.HasAVX2
 func relaxAVX2(x, b *float32, coef, nb *[]float32, pairs, n, first int)
 
 //go:noescape
+func relaxZeroAVX2(x, b *float32, n, first int)
+
+//go:noescape
+func normaliseAVX2(dst *float32, v, w *float64, n int)
+
+//go:noescape
 func residualAVX2(r, x, b, w *float32, coef, nb *[]float32, pairs, n int)
 
 //go:noescape
@@ -21,10 +27,11 @@ func spreadAVX2(f, t *float32, n int, quarter, threeQuarters float32)
 //go:noescape
 func blendAVX2(t, a, b *float32, n int, u, w float32)
 
-// relaxFast, residualFast, pairSumFast, spreadFast and blendFast do the leading
-// part of the portable kernels of the same names with vector instructions, in
-// the same order of operations and without fused multiplication, so the bits
-// are the same. They return how many cells they did.
+// The functions ending in Fast do the leading part of the portable kernels of
+// the same names with vector instructions, in the same order of operations and
+// without fused multiplication, so the bits are the same. They return how many
+// cells they did.
+
 func relaxFast(x, b []float32, coef, nb [][]float32, first int) int {
 	n := len(x) &^ 15
 	if !hasAVX2 || n == 0 {
@@ -68,5 +75,23 @@ func blendFast(t, a, b []float32, u, w float32) int {
 		return 0
 	}
 	blendAVX2(&t[0], &a[0], &b[0], n, u, w)
+	return n
+}
+
+func relaxZeroFast(x, b []float32, first int) int {
+	n := len(x) &^ 7
+	if !hasAVX2 || n == 0 {
+		return 0
+	}
+	relaxZeroAVX2(&x[0], &b[0], n, first)
+	return n
+}
+
+func normaliseFast(dst []float32, v, w []float64) int {
+	n := len(dst) &^ 7
+	if !hasAVX2 || n == 0 {
+		return 0
+	}
+	normaliseAVX2(&dst[0], &v[0], &w[0], n)
 	return n
 }

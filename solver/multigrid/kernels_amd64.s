@@ -67,6 +67,51 @@ relaxloop:
 	VZEROUPPER
 	RET
 
+// func relaxZeroAVX2(x, b *float32, n, first int)
+// x = b in every second cell, 0 in the others, for n a multiple of 8.
+TEXT ·relaxZeroAVX2(SB), NOSPLIT, $0-32
+	MOVQ    x+0(FP), DI
+	MOVQ    b+8(FP), SI
+	MOVQ    n+16(FP), R11
+	MOVQ    first+24(FP), R12
+	LEAQ    lanes<>(SB), BX
+	SHLQ    $2, R12
+	VMOVUPS (BX)(R12*1), Y15
+	XORQ    AX, AX
+
+zeroloop:
+	VANDPS  (SI)(AX*4), Y15, Y0
+	VMOVUPS Y0, (DI)(AX*4)
+	ADDQ    $8, AX
+	CMPQ    AX, R11
+	JLT     zeroloop
+	VZEROUPPER
+	RET
+
+// func normaliseAVX2(dst *float32, v, w *float64, n int)
+// dst = float32(v*w) for n a multiple of 8.
+TEXT ·normaliseAVX2(SB), NOSPLIT, $0-32
+	MOVQ dst+0(FP), DI
+	MOVQ v+8(FP), SI
+	MOVQ w+16(FP), BX
+	MOVQ n+24(FP), R11
+	XORQ AX, AX
+
+normloop:
+	VMOVUPD    (SI)(AX*8), Y0
+	VMOVUPD    32(SI)(AX*8), Y1
+	VMULPD     (BX)(AX*8), Y0, Y0
+	VMULPD     32(BX)(AX*8), Y1, Y1
+	VCVTPD2PSY Y0, X0
+	VCVTPD2PSY Y1, X1
+	VMOVUPS    X0, (DI)(AX*4)
+	VMOVUPS    X1, 16(DI)(AX*4)
+	ADDQ       $8, AX
+	CMPQ       AX, R11
+	JLT        normloop
+	VZEROUPPER
+	RET
+
 // func residualAVX2(r, x, b, w *float32, coef, nb *[]float32, pairs, n int)
 TEXT ·residualAVX2(SB), NOSPLIT, $0-64
 	MOVQ x+8(FP), DI

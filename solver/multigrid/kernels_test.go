@@ -71,6 +71,15 @@ func TestKernelBits(t *testing.T) {
 				t.Fatalf("spread n=%d cell %d: %v %v, want %v %v", n, i, f[2*i], f[2*i+1], lo, hi)
 			}
 		}
+		for first := 0; first < 2; first++ {
+			z := random(n)
+			relaxZero(z, a, first)
+			for i := range z {
+				if i&1 == first && z[i] != a[i] || i&1 != first && z[i] != 0 {
+					t.Fatalf("relaxZero n=%d cell %d", n, i)
+				}
+			}
+		}
 		s := make([]float32, n)
 		blendRow(s, a, b, 0.3, 0.7)
 		for i := range s {

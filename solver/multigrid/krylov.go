@@ -197,7 +197,7 @@ func (s *Solver) bicgstab(ctx context.Context, x, r []float64, tol, unit float64
 			return
 		}
 		if s.slow(st.Iterations-first, norm/firstNorm, tol/firstNorm) {
-			s.kind = cycleKind{line: true, gamma: 2}
+			s.kind = lineCycle
 			return
 		}
 	}

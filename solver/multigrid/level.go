@@ -35,7 +35,7 @@ func newLevel(m *volume.Operator) *level {
 	l := &level{grid: m.Grid, op: m, lay: m.Layout}
 	n := 2 * len(m.Links)
 	for c := 0; c < n; c++ {
-		l.coef = append(l.coef, make([]float32, m.Layout.Len))
+		l.coef = append(l.coef, volume.Float32s(m.Layout.Len))
 		li := c / 2
 		rows := make([]int32, m.Layout.Rows)
 		s := m.Links[li].Step[0]
@@ -51,7 +51,7 @@ func newLevel(m *volume.Operator) *level {
 		}
 		l.shift, l.rows = append(l.shift, s), append(l.rows, rows)
 	}
-	l.x, l.b = make([]float32, m.Layout.Len), make([]float32, m.Layout.Len)
+	l.x, l.b = volume.Float32s(m.Layout.Len), volume.Float32s(m.Layout.Len)
 	d := m.Grid.Dim()
 	l.slabs = m.Grid.Axis(d - 1).Cells()
 	if d == 1 {
@@ -108,10 +108,7 @@ func (l *level) normalise(shift float64, adjoint bool) {
 						rate = link.Back
 					}
 				}
-				co, v := l.coef[c][s:][:n], rate[at:][:n]
-				for i := range co {
-					co[i] = float32(v[i] * inv[i])
-				}
+				normaliseRow(l.coef[c][s:][:n], rate[at:][:n], inv)
 			}
 		}
 	})
@@ -204,8 +201,9 @@ func coarsen(g *grid.Grid) []bool {
 
 const coarsestCells = 300
 
-// assembleLevels discretises all grids from the operator's down to the
-// coarsest.
+// assembleLevels builds the operators of all grids from the given one down to
+// the coarsest: by merging links, or from the coefficients where there are
+// links off the axes.
 func assembleLevels(ctx context.Context, m *volume.Operator, c volume.Coefficients) ([]*level, error) {
 	levels := []*level{newLevel(m)}
 	for g := m.Grid; g.Cells() > coarsestCells; {
@@ -214,7 +212,14 @@ func assembleLevels(ctx context.Context, m *volume.Operator, c volume.Coefficien
 		if cg.Cells() == g.Cells() {
 			break
 		}
-		cm, err := volume.Assemble(ctx, cg, c, volume.Settings{Workers: m.Workers()})
+		fine := levels[len(levels)-1].op
+		var cm *volume.Operator
+		var err error
+		if len(m.Links) == m.Grid.Dim() {
+			cm, err = volume.Coarsen(fine, merge)
+		} else {
+			cm, err = volume.Assemble(ctx, cg, c, volume.Settings{Workers: m.Workers()})
+		}
 		if err != nil {
 			return nil, err
 		}

@@ -44,8 +44,8 @@ type Smoother int
 // The smoothers.
 const (
 	Auto  Smoother = iota // Point first, Line when convergence is slow
-	Point                 // Gauss-Seidel in colours, V-cycle
-	Line                  // zebra line Gauss-Seidel along every axis, W-cycle
+	Point                 // Gauss-Seidel in colours
+	Line                  // zebra line Gauss-Seidel along every axis
 )
 
 // String names the smoother in reports.
@@ -105,9 +105,9 @@ func New(ctx context.Context, m *volume.Operator, c volume.Coefficients, shift f
 			return nil, err
 		}
 	}
-	kind := cycleKind{line: s.Smoother == Line, gamma: 1}
-	if kind.line {
-		kind.gamma = 2
+	kind := pointCycle(m.Grid)
+	if s.Smoother == Line {
+		kind = lineCycle
 	}
 	h, err := newHierarchy(ctx, m, c, shift, adjoint, kind)
 	if err != nil {

@@ -69,7 +69,7 @@ func (l *Layout) step(i, di, d int) int {
 }
 
 // Vector allocates a zero vector.
-func (l *Layout) Vector() []float64 { return make([]float64, l.Len) }
+func (l *Layout) Vector() []float64 { return Float64s(l.Len) }
 
 // Wrap copies the ends of row r of v into its ghost cells when the first axis
 // is periodic.

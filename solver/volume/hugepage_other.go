@@ -1,0 +1,7 @@
+//go:build !linux
+
+package volume
+
+import "unsafe"
+
+func adviseHuge(unsafe.Pointer, int) {}
