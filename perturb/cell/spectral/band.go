@@ -6,6 +6,8 @@ import (
 	"math"
 	"sort"
 
+	"gonum.org/v1/gonum/mat"
+
 	"epslim/perturb/cell/quadrature/fast"
 )
 
@@ -25,9 +27,9 @@ type banded struct {
 
 func (b *banded) width() int { return b.lower + b.upper + 1 }
 
-// factorize tries the reverse Cuthill-McKee order and the given ones and takes
+// factorizeBand tries the reverse Cuthill-McKee order and the given ones and takes
 // that with the narrowest band.
-func factorize(ctx context.Context, a sparse, orders ...[]int) (*banded, error) {
+func factorizeBand(ctx context.Context, a sparse, orders [][]int) (*banded, error) {
 	n := len(a)
 	best := cuthillMcKee(a)
 	cost := bandCost(a, best)
@@ -69,6 +71,61 @@ func factorize(ctx context.Context, a sparse, orders ...[]int) (*banded, error) 
 	return b, b.eliminate(ctx)
 }
 
+// factors is a factorized matrix.
+type factors interface {
+	solve(rhs []float64) []float64
+	solveTransposed(rhs []float64) []float64
+	// condition is a lower bound on the condition number, from the pivots.
+	condition() float64
+}
+
+// factorize takes a dense factorization where the band would hold most of the
+// matrix anyway.
+func factorize(ctx context.Context, a sparse, orders ...[]int) (factors, error) {
+	n := len(a)
+	if a.entries() > n*n/3 && n > 50 {
+		if n > 5000 {
+			return nil, fast.ErrBudget
+		}
+		return newDense(a)
+	}
+	return factorizeBand(ctx, a, orders)
+}
+
+// denseLU is gonum's factorization.
+type denseLU struct {
+	n  int
+	lu mat.LU
+}
+
+func newDense(a sparse) (*denseLU, error) {
+	n := len(a)
+	m := mat.NewDense(n, n, nil)
+	for i, row := range a {
+		for _, e := range row {
+			m.Set(i, e.col, e.v)
+		}
+	}
+	d := &denseLU{n: n}
+	d.lu.Factorize(m)
+	if math.IsInf(d.lu.Cond(), 1) {
+		return nil, errSingular
+	}
+	return d, nil
+}
+
+func (d *denseLU) condition() float64 { return d.lu.Cond() }
+
+func (d *denseLU) solve(rhs []float64) []float64           { return d.run(rhs, false) }
+func (d *denseLU) solveTransposed(rhs []float64) []float64 { return d.run(rhs, true) }
+
+func (d *denseLU) run(rhs []float64, trans bool) []float64 {
+	var x mat.VecDense
+	// A condition error comes with the solution; the caller judges it.
+	_ = d.lu.SolveVecTo(&x, trans, mat.NewVecDense(d.n, rhs))
+	return x.RawVector().Data
+}
+
 // bandCost is the product lower*(lower+upper) that the elimination costs per
 // row.
 func bandCost(a sparse, order []int) float64 {
@@ -84,32 +141,6 @@ func bandCost(a sparse, order []int) float64 {
 		}
 	}
 	return float64(lower) * float64(lower+upper)
-}
-
-// tensorOrders are the orders of a tensor basis in which one axis varies
-// slowest.
-func tensorOrders(sizes []int) [][]int {
-	var out [][]int
-	n := 1
-	for _, s := range sizes {
-		n *= s
-	}
-	for k := range sizes {
-		inner := 1
-		for _, s := range sizes[k+1:] {
-			inner *= s
-		}
-		order := make([]int, 0, n)
-		for v := 0; v < sizes[k]; v++ {
-			for i := 0; i < n; i++ {
-				if i/inner%sizes[k] == v {
-					order = append(order, i)
-				}
-			}
-		}
-		out = append(out, order)
-	}
-	return out
 }
 
 func (b *banded) eliminate(ctx context.Context) error {
@@ -156,6 +187,8 @@ func (b *banded) eliminate(ctx context.Context) error {
 	b.smallest = small / large
 	return nil
 }
+
+func (b *banded) condition() float64 { return 1 / b.smallest }
 
 // solve returns x with A x = rhs.
 func (b *banded) solve(rhs []float64) []float64 {

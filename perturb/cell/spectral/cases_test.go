@@ -141,21 +141,6 @@ func TestLangevinOscillator(t *testing.T) {
 	check(t, "<q Phi>", cell, g*temp/(k*k), 1e-12)
 }
 
-// doubleWellInertia is dq = p, dp = (q - q^3 - g p) + sqrt(2 g T) dW.
-func doubleWellInertia(g, temp float64) *fast.Problem {
-	return &fast.Problem{Domains: []fast.Domain{line, line},
-		Drift:     []fast.Coefficient{sum("p", tm(1, pow(1, 1))), sum("F", tm(1, pow(0, 1)), tm(-1, pow(0, 3)), tm(-g, pow(1, 1)))},
-		Diffusion: diagonal(fast.Constant(0), fast.Constant(2*g*temp))}
-}
-
-func TestDoubleWellWithInertia(t *testing.T) {
-	for _, c := range []struct{ g, temp float64 }{{1, 0.5}, {0.5, 0.3}} {
-		begin := time.Now()
-		mean, cell, s := solve(t, doubleWellInertia(c.g, c.temp), sum("q", tm(1, pow(0, 1))), sum("q", tm(1, pow(0, 1))))
-		t.Log(mean, cell, s.Report(), time.Since(begin))
-	}
-}
-
 func TestRefusals(t *testing.T) {
 	free := &fast.Problem{Domains: []fast.Domain{line, line},
 		Drift:     []fast.Coefficient{sum("p", tm(1, pow(1, 1))), sum("-p", tm(-0.7, pow(1, 1)))},

@@ -1,6 +1,7 @@
 package spectral
 
 import (
+	"fmt"
 	"math"
 
 	"epslim/perturb/cell/quadrature/fast"
@@ -106,6 +107,23 @@ func (l *level) onGrid(c *fast.Coefficient) ([]float64, error) {
 	return h, nil
 }
 
+// gridNorm is the square of the norm of a function given at the nodes.
+func (l *level) gridNorm(h []float64) float64 {
+	w := []float64{1}
+	for _, s := range l.spaces {
+		r := make([]float64, s.q)
+		for j, x := range s.root {
+			r[j] = x * x
+		}
+		w = outer(w, r)
+	}
+	var n float64
+	for j, v := range h {
+		n += w[j] * v * v
+	}
+	return n
+}
+
 // gridApply is coefficient times derivative of u, projected.
 func (l *level) gridApply(t *fast.OperatorTerm, u []float64) ([]float64, error) {
 	h, err := l.onGrid(&t.Coefficient)
@@ -125,58 +143,100 @@ func (l *level) gridApply(t *fast.OperatorTerm, u []float64) ([]float64, error) 
 	return l.fromGrid(g), nil
 }
 
+// expanded writes a term of the generator whose coefficient is a plain function
+// as Kronecker products, by expanding the coefficient in the basis itself; ok
+// is false when that takes too many functions.
+func (l *level) expanded(t *fast.OperatorTerm) (out []product, ok bool, err error) {
+	if l.wallOf(*t) >= 0 {
+		return nil, false, nil
+	}
+	h, err := l.onGrid(&t.Coefficient)
+	if err != nil {
+		return nil, false, err
+	}
+	c := l.fromGrid(h)
+	full := l.gridNorm(h)
+	if full-dot(c, c) > 1e-14*full {
+		return nil, false, nil
+	}
+	index := make([]int, len(l.spaces))
+	for i, v := range c {
+		if math.Abs(v) < 1e-14*math.Sqrt(full) {
+			continue
+		}
+		if len(out) == 150 {
+			return nil, false, nil
+		}
+		l.set.split(i, index)
+		p := product{c: v}
+		for k, s := range l.spaces {
+			m := s.timesBasis(index[k])
+			if d := s.derivative(s.orders(t.Order)); d != nil {
+				m = m.times(d)
+			}
+			p.factors = append(p.factors, m)
+		}
+		out = append(out, p)
+	}
+	return out, true, nil
+}
+
+// timesBasis is multiplication by a basis function.
+func (s *space) timesBasis(i int) sparse {
+	key := fmt.Sprint("basis ", i)
+	if m, ok := s.cache[key]; ok {
+		return m
+	}
+	s.ready()
+	h := make([]float64, s.q)
+	for j := range h {
+		h[j] = s.basis[j*s.n+i] / s.root[j]
+	}
+	m := s.project(h)
+	s.cache[key] = m
+	return m
+}
+
 // gridMatrix is the matrix of a term of the generator whose coefficient is not
 // a sum of products.
 func (l *level) gridMatrix(t *fast.OperatorTerm) (sparse, error) {
 	if k := l.wallOf(*t); k >= 0 {
 		return nil, &fast.Unsupported{Method: "spectral", Reason: "noise of the reflected variable " + l.spaces[k].domain.Name(0) + " that is not a sum of products"}
 	}
-	if len(l.spaces) > 2 || l.n > 2600 {
+	if len(l.spaces) > 2 || l.n > 3600 || len(l.set.keep) > 2600 {
 		return nil, fast.ErrBudget
 	}
 	h, err := l.onGrid(&t.Coefficient)
 	if err != nil {
 		return nil, err
 	}
-	var m sparse
 	if len(l.spaces) == 1 {
-		m = l.spaces[0].project(h)
-	} else {
-		m = l.gridProduct(h)
+		s := l.spaces[0]
+		return fromDense(s.n, s.pair(h, s.atNodes(s.orders(t.Order)))), nil
 	}
-	terms := product{c: 1}
-	for _, s := range l.spaces {
-		d := s.derivative(s.orders(t.Order))
-		if d == nil {
-			d = identity(s.n)
-		}
-		terms.factors = append(terms.factors, d)
-	}
-	return m.times(kronecker(l.sizes, []product{terms})), nil
+	return l.gridProduct(h, t.Order), nil
 }
 
-// gridProduct is multiplication by h in a product of two spaces: for each node
+// gridProduct is <phi_m, h d phi_n> in a product of two spaces: for each node
 // of the first the matrix in the second, then summed with the first's basis.
-func (l *level) gridProduct(h []float64) sparse {
+func (l *level) gridProduct(h []float64, order []int) sparse {
 	a, b := l.spaces[0], l.spaces[1]
-	dense := make([]float64, l.n*l.n)
+	da, db := a.atNodes(a.orders(order)), b.atNodes(b.orders(order))
+	n := len(l.set.keep)
+	dense := make([]float64, n*n)
 	for j := 0; j < a.q; j++ {
-		inner := b.project(h[j*b.q : (j+1)*b.q])
-		row := a.basis[j*a.n : (j+1)*a.n]
-		for r1, x := range row {
-			for c1, y := range row {
-				w := x * y
-				if w == 0 {
-					continue
-				}
-				for r2, es := range inner {
-					base := (r1*b.n+r2)*l.n + c1*b.n
-					for _, e := range es {
-						dense[base+e.col] += w * e.v
-					}
-				}
+		inner := b.pair(h[j*b.q:(j+1)*b.q], db)
+		left, right := a.basis[j*a.n:(j+1)*a.n], da[j*a.n:(j+1)*a.n]
+		for r, full := range l.set.keep {
+			x := left[full/b.n]
+			if x == 0 {
+				continue
+			}
+			row, in := dense[r*n:(r+1)*n], inner[full%b.n*b.n:]
+			for c, other := range l.set.keep {
+				row[c] += x * right[other/b.n] * in[other%b.n]
 			}
 		}
 	}
-	return fromDense(l.n, dense)
+	return fromDense(n, dense)
 }

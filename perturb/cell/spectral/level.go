@@ -11,16 +11,25 @@ import (
 // maxEntries bounds the memory of a factorization (in float64).
 const maxEntries = 40_000_000
 
-// level is the fast problem in one tensor basis. A function is its
-// coefficient vector; the last space varies fastest.
+// vector is a function: its coefficients, the last space varying fastest.
+type vector struct {
+	c []float64
+	// lost is the norm of the part that the basis cannot hold, as far as it is
+	// known.
+	lost float64
+}
+
+// level is the fast problem in one tensor basis.
 type level struct {
 	p      *fast.Problem
 	spaces []*space
 	sizes  []int
-	n      int
-	matrix sparse
-	lu     *banded
+	n      int // functions of the full tensor; vectors have that length
+	set    *indexSet
+	matrix sparse // on the index set
+	lu     factors
 	rho    []float64
+	outer  []bool // functions near the edge of the basis
 }
 
 func newLevel(ctx context.Context, p *fast.Problem, spaces []*space) (*level, error) {
@@ -29,9 +38,11 @@ func newLevel(ctx context.Context, p *fast.Problem, spaces []*space) (*level, er
 		l.sizes = append(l.sizes, s.n)
 		l.n *= s.n
 	}
-	if l.n > 60000 {
+	if l.n > 400000 {
 		return nil, fast.ErrBudget
 	}
+	l.set = newIndexSet(spaces)
+	l.markOuter()
 	m, err := l.generator(ctx)
 	if err != nil {
 		return nil, err
@@ -49,29 +60,28 @@ func newLevel(ctx context.Context, p *fast.Problem, spaces []*space) (*level, er
 	}
 	m[0] = append([]entry{{0, -1}}, m[0]...)
 	l.matrix = m
-	if l.lu, err = factorize(ctx, m, tensorOrders(l.sizes)...); err != nil {
+	if l.lu, err = factorize(ctx, m, l.set.orders()...); err != nil {
 		if err == errSingular {
 			return nil, l.reducible()
 		}
 		return nil, err
 	}
-	if l.lu.smallest < 1e-16 {
+	if l.lu.condition() > 1e16 {
 		return nil, l.reducible()
 	}
-	rhs := make([]float64, l.n)
+	rhs := make([]float64, len(m))
 	rhs[0] = -1
-	l.rho = l.lu.solveTransposed(rhs)
+	rho := l.lu.solveTransposed(rhs)
 	// One step of iterative refinement.
-	r := make([]float64, l.n)
-	copy(r, rhs)
 	for i, row := range m {
 		for _, e := range row {
-			r[e.col] -= e.v * l.rho[i]
+			rhs[e.col] -= e.v * rho[i]
 		}
 	}
-	for i, v := range l.lu.solveTransposed(r) {
-		l.rho[i] += v
+	for i, v := range l.lu.solveTransposed(rhs) {
+		rho[i] += v
 	}
+	l.rho = l.set.scatter(rho)
 	return l, nil
 }
 
@@ -96,6 +106,14 @@ func (l *level) generator(ctx context.Context) (sparse, error) {
 		}
 		parts, ok := separate(&op[i].Coefficient, l.p)
 		if !ok {
+			more, ok, err := l.expanded(&op[i])
+			if err != nil {
+				return nil, err
+			}
+			if ok {
+				terms = append(terms, more...)
+				continue
+			}
 			m, err := l.gridMatrix(&op[i])
 			if err != nil {
 				return nil, err
@@ -109,7 +127,7 @@ func (l *level) generator(ctx context.Context) (sparse, error) {
 		}
 		terms = append(terms, l.products(parts, op[i].Order, true)...)
 	}
-	m := kronecker(l.sizes, terms)
+	m := kronecker(l.set, terms)
 	if dense != nil {
 		m = m.plus(1, dense)
 	}
@@ -235,19 +253,39 @@ func (l *level) Coefficient(c *fast.Coefficient) (fast.Vector, error) {
 		if err != nil {
 			return nil, err
 		}
-		return l.fromGrid(h), nil
+		v := &vector{c: l.fromGrid(h)}
+		if full, kept := l.gridNorm(h), dot(v.c, v.c); full-kept > 1e-14*full {
+			v.lost = math.Sqrt(full - kept)
+		}
+		return v, nil
 	}
-	out := make([]float64, l.n)
+	out := &vector{c: make([]float64, l.n)}
 	for _, t := range terms {
 		v := []float64{t.Constant}
+		kept, full := 1.0, 1.0
 		for _, s := range l.spaces {
-			v = outer(v, s.expand(t.Factors))
+			e, norm := s.expand(t.Factors)
+			v = outer(v, e)
+			kept *= dot(e, e)
+			full *= norm
 		}
 		for i, x := range v {
-			out[i] += x
+			out.c[i] += x
+		}
+		// Squares below rounding are no loss.
+		if loss := full - kept; loss > 1e-14*full {
+			out.lost += math.Abs(t.Constant) * math.Sqrt(loss)
 		}
 	}
-	return out, finite(out, c)
+	return out, finite(out.c, c)
+}
+
+func dot(a, b []float64) float64 {
+	var s float64
+	for i, x := range a {
+		s += x * b[i]
+	}
+	return s
 }
 
 func finite(v []float64, c *fast.Coefficient) error {
@@ -271,11 +309,13 @@ func outer(a, b []float64) []float64 {
 
 // Sum implements fast.Level.
 func (l *level) Sum(factors []float64, u []fast.Vector) (fast.Vector, error) {
-	out := make([]float64, l.n)
+	out := &vector{c: make([]float64, l.n)}
 	for k, w := range u {
-		for i, x := range w.([]float64) {
-			out[i] += factors[k] * x
+		x := w.(*vector)
+		for i, v := range x.c {
+			out.c[i] += factors[k] * v
 		}
+		out.lost += math.Abs(factors[k]) * x.lost
 	}
 	return out, nil
 }
@@ -304,7 +344,8 @@ func (l *level) along(m sparse, u []float64, axis int) []float64 {
 
 // Apply implements fast.Level.
 func (l *level) Apply(op fast.Operator, w fast.Vector) (fast.Vector, error) {
-	u := w.([]float64)
+	in := w.(*vector)
+	u := in.c
 	out := make([]float64, l.n)
 	for i := range op {
 		for _, s := range l.spaces {
@@ -333,7 +374,16 @@ func (l *level) Apply(op fast.Operator, w fast.Vector) (fast.Vector, error) {
 			}
 		}
 	}
-	return out, nil
+	return &vector{c: out, lost: in.lost * ratio(out, u)}, nil
+}
+
+// ratio is |a|/|b|, the factor by which what was lost is taken to grow.
+func ratio(a, b []float64) float64 {
+	n := dot(b, b)
+	if n == 0 {
+		return 1
+	}
+	return math.Sqrt(dot(a, a) / n)
 }
 
 func total(order []int) int {
@@ -346,54 +396,85 @@ func total(order []int) int {
 
 // Product implements fast.Level.
 func (l *level) Product(a, b fast.Vector) (fast.Vector, error) {
-	x, y := l.toGrid(a.([]float64)), l.toGrid(b.([]float64))
+	u, v := a.(*vector), b.(*vector)
+	x, y := l.toGrid(u.c), l.toGrid(v.c)
 	for i := range x {
 		x[i] *= y[i]
 	}
-	return l.fromGrid(x), nil
+	return &vector{c: l.fromGrid(x), lost: u.lost*math.Sqrt(dot(v.c, v.c)) + v.lost*math.Sqrt(dot(u.c, u.c))}, nil
 }
 
-// Mean implements fast.Level.
+// Mean implements fast.Level. Its error is the product of what lies near the
+// edge of the basis in the function and in the density, which is what the cut
+// has left out of their inner product, and the part of the function known to
+// be lost.
 func (l *level) Mean(w fast.Vector) (fast.Value, error) {
-	u := w.([]float64)
-	var s, nu, nr float64
-	for i, x := range u {
-		s += l.rho[i] * x
-		nu += x * x
-		nr += l.rho[i] * l.rho[i]
+	u := w.(*vector)
+	scale := math.Hypot(math.Sqrt(dot(u.c, u.c)), u.lost)
+	norm := math.Sqrt(dot(l.rho, l.rho))
+	v := fast.Value{Value: dot(l.rho, u.c), Scale: scale, Rounding: 1e-15 * scale * norm}
+	edge := l.edge(l.rho)
+	v.Error = v.Rounding + edge*(l.edge(u.c)+u.lost)
+	if scale > 0 {
+		v.Error += u.lost * u.lost / scale
 	}
-	scale := math.Sqrt(nu)
-	r := 1e-15 * scale * math.Sqrt(nr)
-	return fast.Value{Value: s, Scale: scale, Rounding: r, Error: r}, nil
+	return v, nil
+}
+
+// edge is the norm of the coefficients in the outer tenth of the index set and
+// outside it.
+func (l *level) edge(u []float64) float64 {
+	var s float64
+	for i, x := range u {
+		if l.outer[i] {
+			s += x * x
+		}
+	}
+	return math.Sqrt(s)
+}
+
+// markOuter finds the outer tenth.
+func (l *level) markOuter() {
+	l.outer = make([]bool, l.n)
+	index := make([]int, len(l.spaces))
+	for i := range l.outer {
+		l.set.split(i, index)
+		l.outer[i] = share(l.spaces, index) > 0.9
+	}
 }
 
 // Solve implements fast.Level.
 func (l *level) Solve(w fast.Vector) (fast.Vector, error) {
-	u := w.([]float64)
-	rhs := make([]float64, l.n)
-	for i, x := range u {
-		rhs[i] = -x
+	in := w.(*vector)
+	u := in.c
+	rhs := l.set.gather(u)
+	for i := range rhs {
+		rhs[i] = -rhs[i]
 	}
-	phi := l.lu.solve(rhs)
-	r := l.matrix.apply(phi)
+	part := l.lu.solve(rhs)
+	r := l.matrix.apply(part)
 	for i := range r {
 		r[i] = rhs[i] - r[i]
 	}
 	for i, v := range l.lu.solve(r) {
-		phi[i] += v
+		part[i] += v
 	}
+	phi := l.set.scatter(part)
 	phi[0] = 0
 	var mean float64
 	for i, x := range phi {
 		mean += l.rho[i] * x
 	}
 	phi[0] = -mean
-	return phi, nil
+	return &vector{c: phi, lost: in.lost * ratio(phi, u)}, nil
 }
 
 // At implements fast.Level.
 func (l *level) At(w fast.Vector, y [][]float64) ([]float64, error) {
-	u := w.([]float64)
+	return l.at(w.(*vector).c, y), nil
+}
+
+func (l *level) at(u []float64, y [][]float64) []float64 {
 	out := make([]float64, len(y[0]))
 	for k := range out {
 		v := u
@@ -407,7 +488,7 @@ func (l *level) At(w fast.Vector, y [][]float64) ([]float64, error) {
 		}
 		out[k] = v[0]
 	}
-	return out, nil
+	return out
 }
 
 // contract sums over the last axis.
@@ -425,10 +506,7 @@ func contract(v, b []float64) []float64 {
 
 // Density implements fast.Level.
 func (l *level) Density(y [][]float64) ([]float64, error) {
-	out, err := l.At(l.rho, y)
-	if err != nil {
-		return nil, err
-	}
+	out := l.at(l.rho, y)
 	for k := range out {
 		for _, s := range l.spaces {
 			point := make([]float64, len(s.deriv))
@@ -450,8 +528,8 @@ func (l *level) String() string {
 		}
 		s += fmt.Sprint(x.n)
 	}
-	return s + " basis functions"
+	return fmt.Sprintf("%s basis, %d functions in use", s, len(l.set.keep))
 }
 
 // Unknowns implements fast.Level.
-func (l *level) Unknowns() int { return l.n }
+func (l *level) Unknowns() int { return len(l.set.keep) }

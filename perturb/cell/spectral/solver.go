@@ -20,9 +20,9 @@ type sizes struct{ polynomial, modes, degree int }
 
 var ladder = [...][]sizes{
 	1: {{24, 16, 8}, {40, 28, 12}, {60, 48, 18}, {90, 96, 26}, {130, 200, 34}, {180, 400, 40}},
-	2: {{14, 6, 5}, {22, 10, 8}, {34, 16, 12}, {48, 24, 16}, {64, 34, 20}, {84, 44, 24}},
-	3: {{8, 3, 3}, {12, 5, 5}, {16, 7, 7}, {20, 9, 9}, {25, 12, 11}},
-	4: {{5, 2, 2}, {7, 3, 3}, {9, 4, 4}, {11, 5, 5}},
+	2: {{16, 6, 6}, {26, 10, 9}, {40, 16, 14}, {58, 24, 18}, {80, 36, 24}, {110, 50, 30}},
+	3: {{10, 4, 4}, {16, 6, 6}, {22, 9, 9}, {30, 12, 12}, {38, 16, 15}},
+	4: {{6, 3, 3}, {9, 4, 4}, {12, 6, 6}, {15, 7, 7}},
 }
 
 // New prepares a problem of any number of fast variables that a tensor basis
@@ -93,8 +93,10 @@ func (m *maker) spaces(z sizes) ([]*space, error) {
 	return out, nil
 }
 
-// adjust compares mean and deviation of every coordinate on a line with those
-// of its weight, at low resolution, and moves and stretches weights that miss.
+// adjust compares mean, deviation and kurtosis of every coordinate on a line
+// with those of its weight, at low resolution; it moves and stretches weights
+// that miss and replaces those whose tails are too light, for which the
+// expansion would not converge.
 func (m *maker) adjust(ctx context.Context) error {
 	if m.f.exact || len(m.p.Domains) == 1 {
 		return nil
@@ -110,14 +112,25 @@ func (m *maker) adjust(ctx context.Context) error {
 			if m.f.domain(i).Kind != fast.Line {
 				continue
 			}
-			mean, sd := l.moments(i)
+			mean, sd, tail := l.moments(i)
 			wm, ws := m.f.laws[i].moments()
-			if math.IsNaN(sd) || sd <= 0 || math.IsInf(sd, 0) {
+			if !(sd > 0) || math.IsInf(sd, 0) {
 				continue
 			}
-			if math.Abs(mean-wm) > 0.3*ws || sd > 1.3*ws || sd < ws/1.3 {
+			// A weight that is somewhat too wide is safe; one with tails lighter
+			// than those of the law is not, so shrinking is the last resort.
+			if math.Abs(mean-wm) > 0.3*ws || sd > 1.3*ws || sd < ws/4 {
 				scale := sd / ws
+				if scale > 0.25 {
+					scale = math.Max(1, scale)
+				}
 				m.f.laws[i] = m.f.laws[i].affine(mean-scale*wm, scale)
+				changed = true
+			}
+			if wt := m.f.laws[i].kurtosis(); tail > wt+0.4 && tail > 3 {
+				if err := m.f.hyperbolic(ctx, i, mean, sd, tail); err != nil {
+					return err
+				}
 				changed = true
 			}
 		}
@@ -128,17 +141,24 @@ func (m *maker) adjust(ctx context.Context) error {
 	return nil
 }
 
-// moments returns mean and deviation of a coordinate under the computed law.
-func (l *level) moments(i int) (mean, sd float64) {
+// moments returns mean, deviation and kurtosis of a coordinate under the
+// computed law.
+func (l *level) moments(i int) (mean, sd, kurtosis float64) {
 	avg := func(p float64) float64 {
 		c := fast.SumOf("y", fast.Term{Constant: 1, Factors: []fast.Factor{{Coordinate: i, Kind: fast.Power, P: p}}})
 		v, err := l.Coefficient(&c)
 		if err != nil {
 			return math.NaN()
 		}
-		m, _ := l.Mean(v)
+		m, err := l.Mean(v)
+		if err != nil {
+			return math.NaN()
+		}
 		return m.Value
 	}
 	mean = avg(1)
-	return mean, math.Sqrt(avg(2) - mean*mean)
+	m2, m3, m4 := avg(2), avg(3), avg(4)
+	v := m2 - mean*mean
+	fourth := m4 - 4*mean*m3 + 6*mean*mean*m2 - 3*mean*mean*mean*mean
+	return mean, math.Sqrt(v), fourth / (v * v)
 }

@@ -111,6 +111,16 @@ func (m *measure) moments() (mean, sd float64) {
 	return mean, math.Sqrt(sd)
 }
 
+func (m *measure) kurtosis() float64 {
+	mean, sd := m.moments()
+	var s float64
+	for i, y := range m.y {
+		d := (y - mean) / sd
+		s += m.w[i] * d * d * d * d
+	}
+	return s
+}
+
 // stieltjes returns the recurrence of the orthonormal polynomials of a
 // measure: y p_k = b_{k+1} p_{k+1} + a_k p_k + b_k p_{k-1}.
 func stieltjes(m *measure, n int) (a, b []float64) {
@@ -216,6 +226,17 @@ func recurrence(a, b []float64, n int, y float64) (p, dp []float64) {
 	return p, dp
 }
 
+// degree of a basis function: of the polynomial, the mode or the harmonic.
+func (s *space) degree(i int) int {
+	switch {
+	case s.domain.Kind == fast.Sphere:
+		return int(math.Sqrt(float64(i) + 0.5))
+	case s.domain.IsPeriodic():
+		return (i + 1) / 2
+	}
+	return i
+}
+
 // ready makes sure that the quadrature nodes exist.
 func (s *space) ready() {
 	if s.fill != nil {
@@ -283,23 +304,45 @@ func (s *space) operator(factors []fast.Factor, order []int) sparse {
 }
 
 // project is the matrix of multiplication by h, given at the nodes.
-func (s *space) project(h []float64) sparse {
+func (s *space) project(h []float64) sparse { return fromDense(s.n, s.pair(h, s.basis)) }
+
+// pair is <phi_m, h psi_n> for functions psi given at the nodes.
+func (s *space) pair(h, psi []float64) []float64 {
 	n := s.n
 	a := make([]float64, n*n)
 	for j, v := range h {
-		row := s.basis[j*n : (j+1)*n]
-		for r, x := range row {
+		right := psi[j*n : (j+1)*n]
+		for r, x := range s.basis[j*n : (j+1)*n] {
 			x *= v
 			if x == 0 {
 				continue
 			}
 			out := a[r*n : (r+1)*n]
-			for c, y := range row {
+			for c, y := range right {
 				out[c] += x * y
 			}
 		}
 	}
-	return fromDense(n, a)
+	return a
+}
+
+// atNodes are the derivatives of the basis at the nodes.
+func (s *space) atNodes(order []int) []float64 {
+	s.ready()
+	d := s.derivative(order)
+	if d == nil {
+		return s.basis
+	}
+	out := make([]float64, len(s.basis))
+	for j := 0; j < s.q; j++ {
+		row, dst := s.basis[j*s.n:(j+1)*s.n], out[j*s.n:(j+1)*s.n]
+		for m, es := range d {
+			for _, e := range es {
+				dst[e.col] += row[m] * e.v
+			}
+		}
+	}
+	return out
 }
 
 // derivative is the matrix of a derivative; nil for none. On a sphere
@@ -419,13 +462,14 @@ func powers(factors []fast.Factor, n int) ([]int, bool) {
 	return p, true
 }
 
-// expand is the coefficient vector of a product of factors.
-func (s *space) expand(factors []fast.Factor) []float64 {
+// expand is the coefficient vector of a product of factors and the square of
+// the norm of the product itself.
+func (s *space) expand(factors []fast.Factor) (c []float64, norm float64) {
 	mine, _, _ := s.own(factors)
 	out := make([]float64, s.n)
 	if len(mine) == 0 {
 		out[0] = 1
-		return out
+		return out, 1
 	}
 	if p, ok := powers(mine, len(s.deriv)); ok && s.multiply != nil {
 		for i, row := range s.multiply(p) {
@@ -433,13 +477,17 @@ func (s *space) expand(factors []fast.Factor) []float64 {
 				out[i] = row[0].v
 			}
 		}
-		return out
+		if d := total(p); d < int(math.Sqrt(float64(s.n))) {
+			return out, dot(out, out)
+		}
 	}
+	clear(out)
 	for j, h := range s.sample(mine) {
 		h *= s.root[j]
+		norm += h * h
 		for m, v := range s.basis[j*s.n : (j+1)*s.n] {
 			out[m] += h * v
 		}
 	}
-	return out
+	return out, norm
 }

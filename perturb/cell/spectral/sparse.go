@@ -134,18 +134,20 @@ type product struct {
 	factors []sparse
 }
 
-// kronecker adds up products; the last space varies fastest.
-func kronecker(sizes []int, terms []product) sparse {
-	n := 1
-	for _, s := range sizes {
-		n *= s
-	}
-	out := newSparse(n)
-	acc, seen := make([]float64, n), make([]bool, n)
-	index := make([]int, len(sizes))
-	for i := 0; i < n; i++ {
+// kronecker adds up products, restricted to the basis functions of an index
+// set.
+func kronecker(set *indexSet, terms []product) sparse {
+	out := newSparse(len(set.keep))
+	acc, seen := make([]float64, len(out)), make([]bool, len(out))
+	index := make([]int, len(set.sizes))
+	for i, full := range set.keep {
+		set.split(full, index)
 		var cols []int
-		add := func(c int, v float64) {
+		add := func(full int, v float64) {
+			c := set.place[full]
+			if c < 0 {
+				return
+			}
 			if !seen[c] {
 				seen[c] = true
 				cols = append(cols, c)
@@ -153,7 +155,7 @@ func kronecker(sizes []int, terms []product) sparse {
 			acc[c] += v
 		}
 		for _, t := range terms {
-			walk(t.factors, sizes, index, 0, 0, t.c, add)
+			walk(t.factors, set.sizes, index, 0, 0, t.c, add)
 		}
 		sort.Ints(cols)
 		var size float64
@@ -165,12 +167,6 @@ func kronecker(sizes []int, terms []product) sparse {
 				out[i] = append(out[i], entry{c, acc[c]})
 			}
 			acc[c], seen[c] = 0, false
-		}
-		for k := len(sizes) - 1; k >= 0; k-- {
-			if index[k]++; index[k] < sizes[k] {
-				break
-			}
-			index[k] = 0
 		}
 	}
 	return out
@@ -184,4 +180,90 @@ func walk(factors []sparse, sizes, index []int, k, col int, v float64, add func(
 	for _, e := range factors[k][index[k]] {
 		walk(factors, sizes, index, k+1, col*sizes[k]+e.col, v*e.v, add)
 	}
+}
+
+// indexSet is the part of a tensor basis that is used: the functions whose
+// degrees, each relative to the largest of its space, add up to little more than one.
+// For one space that is all of it.
+type indexSet struct {
+	sizes []int
+	full  int
+	keep  []int // positions in the full tensor, in order
+	place []int // the inverse, -1 outside the set
+}
+
+func newIndexSet(spaces []*space) *indexSet {
+	s := &indexSet{full: 1}
+	for _, sp := range spaces {
+		s.sizes = append(s.sizes, sp.n)
+		s.full *= sp.n
+	}
+	s.place = make([]int, s.full)
+	index := make([]int, len(spaces))
+	for i := range s.place {
+		s.split(i, index)
+		if share(spaces, index) <= 1+1e-12 {
+			s.place[i] = len(s.keep)
+			s.keep = append(s.keep, i)
+		} else {
+			s.place[i] = -1
+		}
+	}
+	return s
+}
+
+// headroom lets the highest degrees of one space meet a few of the others: an
+// operator without noise in one variable, such as w d/dtheta, would otherwise
+// have nothing to couple the corner of the set to.
+const headroom = 1.12
+
+func share(spaces []*space, index []int) float64 {
+	sum := 0.0
+	for k, sp := range spaces {
+		sum += float64(sp.degree(index[k])) / float64(sp.degree(sp.n-1))
+	}
+	if len(spaces) > 1 {
+		sum /= headroom
+	}
+	return sum
+}
+
+func (s *indexSet) split(i int, index []int) {
+	for k := len(s.sizes) - 1; k >= 0; k-- {
+		index[k] = i % s.sizes[k]
+		i /= s.sizes[k]
+	}
+}
+
+// orders are those in which one axis varies slowest, as positions in the set.
+func (s *indexSet) orders() [][]int {
+	var out [][]int
+	index := make([]int, len(s.sizes))
+	for k := range s.sizes {
+		order, key := make([]int, len(s.keep)), make([]int, len(s.keep))
+		for i, full := range s.keep {
+			s.split(full, index)
+			order[i], key[i] = i, index[k]
+		}
+		sort.SliceStable(order, func(a, b int) bool { return key[order[a]] < key[order[b]] })
+		out = append(out, order)
+	}
+	return out
+}
+
+// gather takes the coefficients in the set; scatter puts them back.
+func (s *indexSet) gather(full []float64) []float64 {
+	out := make([]float64, len(s.keep))
+	for i, f := range s.keep {
+		out[i] = full[f]
+	}
+	return out
+}
+
+func (s *indexSet) scatter(part []float64) []float64 {
+	out := make([]float64, s.full)
+	for i, f := range s.keep {
+		out[f] = part[i]
+	}
+	return out
 }

@@ -230,6 +230,34 @@ func (f *fitter) gaussian(ctx context.Context, i int, mean, sd float64) error {
 		fmt.Sprintf("Gaussian with mean %.4g and deviation %.4g", mean, sd))
 }
 
+// hyperbolic takes the law exp(-a sqrt(d^2+(y-mean)^2)), whose tails are
+// exponential, with a given deviation and (up to 6) kurtosis.
+func (f *fitter) hyperbolic(ctx context.Context, i int, mean, sd, kurtosis float64) error {
+	d := f.domain(i)
+	about := fmt.Sprintf("hyperbolic law with mean %.4g and deviation %.4g", mean, sd)
+	shape := func(z float64) error { // z = a d; small: double exponential, large: Gaussian
+		return f.law(ctx, i, func(y float64) float64 { return -z * y / math.Sqrt(1+y*y) }, func(float64) float64 { return 2 }, about)
+	}
+	lo, hi := math.Log(0.1), math.Log(60.)
+	for k := 0; k < 12; k++ {
+		mid := (lo + hi) / 2
+		if err := shape(math.Exp(mid)); err != nil {
+			return err
+		}
+		if f.laws[i].kurtosis() > kurtosis {
+			lo = mid
+		} else {
+			hi = mid
+		}
+	}
+	if err := shape(math.Exp(lo)); err != nil {
+		return fmt.Errorf("spectral: weight of %s: %w", d.Name(0), err)
+	}
+	_, s := f.laws[i].moments()
+	f.laws[i] = f.laws[i].affine(mean, sd/s)
+	return nil
+}
+
 // driven handles a position without noise of its own that is carried by a
 // velocity j: dy_i = c y_j dt, dy_j = (F(y_i) - gamma y_j) dt + noise a. The
 // law of the position is exp(int 2 gamma F/(a c)).
