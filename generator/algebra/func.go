@@ -259,7 +259,7 @@ func (r *Ring) log(u Expr) (Expr, error) {
 			out = out.Add(r.logPart(p.base, p.k).Mul(r.ratExpr(p.e.rat())))
 		case p.sign.Is(NonPositive):
 			out = out.Add(r.logPart(p.base.Neg(), nil).Mul(r.ratExpr(p.e.rat())))
-			if p.e.n%2 != 0 {
+			if p.e.oddPower() {
 				whole = whole.Neg()
 			}
 		default:
@@ -302,7 +302,7 @@ func (r *Ring) abs(u Expr) (Expr, error) {
 	}
 	out := r.ratExpr(c.abs())
 	for _, p := range ps {
-		if p.sign.Is(NonNegative) || p.e.d != 1 {
+		if p.sign.Is(NonNegative) {
 			out = out.Mul(r.partPower(p, expo{1, 1}))
 			continue
 		}
@@ -342,7 +342,7 @@ func (r *Ring) signFunc(u Expr) (Expr, error) {
 		switch {
 		case p.sign == Positive:
 		case p.sign == Negative:
-			neg = neg != (p.e.n%2 != 0)
+			neg = neg != p.e.oddPower()
 		default:
 			rest = rest.Mul(r.partPower(p, expo{1, 1}))
 		}

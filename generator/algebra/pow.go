@@ -136,8 +136,12 @@ func (r *Ring) ratPower(q rat, e expo) Expr {
 
 // rootKernel is b^e with b kept whole.
 func (r *Ring) rootKernel(b Expr, e expo) Expr {
-	k := r.intern(&kernel{kind: kindRoot, args: []Expr{b}, sign: NonNegative, algebraic: true, period: 1, base: b})
-	return r.kernelPower(k, e)
+	k := &kernel{kind: kindRoot, args: []Expr{b}, algebraic: true, period: 1, base: b}
+	if old, ok := r.kernels[kernelKey(k)]; ok {
+		return r.kernelPower(old, e)
+	}
+	k.sign = b.Sign()
+	return r.kernelPower(r.intern(k), e)
 }
 
 // part is one factor of a product: base^exp, base a kernel or a polynomial.
@@ -175,7 +179,7 @@ func (e Expr) parts() (c rat, out []part, ok bool) {
 			continue
 		}
 		rest = append(rest, p)
-		out = append(out, part{r.kernelExpr1(p.k), p.k, p.e, p.k.signAlone()})
+		out = append(out, part{r.kernelExpr1(p.k), p.k, p.e, baseSign(p)})
 	}
 	left := num.over(r.monoExpr(r.internMono(rest)))
 	if !q.isConst() {
@@ -211,13 +215,25 @@ func (e Expr) isNumber() bool {
 	return ok
 }
 
-// signAlone is the sign of the kernel itself; principal roots are positive.
-func (k *kernel) signAlone() Sign {
-	if k.kind == kindPrime {
-		return Positive
+// signAlone is the sign of the kernel itself, of a root's radicand.
+func (k *kernel) signAlone() Sign { return k.sign }
+
+// baseSign is the sign of what is raised to the power: where an even root is
+// defined its radicand is not negative.
+func baseSign(q power) Sign {
+	s := q.k.sign
+	if q.e.d%2 == 0 {
+		s &= NonNegative
+		if s == 0 {
+			s = NonNegative
+		}
 	}
-	return k.sign
+	return s
 }
+
+// oddPower reports whether b^e has the sign of b: odd powers and odd roots of
+// them.
+func (e expo) oddPower() bool { return e.n%2 != 0 && e.d%2 != 0 }
 
 // kernelExpr1 is kernel^1; for roots, whose first power is their base, the
 // base itself.
@@ -264,12 +280,12 @@ func (e Expr) powRational(q rat) (Expr, error) {
 			out = out.Mul(r.partPower(p, x))
 		case p.sign.Is(NonPositive):
 			p.base, p.sign = p.base.Neg(), p.sign.neg()
-			if p.e.n%2 != 0 && p.e.d == 1 {
+			if p.e.oddPower() {
 				neg = !neg
 			}
 			p.k = nil
 			out = out.Mul(r.partPower(p, x))
-		case p.e.d == 1 && p.e.n%2 == 0 && even:
+		case p.e.d%2 != 0 && p.e.n%2 == 0 && even:
 			// (u^2)^(1/2) is |u|: the sign of u is not known.
 			y := p.e.mul(x)
 			b := p.base
@@ -524,7 +540,7 @@ func (e Expr) powSymbolic(f Expr) (Expr, error) {
 			out = out.Mul(r.symbolicPower(p.base, p.k, g))
 		case p.sign.Is(NonPositive):
 			out = out.Mul(r.symbolicPower(p.base.Neg(), nil, g))
-			if p.e.n%2 != 0 {
+			if p.e.oddPower() {
 				whole = whole.Neg()
 			}
 		default:

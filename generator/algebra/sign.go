@@ -109,14 +109,11 @@ func (e Expr) Sign() Sign {
 }
 
 func powerSign(q power) Sign {
-	s := q.k.sign
-	if q.k.algebraic && q.k.kind != kindCall {
-		return Positive // principal roots
-	}
+	s := baseSign(q)
 	if q.e.n < 0 {
 		s &^= Zero
 	}
-	if q.e.d%2 == 0 || q.e.n%2 == 0 {
+	if !q.e.oddPower() {
 		if s&Zero == 0 {
 			return Positive
 		}
