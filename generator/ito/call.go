@@ -11,16 +11,18 @@ import (
 // call lowers a function with its arguments.
 func (l *lowering) call(e *syntax.Call) (value, bool) {
 	r, name := l.r, e.Fun.Name
-	switch name {
-	case "diff":
-		return l.derivative(e)
-	case "at":
-		return l.replaced(e)
-	}
 	entity, declared := r.entities[name]
+	switch {
+	case name == "diff":
+		return l.derivative(e)
+	case name == "at" && !declared:
+		return l.replaced(e)
+	case name == "integral" && !declared:
+		return l.integral(e)
+	}
 	arity, builtin := algebra.IsBuiltin(name)
 	switch {
-	case builtin:
+	case builtin && !declared:
 	case !declared || l.closed:
 		if r.noises[name] {
 			r.undeclaredName(l.src, e.Fun)
@@ -233,4 +235,50 @@ func (l *lowering) replaced(e *syntax.Call) (value, bool) {
 		return err
 	})
 	return l.finish(e, v, err)
+}
+
+// integral lowers integral(f, s, a, b), the integral of f over s from a to b. It
+// is how results that are left as integrals are printed. The name s is bound: it
+// need not be declared.
+func (l *lowering) integral(e *syntax.Call) (value, bool) {
+	const form = "integral(f, s, a, b)"
+	var dummy *syntax.Name
+	if len(e.Args) == 4 {
+		dummy, _ = e.Args[1].(*syntax.Name)
+	}
+	if dummy == nil {
+		l.fail(e.Where(), diagnostic.ArgumentCount, "the function integral takes an expression, a name and two bounds").Expected = form
+		return value{}, false
+	}
+	if en := l.r.entities[dummy.Name]; en != nil && en.kind != entitySlow && en.kind != entityFast || isBuiltin(dummy.Name) {
+		l.fail(dummy.Where(), diagnostic.NameClash, quote(dummy.Name)+" has a meaning of its own and cannot be integrated over").Expected = form
+		return value{}, false
+	}
+	lo, okLo := l.lower(e.Args[2])
+	hi, okHi := l.lower(e.Args[3])
+	if l.bound == nil {
+		l.bound = map[string]int{}
+	}
+	l.bound[dummy.Name]++
+	f, ok := l.lower(e.Args[0])
+	l.bound[dummy.Name]--
+	if !ok || !okLo || !okHi {
+		return value{}, false
+	}
+	out := value{grade: gradeNone, bits: f.bits + lo.bits + hi.bits, depth: 1 + max(f.depth, lo.depth, hi.depth)}
+	for i, v := range []value{f, lo, hi} {
+		if !v.grade.none() {
+			l.gradeError(e.Args[[]int{0, 2, 3}[i]], "the small parameter appears inside integral")
+			return value{}, false
+		}
+	}
+	if !l.shallow(e, out.depth) {
+		return value{}, false
+	}
+	err := algebra.Guard(func() error {
+		l.r.ring.Declare(dummy.Name, algebra.Attr{})
+		out.expr = l.r.ring.Integral(f.expr, dummy.Name, lo.expr, hi.expr)
+		return nil
+	})
+	return l.finish(e, out, err)
 }

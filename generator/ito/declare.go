@@ -1,6 +1,7 @@
 package ito
 
 import (
+	"slices"
 	"strings"
 
 	"epslim/generator/algebra"
@@ -34,10 +35,11 @@ func assumptionOf(n *syntax.Name) assumption {
 	return a
 }
 
-// isBuiltin tells whether a name belongs to the expression language itself.
+// isBuiltin tells whether a name belongs to the expression language itself. The
+// further functions that appear in printed results (at, integral, polygamma) are
+// understood as well, unless the model declares their names.
 func isBuiltin(name string) bool {
-	_, ok := algebra.IsBuiltin(name)
-	return ok || name == "diff" || name == "at" || name == "pi"
+	return slices.Contains(builtinNames(), name)
 }
 
 func builtinNames() []string {

@@ -42,6 +42,7 @@ type lowering struct {
 	// made of numbers alone.
 	closed bool
 	found  map[syntax.Expr]*syntax.Differential // see differentialIn
+	bound  map[string]int                       // names that are being integrated over
 }
 
 func (l *lowering) fail(at Position, code diagnostic.Code, message string) *Diagnostic {
@@ -93,6 +94,9 @@ func (l *lowering) name(n *syntax.Name) (value, bool) {
 	r := l.r
 	if n.Name == "pi" {
 		return value{expr: r.ring.Pi(), grade: gradeNone}, true
+	}
+	if l.bound[n.Name] > 0 {
+		return value{expr: r.ring.Declare(n.Name, algebra.Attr{}), grade: gradeNone}, true
 	}
 	e, ok := r.entities[n.Name]
 	if l.closed {

@@ -248,6 +248,16 @@ func TestSphereUnderRoots(t *testing.T) {
 	}
 }
 
+// TestNamesOfPrintedFunctions: functions that only results contain may be
+// declared names of a model.
+func TestNamesOfPrintedFunctions(t *testing.T) {
+	s := mustParse(t, "slow x\nfast y\nparam at = 2\nfunction integral(x)\nfunction polygamma(x)\n"+
+		"dx = at*integral(x + 1)*y/eps dt\ndy = -y/eps^2 dt + polygamma/eps dW1\n")
+	if len(s.Functions) != 2 || s.Parameter("at") == nil {
+		t.Errorf("%+v", s)
+	}
+}
+
 func TestConditionsOfDomains(t *testing.T) {
 	s := mustParse(t, `slow x in [0, L] periodic
 slow z in [0, H] reflecting

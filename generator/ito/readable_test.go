@@ -78,6 +78,8 @@ func TestPrintedExpressionsAreReadable(t *testing.T) {
 		"v(x + 1, z)", "diff(v(x + 1, z), x)", "diff(v(2*x, x*z), x, 2, z)", "g(x)^k*diff(g, x, 3)", "x^(1/3) - x^(-k)",
 		"besseli(1, x)/besseli(0, x)", "erf(x)*exp(-x^2)", "abs(x)*sign(z)", "tan(x)/tanh(x)", "sqrt(1 + x^2)/sqrt(k)", "log(k*(1 + x^2))",
 		"at(diff(v, x), x, 2, z, x)", "0.1*pi^2", "(1 + x)^k", "gamma(k + 1/3)",
+		"integral(exp(-s^2*v(s, z)), s, 0, x)", "x*integral(integral(log(1 + s*u), s, 0, u)/(1 + u^2), u, x, 1)", "diff(integral(g(s)*exp(s), s, 0, x), x)",
+		"integral(exp(-y^2), y, 0, x)", "polygamma(1, x^2 + 1)",
 	} {
 		checkReadable(t, mustParse(t, model+"let q = "+e), model+"let q = "+e)
 	}
