@@ -110,10 +110,13 @@ func Sin(x float64) float64 {
 		s, _ := sinCosLarge(x)
 		return s
 	}
+	return sinFast(x)
+}
+
+func sinFast(x float64) float64 {
 	t := math.FMA(x, invPi, magic)
 	kf := t - magic
-	r := math.FMA(kf, -piC, math.FMA(kf, -piB, math.FMA(kf, -piA, x)))
-	return halfturn(r, math.Float64bits(t))
+	return halfturn(math.FMA(kf, -piC, math.FMA(kf, -piB, math.FMA(kf, -piA, x))), math.Float64bits(t))
 }
 
 // Cos returns the cosine of x. It is NaN for infinities and NaN.
@@ -122,10 +125,13 @@ func Cos(x float64) float64 {
 		_, c := sinCosLarge(x)
 		return c
 	}
+	return cosFast(x)
+}
+
+func cosFast(x float64) float64 {
 	t := math.FMA(x, invPi, -0.5) + magic
 	kf := t - magic + 0.5
-	r := math.FMA(kf, -piC, math.FMA(kf, -piB, math.FMA(kf, -piA, x)))
-	return halfturn(r, math.Float64bits(t)+1)
+	return halfturn(math.FMA(kf, -piC, math.FMA(kf, -piB, math.FMA(kf, -piA, x))), math.Float64bits(t)+1)
 }
 
 // SinCos returns sine and cosine of x, as the two-output kernel computes them:
@@ -138,13 +144,6 @@ func SinCos(x float64) (sin, cos float64) {
 	kf := t - magic
 	r := math.FMA(kf, -pio2C, math.FMA(kf, -pio2B, math.FMA(kf, -pio2A, x)))
 	return quadrant(r, math.Float64bits(t))
-}
-
-// sinCosTurn returns sine and cosine of 2*pi*u for u in [0, 1].
-func sinCosTurn(u float64) (sin, cos float64) {
-	t := math.FMA(u, 4, magic)
-	kf := t - magic
-	return quadrant(float64(math.FMA(kf, -0.25, u)*tau), math.Float64bits(t))
 }
 
 // twoOverPi holds the first 1280 bits of 2/pi, most significant first.
@@ -284,6 +283,11 @@ func Log(x float64) float64 {
 		x *= 0x1p54
 		shift = 54
 	}
+	return logFast(x, shift)
+}
+
+// logFast returns log(x / 2^shift) for positive normal x.
+func logFast(x, shift float64) float64 {
 	ix := math.Float64bits(x)
 	e := uint64(int64(ix-logBase) >> 52)
 	m := math.Float64frombits(ix - e<<52)

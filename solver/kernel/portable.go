@@ -170,8 +170,8 @@ func portable() *vectorOps {
 		floor:  func(d, a []float64) { each(d, a, math.Floor) },
 		min:    func(d, a, b []float64) { each2(d, a, b, minimum) },
 		max:    func(d, a, b []float64) { each2(d, a, b, maximum) },
-		sin:    func(d, a []float64, c float64) uint64 { redo(d, a, c, Sin); return 0 },
-		cos:    func(d, a []float64, c float64) uint64 { redo(d, a, c, Cos); return 0 },
+		sin:    portableSin,
+		cos:    portableCos,
 		exp:    func(d, a []float64, c float64) uint64 { redo(d, a, c, Exp); return 0 },
 		log:    func(d, a []float64) uint64 { redo(d, a, 1, Log); return 0 },
 		sincos: portableSinCos,
@@ -182,10 +182,41 @@ func portable() *vectorOps {
 	}
 }
 
+func portableSin(d, a []float64, c float64) uint64 {
+	a = a[:len(d)]
+	for i := range d {
+		if x := float64(c * a[i]); math.Abs(x) <= trigMax {
+			d[i] = sinFast(x)
+		} else {
+			d[i] = Sin(x)
+		}
+	}
+	return 0
+}
+
+func portableCos(d, a []float64, c float64) uint64 {
+	a = a[:len(d)]
+	for i := range d {
+		if x := float64(c * a[i]); math.Abs(x) <= trigMax {
+			d[i] = cosFast(x)
+		} else {
+			d[i] = Cos(x)
+		}
+	}
+	return 0
+}
+
 func portableSinCos(d, d2, a []float64, c float64) uint64 {
 	d2, a = d2[:len(d)], a[:len(d)]
 	for i := range d {
-		d[i], d2[i] = SinCos(float64(c * a[i]))
+		x := float64(c * a[i])
+		if !(math.Abs(x) <= trigMax) {
+			d[i], d2[i] = sinCosLarge(x)
+			continue
+		}
+		t := math.FMA(x, invPio2, magic)
+		kf := t - magic
+		d[i], d2[i] = quadrant(math.FMA(kf, -pio2C, math.FMA(kf, -pio2B, math.FMA(kf, -pio2A, x))), math.Float64bits(t))
 	}
 	return 0
 }

@@ -99,9 +99,12 @@ func portableUniforms(state *[4][Lanes]uint64, u, v []float64) {
 
 func portableBoxer(u, v []float64) {
 	v = v[:len(u)]
-	for i := range u {
-		r := math.Sqrt(-2 * Log(u[i]))
-		s, c := sinCosTurn(v[i])
+	for i, x := range u {
+		u[i] = math.Sqrt(-2 * logFast(x, 0))
+	}
+	for i, r := range u {
+		t := math.FMA(v[i], 4, magic)
+		s, c := quadrant(float64(math.FMA(t-magic, -0.25, v[i])*tau), math.Float64bits(t))
 		u[i], v[i] = float64(r*c), float64(r*s)
 	}
 }
