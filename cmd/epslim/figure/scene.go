@@ -30,8 +30,8 @@ func (r rect) corners() []point {
 	return []point{{r.left, r.top}, {r.right, r.top}, {r.right, r.bottom}, {r.left, r.bottom}}
 }
 
-// colour is an opaque sRGB colour with the role it plays: a page with a dark background may redraw
-// shapes whose role is inkRole or paperRole.
+// colour is an opaque sRGB colour with the role it plays, if any: a page with a dark background may redraw
+// the shapes of a role, which is part of the name of their class in an SVG.
 type colour struct {
 	r, g, b uint8
 	role    string
@@ -40,12 +40,14 @@ type colour struct {
 const (
 	inkRole   = "ink"
 	paperRole = "paper"
+	softRole  = "soft" // reference lines
+	blueRole  = "blue" // the one line colour that is dim on a dark page
 )
 
 var (
 	black = colour{0, 0, 0, inkRole}
 	white = colour{255, 255, 255, paperRole}
-	grey  = colour{0x66, 0x66, 0x66, ""}
+	grey  = colour{0x66, 0x66, 0x66, softRole}
 )
 
 // pen is how a line is drawn.

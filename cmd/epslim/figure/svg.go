@@ -16,7 +16,7 @@ import (
 const fontStack = "Liberation Sans, Arimo, Arial, Helvetica, sans-serif"
 
 // svg writes the scene. The document has no identifiers, so several can stand in one HTML page, and
-// shapes in black or in the colour of the paper have the classes ink and paper.
+// shapes whose colour has a role have a class made of it and of -line or -fill.
 func (s *scene) svg() []byte {
 	var b bytes.Buffer
 	fmt.Fprintf(&b, `<svg xmlns="http://www.w3.org/2000/svg" version="1.1" class="figure" role="img" aria-label="%s" `+

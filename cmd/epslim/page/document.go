@@ -98,8 +98,8 @@ type CodeBlock struct {
 	Label string // what it is, for screen readers; "code" when empty
 }
 
-// Figure is an SVG drawing. Shapes of the classes ink-line, ink-fill, paper-line and paper-fill take the colours of the
-// page, so that a figure can be read on a dark one.
+// Figure is an SVG drawing. On a dark page, shapes whose class is ink, paper, soft or blue followed by -line or -fill
+// change their colour, so that they can be seen there.
 type Figure struct {
 	SVG     []byte
 	Alt     string // states the finding; may be empty if the SVG has an aria-label
