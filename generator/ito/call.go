@@ -10,8 +10,8 @@ import (
 
 // call lowers a function with its arguments.
 func (l *lowering) call(e *syntax.Call) (value, bool) {
-	r, name := l.r, e.Fun.Name
-	entity, declared := r.entities[name]
+	name := e.Fun.Name
+	_, declared := l.r.entities[name]
 	switch {
 	case name == "diff":
 		return l.derivative(e)
@@ -20,36 +20,50 @@ func (l *lowering) call(e *syntax.Call) (value, bool) {
 	case name == "integral" && !declared:
 		return l.integral(e)
 	}
+	arity, ok := l.arity(e)
+	if !ok {
+		return value{}, false
+	}
+	args, ok := l.arguments(e, arity)
+	if !ok {
+		return value{}, false
+	}
+	return l.apply(e, args)
+}
+
+// arity returns the number of arguments of the function that is called, or
+// reports that there is none of that name.
+func (l *lowering) arity(e *syntax.Call) (int, bool) {
+	r, name := l.r, e.Fun.Name
+	entity, declared := r.entities[name]
 	arity, builtin := algebra.IsBuiltin(name)
 	switch {
 	case builtin && !declared:
+		return arity, true
 	case !declared || l.closed:
 		if r.noises[name] {
 			r.undeclaredName(l.src, e.Fun)
-			return value{}, false
+			return 0, false
 		}
 		d := l.fail(e.Fun.Where(), diagnostic.UndeclaredName, "the function "+quote(name)+" is not declared")
 		d.Nearest = diagnostic.Nearest(name, append(r.names(entityFunction), builtinNames()...))
 		if d.Nearest == "" {
 			d.Expected = "a standard function or a name declared by \"function\""
 		}
-		return value{}, false
+		return 0, false
 	case entity.kind != entityFunction:
-		what := "a number"
-		if declared {
-			what = article(entity.kind) + " " + entity.kind.String()
-		}
-		l.fail(e.Fun.Where(), diagnostic.NotAFunction, quote(name)+" is "+what+", not a function").Expected = "an operator, such as " + name + "*(...)"
-		return value{}, false
-	case r.system.Function(name) == nil:
-		return value{}, false // reported where it was declared
-	default:
-		arity = len(entity.args)
+		d := l.fail(e.Fun.Where(), diagnostic.NotAFunction, quote(name)+" is "+article(entity.kind)+" "+entity.kind.String()+", not a function")
+		d.Expected = "an operator, such as " + name + "*(...)"
+		return 0, false
 	}
-	args, ok := l.arguments(e, arity)
-	if !ok {
-		return value{}, false
-	}
+	// A function that could not be declared has been reported.
+	return len(entity.args), r.system.Function(name) != nil
+}
+
+// apply calls the algebra. The small parameter may stand under a square root as
+// a whole power, and in no other argument.
+func (l *lowering) apply(e *syntax.Call, args []value) (value, bool) {
+	name := e.Fun.Name
 	out := value{grade: gradeNone}
 	exprs := make([]algebra.Expr, len(args))
 	for i, a := range args {
@@ -59,12 +73,12 @@ func (l *lowering) call(e *syntax.Call) (value, bool) {
 		if a.grade.none() {
 			continue
 		}
-		half := big.NewRat(1, 2)
 		if name != "sqrt" {
 			l.gradeError(e.Args[i], "the small parameter appears inside "+name)
 			return value{}, false
 		}
-		if out.grade, ok = a.grade.pow(half); !ok {
+		var ok bool
+		if out.grade, ok = a.grade.pow(big.NewRat(1, 2)); !ok {
 			l.gradeError(e.Args[i], "the small parameter appears inside sqrt in another way than as an integer power")
 			return value{}, false
 		}
@@ -79,7 +93,7 @@ func (l *lowering) call(e *syntax.Call) (value, bool) {
 		out.addRoot(e, args[0])
 	}
 	err := algebra.Guard(func() (err error) {
-		out.expr, err = r.ring.Call(name, exprs...)
+		out.expr, err = l.r.ring.Call(name, exprs...)
 		return err
 	})
 	return l.finish(e, out, err)

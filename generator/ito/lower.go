@@ -184,8 +184,11 @@ func (out *value) mergeRoots(x, y value) {
 		out.roots = append(append([]string(nil), x.roots...), y.roots...)
 		slices.Sort(out.roots)
 		out.roots = slices.Compact(out.roots)
+		out.roots = out.roots[:min(len(out.roots), rootsNoted)]
 	}
 }
+
+const rootsNoted = 8 // more than rationalizable asks for
 
 // addRoot makes e, a root of x, the one root of the result.
 func (out *value) addRoot(e syntax.Expr, x value) {
@@ -274,14 +277,13 @@ func (l *lowering) power(e *syntax.Binary, x, y value) (out value, ok bool) {
 		return out, false
 	}
 	q, constant := y.expr.IsConstant()
-	terms, bits := x.expr.Size(), x.bits
 	out.depth = max(x.depth, y.depth)
 	out.mergeRoots(x, value{})
 	if constant && q.Sign() < 0 || constant && !q.IsInt() {
 		if !l.rationalizable(e.X, x) {
 			return out, false
 		}
-		out.fraction = out.fraction || terms > 1
+		out.fraction = out.fraction || x.expr.Size() > 1
 	}
 	if constant && !q.IsInt() {
 		out.addRoot(e, x)
@@ -291,34 +293,8 @@ func (l *lowering) power(e *syntax.Binary, x, y value) (out value, ok bool) {
 			return out, false
 		}
 	}
-	if constant && q.IsInt() {
-		n := new(big.Int).Abs(q.Num())
-		if !n.IsInt64() || n.Int64() > 1_000_000 {
-			l.tooComplex(e, "the exponent is too large")
-			return out, false
-		}
-		k := int(n.Int64())
-		bits = max(bits, 1) * max(k, 1)
-		if terms > 1 {
-			// Terms of a sum of t terms to the k: binomial(t+k-1, k) at most.
-			bits += 8 * k
-			terms = termsOfPower(terms, k)
-		} else if c, ok := x.expr.IsConstant(); !ok || c.IsInt() && c.Num().IsInt64() && c.Num().Int64() >= -1 && c.Num().Int64() <= 1 {
-			bits = x.bits * max(k, 1)
-		}
-	} else if constant {
-		k := new(big.Rat).Abs(q)
-		f, _ := k.Float64()
-		bits = int(min(float64(max(bits, 1))*(f+1), 2*maxBits))
-		if f > 1 {
-			terms = termsOfPower(terms, int(min(f, maxTerms))+1)
-		}
-	}
-	if terms > maxTerms {
-		l.tooComplex(e, "it would have more than "+itoa(maxTerms)+" terms when worked out")
-		return out, false
-	}
-	if !l.affordable(e, terms*x.expr.Size(), bits) {
+	terms, bits, ok := l.powerSize(e, x, q, constant)
+	if !ok || !l.affordable(e, terms*x.expr.Size(), bits) {
 		return out, false
 	}
 	out.bits = bits
@@ -340,6 +316,40 @@ func (l *lowering) power(e *syntax.Binary, x, y value) (out value, ok bool) {
 		return out, false
 	}
 	return l.finish(e, out, err)
+}
+
+// powerSize bounds the terms of x^q and the size of the numbers in them, and
+// refuses powers that are far too large.
+func (l *lowering) powerSize(e *syntax.Binary, x value, q *big.Rat, constant bool) (terms, bits int, ok bool) {
+	terms, bits = x.expr.Size(), x.bits
+	if constant && q.IsInt() {
+		n := new(big.Int).Abs(q.Num())
+		if !n.IsInt64() || n.Int64() > 1_000_000 {
+			l.tooComplex(e, "the exponent is too large")
+			return 0, 0, false
+		}
+		k := int(n.Int64())
+		switch c, number := x.expr.IsConstant(); {
+		case terms > 1:
+			bits = max(bits, 1)*max(k, 1) + 8*k
+			terms = termsOfPower(terms, k)
+		case !number || c.IsInt() && c.Num().BitLen() <= 1:
+			bits *= max(k, 1) // powers of 1 and of symbols have no digits of their own
+		default:
+			bits = max(bits, 1) * max(k, 1)
+		}
+	} else if constant {
+		f, _ := new(big.Rat).Abs(q).Float64()
+		bits = int(min(float64(max(bits, 1))*(f+1), 2*maxBits))
+		if f > 1 {
+			terms = termsOfPower(terms, int(min(f, maxTerms))+1)
+		}
+	}
+	if terms > maxTerms {
+		l.tooComplex(e, "it would have more than "+itoa(maxTerms)+" terms when worked out")
+		return 0, 0, false
+	}
+	return terms, bits, true
 }
 
 // termsOfPower returns binomial(terms+k-1, k), or more than maxTerms.
