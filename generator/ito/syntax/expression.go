@@ -73,84 +73,113 @@ func (p *expression) fail(at Position, code diagnostic.Code, message, expected s
 // are "an operand comes" and "an operator comes"; the language is small enough
 // for that to be complete.
 func (p *expression) check() *diagnostic.Diagnostic {
-	var open []bool // for each open parenthesis, whether it holds arguments
-	operand := true
-	chain := 0 // signs and powers since the last operator that ends their nesting
+	st := checkState{operand: true}
 	for i := p.from; i < p.to; i++ {
 		t := &p.tokens[i]
-		differential := t.kind == tokenName && p.isDifferential(t.text)
-		if differential && !operand {
+		if !st.operand && t.kind == tokenName && p.isDifferential(t.text) {
 			p.pieces = append(p.pieces, piece{text: "*", token: i, inserted: true})
-			operand = true
+			st.operand = true
 		}
+		var d *diagnostic.Diagnostic
 		switch {
 		case t.kind == tokenName || t.kind == tokenNumber:
-			if !operand {
-				return p.unexpectedOperand(i)
-			}
-			operand = false
-			// Names become letters followed by their token's number, numbers that number: so no
-			// word of expr's own language is met, and no digit is lost.
-			word := strconv.Itoa(i)
-			if t.kind == tokenName {
-				word = "n" + word
-			}
-			p.pieces = append(p.pieces, piece{text: word, token: i})
-			if t.kind == tokenName && !differential && i+1 < p.to && p.tokens[i+1].is(tokenOpen, "(") {
-				i++
-				p.pieces = append(p.pieces, piece{text: "(", token: i})
-				open = append(open, true)
-				operand = true
-				chain = 0
-			}
-			continue
-		case t.is(tokenOpen, "("):
-			if !operand {
-				return p.unexpectedOperand(i)
-			}
-			open = append(open, false)
-			chain = 0
-		case t.is(tokenClose, ")"):
-			if operand {
-				return p.missingOperand(i)
-			}
-			if len(open) == 0 {
-				return p.fail(t.at, diagnostic.Bracket, "the bracket \")\" closes nothing", "")
-			}
-			open = open[:len(open)-1]
-			chain = 0
-		case t.kind == tokenComma:
-			if operand {
-				return p.missingOperand(i)
-			}
-			if len(open) == 0 || !open[len(open)-1] {
-				return p.fail(t.at, diagnostic.Syntax, "a comma separates the arguments of a function, and there is none here", "an operator, or a point in place of a decimal comma")
-			}
-			operand = true
-			chain = 0
+			i, d = p.checkOperand(&st, i)
 		case t.kind == tokenOperator:
-			if operand && t.text != "-" && t.text != "+" {
-				return p.missingOperand(i)
-			}
-			if operand || t.text == "^" || t.text == "**" {
-				if chain++; chain > p.limits.Depth {
-					return p.fail(t.at, diagnostic.NestedTooDeep, "signs and powers nest more than "+itoa(p.limits.Depth)+" deep", "")
-				}
-			} else {
-				chain = 0
-			}
-			operand = true
+			d = p.checkOperator(&st, i)
 		default:
-			return p.fail(t.at, diagnostic.Syntax, "unexpected "+t.describe()+" in an expression", expectation(operand))
+			d = p.checkPunctuation(&st, i)
 		}
-		p.pieces = append(p.pieces, piece{text: t.text, token: i})
+		if d != nil {
+			return d
+		}
 	}
-	if operand {
+	if st.operand {
 		return p.missingOperand(p.to)
 	}
-	if len(open) > 0 {
+	if len(st.open) > 0 {
 		return p.fail(p.tokens[p.from].at, diagnostic.Bracket, "a bracket is never closed", "\")\"")
 	}
+	return nil
+}
+
+// checkState is where check stands.
+type checkState struct {
+	operand bool   // an operand comes next
+	open    []bool // for each open parenthesis, whether it holds arguments
+	chain   int    // signs and powers since the last operator that ends their nesting
+}
+
+// checkOperand takes a name or number, and the parenthesis that opens its
+// arguments; it returns the last token taken.
+func (p *expression) checkOperand(st *checkState, i int) (int, *diagnostic.Diagnostic) {
+	if !st.operand {
+		return i, p.unexpectedOperand(i)
+	}
+	st.operand = false
+	t := &p.tokens[i]
+	// Names become letters followed by their token's number, numbers that number: so no
+	// word of expr's own language is met, and no digit is lost.
+	word := strconv.Itoa(i)
+	if t.kind == tokenName {
+		word = "n" + word
+	}
+	p.pieces = append(p.pieces, piece{text: word, token: i})
+	if t.kind == tokenName && !p.isDifferential(t.text) && i+1 < p.to && p.tokens[i+1].is(tokenOpen, "(") {
+		i++
+		p.pieces = append(p.pieces, piece{text: "(", token: i})
+		st.open = append(st.open, true)
+		st.operand, st.chain = true, 0
+	}
+	return i, nil
+}
+
+func (p *expression) checkOperator(st *checkState, i int) *diagnostic.Diagnostic {
+	t := &p.tokens[i]
+	if st.operand && t.text != "-" && t.text != "+" {
+		return p.missingOperand(i)
+	}
+	if st.operand || t.text == "^" || t.text == "**" {
+		if st.chain++; st.chain > p.limits.Depth {
+			return p.fail(t.at, diagnostic.NestedTooDeep, "signs and powers nest more than "+itoa(p.limits.Depth)+" deep", "")
+		}
+	} else {
+		st.chain = 0
+	}
+	st.operand = true
+	p.pieces = append(p.pieces, piece{text: t.text, token: i})
+	return nil
+}
+
+// checkPunctuation takes parentheses and commas, and refuses everything else.
+func (p *expression) checkPunctuation(st *checkState, i int) *diagnostic.Diagnostic {
+	t := &p.tokens[i]
+	switch {
+	case t.is(tokenOpen, "("):
+		if !st.operand {
+			return p.unexpectedOperand(i)
+		}
+		st.open = append(st.open, false)
+	case t.is(tokenClose, ")"):
+		if st.operand {
+			return p.missingOperand(i)
+		}
+		if len(st.open) == 0 {
+			return p.fail(t.at, diagnostic.Bracket, "the bracket \")\" closes nothing", "")
+		}
+		st.open = st.open[:len(st.open)-1]
+	case t.kind == tokenComma:
+		if st.operand {
+			return p.missingOperand(i)
+		}
+		if len(st.open) == 0 || !st.open[len(st.open)-1] {
+			return p.fail(t.at, diagnostic.Syntax, "a comma separates the arguments of a function, and there is none here", "an operator, or a point in place of a decimal comma")
+		}
+		st.operand = true
+	default:
+		return p.fail(t.at, diagnostic.Syntax, "unexpected "+t.describe()+" in an expression", expectation(st.operand))
+	}
+	st.chain = 0
+	p.pieces = append(p.pieces, piece{text: t.text, token: i})
 	return nil
 }
 
