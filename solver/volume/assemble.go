@@ -107,7 +107,7 @@ type assembly struct {
 	workers int
 	c       Coefficients
 	m       *Operator
-	reports []Report
+	pairs   []pair // coordinate planes, when A is not diagonal
 }
 
 // isDiagonal asks the coefficients, or probes up to 64 cell centres a
@@ -193,6 +193,11 @@ func (a *assembly) evaluator() *evaluator {
 // row evaluates at the first n points of row r: at cell centres along the axes
 // whose bit in stagger is clear, at the upper edges along those where it is set.
 func (ev *evaluator) row(stagger, r, n int) error {
+	ev.fillPoints(stagger, r, n)
+	return ev.eval(n)
+}
+
+func (ev *evaluator) fillPoints(stagger, r, n int) {
 	g := ev.a.g
 	shape := g.Shape()
 	cell := [grid.MaxDim]int{}
@@ -221,7 +226,6 @@ func (ev *evaluator) row(stagger, r, n int) error {
 			x[i] = v
 		}
 	}
-	return ev.eval(n)
 }
 
 // eval evaluates at the first n points and checks the values.
