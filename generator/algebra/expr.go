@@ -63,6 +63,40 @@ func Guard(f func() error) (err error) {
 	return f()
 }
 
+// WithBudget is Guard with a limit on the number of elementary operations
+// on terms, a few million a second; f fails with ErrTooLarge beyond it. The
+// count does not depend on the machine. Budgets nest: an inner one cannot
+// exceed what is left of the outer.
+func (r *Ring) WithBudget(steps int64, f func() error) error {
+	outer := r.budget
+	if steps < 1 {
+		steps = 1
+	}
+	if outer > 0 {
+		steps = min(steps, outer)
+	}
+	r.budget = steps
+	defer func() {
+		if outer > 0 {
+			outer = max(1, outer-(steps-r.budget))
+		}
+		r.budget = outer
+	}()
+	return Guard(f)
+}
+
+// spend counts n operations against the budget.
+func (r *Ring) spend(n int) {
+	if r.budget == 0 {
+		return
+	}
+	r.budget -= int64(n)
+	if r.budget <= 0 {
+		r.budget = 1
+		panic(errTooLarge)
+	}
+}
+
 func (r *Ring) fromPoly(p poly) Expr {
 	if len(p) == 0 {
 		return r.zero
@@ -210,6 +244,7 @@ func (e Expr) Add(f Expr) Expr {
 	case len(e.n.den) == 0 && len(f.n.den) == 0:
 		return r.fromPoly(addPoly(e.n.num, f.n.num))
 	}
+	r.spend(len(e.n.num) + len(f.n.num))
 	lcm, ea, eb := r.commonDen(e.n.den, f.n.den)
 	a := r.raise(e.n.num, lcm, ea)
 	b := r.raise(f.n.num, lcm, eb)

@@ -202,14 +202,44 @@ func (r *Ring) divExact(a, b poly) (poly, bool) {
 	lci := lead.c.inv()
 	linv := r.monoInvRaw(lead.m)
 	low := b[len(b)-1].m
-	var quo poly
-	rem := append(poly(nil), a...)
 	tail := a[len(a)-1].m
-	for len(rem) > 0 {
-		if !monoDivides(lead.m, rem[0].m) {
+	var quo poly
+	// Products b[j]*quo[i] come from a heap in descending order, one for each
+	// j, so that no remainder is ever copied (Johnson 1974; Monagan, Pearce,
+	// J. Symb. Comp. 46 (2011) 807). wait holds the j whose next quotient
+	// term is not known yet.
+	var heap productHeap
+	wait := make([]int, 0, len(b)-1)
+	for j := 1; j < len(b); j++ {
+		wait = append(wait, j)
+	}
+	for next := 0; next < len(a) || len(heap) > 0; {
+		var m *mono
+		c := coefZero
+		if next < len(a) && (len(heap) == 0 || compareMono(a[next].m, heap[0].m) >= 0) {
+			m, c = a[next].m, a[next].c
+			next++
+		} else {
+			m = heap[0].m
+		}
+		for len(heap) > 0 && heap[0].m == m {
+			p := heap[0]
+			c = c.sub(quo[p.i].c.mul(b[p.j].c))
+			if p.i++; p.i < len(quo) {
+				p.m = r.monoMul(quo[p.i].m, b[p.j].m)
+				heap.replaceTop(p)
+			} else {
+				heap.pop()
+				wait = append(wait, p.j)
+			}
+		}
+		if c.isZero() {
+			continue
+		}
+		if !monoDivides(lead.m, m) {
 			return nil, false
 		}
-		t := term{r.monoMul(rem[0].m, linv), rem[0].c.mul(lci)}
+		t := term{r.monoMul(m, linv), c.mul(lci)}
 		if compareMono(r.monoMul(t.m, low), tail) < 0 {
 			return nil, false
 		}
@@ -217,12 +247,63 @@ func (r *Ring) divExact(a, b poly) (poly, bool) {
 		if len(quo)*len(b) > maxProduct {
 			panic(errTooLarge)
 		}
-		rem = r.subMulTerm(rem[1:], b[1:], t)
-		if rem == nil {
-			break
+		r.spend(len(b))
+		for _, j := range wait {
+			heap.push(productItem{r.monoMul(t.m, b[j].m), len(quo) - 1, j})
 		}
+		wait = wait[:0]
 	}
 	return quo, true
+}
+
+// productItem is the product of quotient term i and divisor term j.
+type productItem struct {
+	m    *mono
+	i, j int
+}
+
+// productHeap has the largest monomial on top.
+type productHeap []productItem
+
+func (h *productHeap) push(p productItem) {
+	*h = append(*h, p)
+	s := *h
+	for i := len(s) - 1; i > 0; {
+		up := (i - 1) / 2
+		if compareMono(s[i].m, s[up].m) <= 0 {
+			return
+		}
+		s[i], s[up] = s[up], s[i]
+		i = up
+	}
+}
+
+func (h *productHeap) pop() {
+	s := *h
+	last := s[len(s)-1]
+	*h = s[:len(s)-1]
+	if len(*h) > 0 {
+		h.replaceTop(last)
+	}
+}
+
+func (h productHeap) replaceTop(p productItem) {
+	i := 0
+	for {
+		c := 2*i + 1
+		if c >= len(h) {
+			break
+		}
+		if c+1 < len(h) && compareMono(h[c+1].m, h[c].m) > 0 {
+			c++
+		}
+		if compareMono(p.m, h[c].m) >= 0 {
+			break
+		}
+		h[i] = h[c]
+		i = c
+	}
+	h[i] = p
 }
 
 // subMulTerm is a - t*b without reducing algebraic kernels.
@@ -494,6 +575,7 @@ func (r *Ring) mulFree(a, b poly) poly {
 	if len(a)*len(b) > maxProduct {
 		panic(errTooLarge)
 	}
+	r.spend(len(a) * len(b))
 	acc := map[*mono]coef{}
 	for _, s := range a {
 		for _, t := range b {

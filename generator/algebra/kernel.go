@@ -71,6 +71,7 @@ type Ring struct {
 	prods   map[[2]*mono]*mono
 	nextID  uint32
 	rank    int
+	budget  int64 // term operations left; 0 is no limit
 	buf     []byte
 	one     *mono
 	zero    Expr

@@ -187,6 +187,7 @@ func (r *Ring) mulTerm(p poly, t term) poly {
 	if t.m.isOne() {
 		return p.scale(t.c)
 	}
+	r.spend(len(p))
 	out := make(poly, len(p))
 	needs := false
 	for i, s := range p {
@@ -215,6 +216,7 @@ func (r *Ring) mulPoly(a, b poly) poly {
 	if len(a)*len(b) > maxProduct {
 		panic(errTooLarge)
 	}
+	r.spend(len(a) * len(b))
 	acc := r.accumulate(len(a) * len(b) / 2)
 	for _, s := range a {
 		for _, t := range b {
