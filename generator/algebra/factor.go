@@ -133,7 +133,37 @@ func (r *Ring) squareFree(p poly, k *kernel, den int32) []polyFactor {
 	if !ok {
 		return []polyFactor{{p, 1}}
 	}
-	return append(r.splitOnce(r.prim(q)), r.splitOnce(g)...)
+	return r.coprimeFactors(append(r.splitOnce(r.prim(q)), r.splitOnce(g)...))
+}
+
+// coprimeFactors rewrites a product over pairwise coprime factors: of f^2 h
+// the square-free part is f h, which shares f with the rest.
+func (r *Ring) coprimeFactors(fs []polyFactor) []polyFactor {
+	for i := 0; i < len(fs); i++ {
+		for j := 0; j < i; j++ {
+			if fs[i].p.equal(fs[j].p) {
+				fs[j].e += fs[i].e
+				return r.coprimeFactors(append(fs[:i:i], fs[i+1:]...))
+			}
+			g := r.gcdPoly(fs[i].p, fs[j].p)
+			if len(g) <= 1 {
+				continue
+			}
+			out := append(append(fs[:j:j], fs[j+1:i]...), fs[i+1:]...)
+			out = append(out, polyFactor{g, fs[i].e + fs[j].e})
+			for _, f := range []polyFactor{fs[i], fs[j]} {
+				q, ok := r.divExact(f.p, g)
+				if !ok {
+					panic("algebra: a gcd does not divide")
+				}
+				if q = r.prim(q); len(q) > 1 {
+					out = append(out, polyFactor{q, f.e})
+				}
+			}
+			return r.coprimeFactors(out)
+		}
+	}
+	return fs
 }
 
 // sqrtPoly returns s with s^2 = p, if p is a square of a polynomial with

@@ -24,6 +24,20 @@ func TestRingLaws(t *testing.T) {
 	})
 }
 
+// TestSeededLaws is the same on larger expressions.
+func TestSeededLaws(t *testing.T) {
+	for i := range uint64(max(60, *campaign)) {
+		c := seeded(*campaignStart + i + 1<<32)
+		d := 1 + int(i%4)
+		ta, tb, tc := c.generate(d), c.generate(d), c.generate(d)
+		r := testRing(t)
+		err := r.WithBudget(testSteps, func() error { return checkLaws(r, ta, tb, tc) })
+		if err != nil && !errors.Is(err, ErrTooLarge) {
+			t.Errorf("seed %d: a = %s, b = %s, c = %s: %v", *campaignStart+i, ta, tb, tc, err)
+		}
+	}
+}
+
 func checkLaws(r *Ring, ta, tb, tc *ast) error {
 	var es [3]Expr
 	for i, t := range []*ast{ta, tb, tc} {
@@ -165,5 +179,32 @@ func TestBudget(t *testing.T) {
 	}
 	if got := mustRead(t, r, "(x+y)^2 - x^2 - y^2 - 2*x*y"); !got.IsZero() {
 		t.Errorf("got %s afterwards", got)
+	}
+}
+
+// TestSplitPoly: the factors multiply to the polynomial and are coprime, also
+// where a factor occurs twice and another once.
+func TestSplitPoly(t *testing.T) {
+	r := testRing(t)
+	for _, in := range []string{
+		"(x^3+y+1)^2*(x^4+y*x+3)", "(x^3+y+1)^3*(x^4+y*x+3)^2*(x^5-y)", "(x^2+y^2)^2*(x^2-y^2)", "(x-1)^5*(x+y)*y^2",
+	} {
+		p := r.prim(mustRead(t, r, in).n.num)
+		fs := r.splitPoly(p)
+		prod := poly{{r.one, coefOne}}
+		for i, f := range fs {
+			prod = r.mulPoly(prod, r.powPoly(f.p, f.e))
+			for _, g := range fs[:i] {
+				if d := r.gcdPoly(f.p, g.p); len(d) > 1 {
+					t.Errorf("%s: factors share %s", in, r.fromPoly(d))
+				}
+			}
+		}
+		if !r.prim(prod).equal(p) {
+			t.Errorf("%s: the factors do not multiply to it", in)
+		}
+		if len(fs) < 2 {
+			t.Errorf("%s: %d factors", in, len(fs))
+		}
 	}
 }

@@ -1,6 +1,7 @@
 package algebra
 
 import (
+	"errors"
 	"flag"
 	"fmt"
 	"math/big"
@@ -242,7 +243,7 @@ func TestRandomExpressions(t *testing.T) {
 			}()
 			return checkTree(t, a)
 		}()
-		if err != nil && err != ErrTooLarge {
+		if err != nil && !errors.Is(err, ErrTooLarge) {
 			t.Errorf("seed %d: %s:\n  %v", seed, a, err)
 			bad++
 		}
@@ -253,7 +254,7 @@ func TestRandomExpressions(t *testing.T) {
 func TestRapidExpressions(t *testing.T) {
 	rapid.Check(t, func(rt *rapid.T) {
 		a := drawn(rt).generate(3)
-		if err := checkTree(t, a); err != nil && err != ErrTooLarge {
+		if err := checkTree(t, a); err != nil && !errors.Is(err, ErrTooLarge) {
 			rt.Fatalf("%s: %v", a, err)
 		}
 	})
