@@ -12,13 +12,15 @@ type chebyshev struct {
 	coef    []float64 // n x n: values to Chebyshev coefficients
 	cum     []float64 // n x n: values to the integral from -1 to each node
 	diff    []float64 // n x n: values to the derivative at the nodes
+	bary    []float64 // weights of the barycentric formula
 }
 
 func newChebyshev(n int) *chebyshev {
 	c := &chebyshev{n: n, nodes: make([]float64, n), weights: make([]float64, n),
-		coef: make([]float64, n*n), cum: make([]float64, n*n), diff: make([]float64, n*n)}
+		bary: make([]float64, n), coef: make([]float64, n*n), cum: make([]float64, n*n), diff: make([]float64, n*n)}
 	for j := range c.nodes {
-		c.nodes[j] = -math.Cos(math.Pi * (float64(j) + 0.5) / float64(n))
+		sin, cos := math.Sincos(math.Pi * (float64(j) + 0.5) / float64(n))
+		c.nodes[j], c.bary[j] = -cos, sin*float64(1-2*(j%2))
 	}
 	for k := 0; k < n; k++ {
 		for j := 0; j < n; j++ {
@@ -131,11 +133,7 @@ func (c *chebyshev) at(v []float64, x float64) float64 {
 		if x == xj {
 			return v[j]
 		}
-		w := math.Sin(math.Pi * (float64(j) + 0.5) / float64(c.n))
-		if j%2 == 1 {
-			w = -w
-		}
-		w /= x - xj
+		w := c.bary[j] / (x - xj)
 		num += w * v[j]
 		den += w
 	}

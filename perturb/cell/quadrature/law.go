@@ -2,6 +2,7 @@ package quadrature
 
 import (
 	"context"
+	"math"
 
 	"epslim/perturb/cell/quadrature/fast"
 )
@@ -39,6 +40,13 @@ func NewLaw(ctx context.Context, p *fast.Problem) (*Law, error) {
 		return nil, err
 	}
 	l := made.(*level)
+	if l.powerTail(0) || l.powerTail(1) {
+		// Few moments exist, so there is no use for the far tails.
+		if made, err = m.level(ctx, 0, nil); err != nil {
+			return nil, err
+		}
+		l = made.(*level)
+	}
 	law := &Law{}
 	for i, p := range l.ps {
 		law.Y = append(law.Y, p.y...)
@@ -52,7 +60,7 @@ func NewLaw(ctx context.Context, p *fast.Problem) (*Law, error) {
 		law.Weight[i] /= total
 	}
 	for side, k := range l.b.ends {
-		law.PowerTail = law.PowerTail || (k == endInfinite && !l.b.dropped[side])
+		law.PowerTail = law.PowerTail || l.powerTail(side)
 		law.Touches[side] = k == endRegular
 	}
 	law.Density = func(y float64) float64 {
@@ -63,4 +71,39 @@ func NewLaw(ctx context.Context, p *fast.Problem) (*Law, error) {
 		return d[0]
 	}
 	return law, nil
+}
+
+// powerTail compares the decay rate in the logarithm of y at an end with that
+// three units further in: the same for a power law, much less for an
+// exponential.
+func (l *level) powerTail(side int) bool {
+	n := len(l.ps)
+	at := func(i int) *panel {
+		if side == 1 {
+			return l.ps[n-1-i]
+		}
+		return l.ps[i]
+	}
+	rate := func(p *panel) float64 {
+		last := len(p.y) - 1
+		u := func(j int) float64 { return p.cumW[j] + math.Log(2/p.a[j]) + math.Log(p.d[j]) }
+		return math.Abs((u(last) - u(0)) / (math.Log(p.d[last]) - math.Log(p.d[0])))
+	}
+	outer := at(0)
+	if l.b.ends[side] != endInfinite {
+		return false
+	}
+	if outer.kind != panelLog {
+		return false
+	}
+	for i := 1; i < n; i++ {
+		p := at(i)
+		if p.kind != panelLog {
+			return rate(outer) < 3*rate(at(i-1))
+		}
+		if math.Log(outer.d[0])-math.Log(p.d[0]) > 3 {
+			return rate(outer) < 3*rate(p)
+		}
+	}
+	return false
 }

@@ -158,7 +158,7 @@ func (l *level) products(terms []fast.Term, order []int, generator bool) []produ
 		p := product{c: t.Constant}
 		for _, s := range l.spaces {
 			o := s.orders(order)
-			if generator && s.wall && o[0] == 2 {
+			if generator && (s.wall || s.parts) && o[0] == 2 {
 				p.factors = append(p.factors, s.byParts(t.Factors))
 			} else {
 				p.factors = append(p.factors, s.operator(t.Factors, o))

@@ -81,7 +81,11 @@ func (m *maker) spaces(z sizes) ([]*space, error) {
 		case d.IsPeriodic():
 			out = append(out, fourier(d, c, z.modes))
 		default:
-			s, err := polynomial(d, c, m.f.laws[c], z.polynomial)
+			basis := polynomial
+			if m.f.laws[c].heavy {
+				basis = arctangent
+			}
+			s, err := basis(d, c, m.f.laws[c], z.polynomial)
 			if err != nil {
 				return nil, err
 			}

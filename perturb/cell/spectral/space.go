@@ -25,14 +25,18 @@ type space struct {
 	deriv []sparse
 	// deriv2 are the second derivatives on a sphere.
 	deriv2 map[[2]int]sparse
+	// slopes, when not nil, are the first and second derivatives of the basis at
+	// the nodes (times root), for a basis that is not closed under d/dy.
+	slopes [2][]float64
 	// logSlope is the derivative of the log weight at the nodes; nil when the
 	// weight is uniform. Needed at walls only.
 	logSlope []float64
 	// values evaluates the basis at a point of the domain; density the weight.
 	values  func(y []float64) []float64
 	density func(y []float64) float64
-	// wall says that the second derivative must be integrated by parts.
-	wall bool
+	// wall says that the second derivative must be integrated by parts, parts
+	// that it is better done so.
+	wall, parts bool
 	// multiply, when not nil, gives exact sparse products for polynomials.
 	multiply func(powers []int) sparse
 	// fill makes nodes, root and basis when they are first needed; nil when
@@ -83,12 +87,13 @@ type measure struct {
 	// logSlope is the derivative of the log density, nil when uniform.
 	logSlope func(y float64) float64
 	density  func(y float64) float64
+	heavy    bool // falls off like a power
 	about    string
 }
 
 // affine returns the measure of shift + scale*y.
 func (m *measure) affine(shift, scale float64) *measure {
-	out := &measure{y: make([]float64, len(m.y)), w: m.w, about: fmt.Sprintf("%s, moved by %.3g and stretched by %.3g", m.about, shift, scale)}
+	out := &measure{y: make([]float64, len(m.y)), w: m.w, heavy: m.heavy, about: fmt.Sprintf("%s, moved by %.3g and stretched by %.3g", m.about, shift, scale)}
 	for i, y := range m.y {
 		out.y[i] = shift + scale*y
 	}
@@ -287,6 +292,13 @@ func (s *space) operator(factors []fast.Factor, order []int) sparse {
 		return m
 	}
 	var m sparse
+	if k := order[0]; s.slopes[0] != nil && (k == 1 || k == 2) {
+		m = fromDense(s.n, s.pair(s.sample(mine), s.slopes[k-1]))
+		if cacheable {
+			s.cache[key] = m
+		}
+		return m
+	}
 	if len(mine) == 0 {
 		m = identity(s.n)
 	} else if p, ok := powers(mine, len(s.deriv)); ok && s.multiply != nil {
@@ -329,6 +341,9 @@ func (s *space) pair(h, psi []float64) []float64 {
 // atNodes are the derivatives of the basis at the nodes.
 func (s *space) atNodes(order []int) []float64 {
 	s.ready()
+	if k := order[0]; s.slopes[0] != nil && (k == 1 || k == 2) {
+		return s.slopes[k-1]
+	}
 	d := s.derivative(order)
 	if d == nil {
 		return s.basis
@@ -388,9 +403,28 @@ func (s *space) byParts(factors []fast.Factor) sparse {
 			dh[j] += h[j] * s.logSlope[j]
 		}
 	}
-	first := s.project(dh).times(s.deriv[0])
-	second := transpose(s.deriv[0]).times(s.project(h)).times(s.deriv[0])
-	m := newSparse(s.n).plus(-1, first).plus(-1, second)
+	var m sparse
+	if d := s.slopes[0]; d != nil {
+		a := s.pair(dh, d)
+		for j, v := range h {
+			right := d[j*s.n : (j+1)*s.n]
+			for r, x := range right {
+				x *= v
+				out := a[r*s.n : (r+1)*s.n]
+				for c, y := range right {
+					out[c] += x * y
+				}
+			}
+		}
+		for i := range a {
+			a[i] = -a[i]
+		}
+		m = fromDense(s.n, a)
+	} else {
+		first := s.project(dh).times(s.deriv[0])
+		second := transpose(s.deriv[0]).times(s.project(h)).times(s.deriv[0])
+		m = newSparse(s.n).plus(-1, first).plus(-1, second)
+	}
 	if cacheable {
 		s.cache[key] = m
 	}

@@ -3,6 +3,7 @@ package spectral
 import (
 	"fmt"
 	"math"
+	"sort"
 
 	"gonum.org/v1/gonum/integrate/quad"
 
@@ -203,8 +204,17 @@ func realBasis(degree, n int, m complexMatrix) sparse {
 			return []part{{sphereIndex(l, -k), h}, {sphereIndex(l, k), -h * 1i}}
 		}
 	}
+	// Entries in order, so that sums do not depend on the map.
+	keys := make([][2]int, 0, len(m))
+	for k := range m {
+		keys = append(keys, k)
+	}
+	sort.Slice(keys, func(i, j int) bool {
+		return keys[i][0] < keys[j][0] || keys[i][0] == keys[j][0] && keys[i][1] < keys[j][1]
+	})
 	acc := make([]map[int]complex128, n)
-	for k, v := range m {
+	for _, k := range keys {
+		v := m[k]
 		// M = sum v |Y_row><Y_col|; <Y_col| brings the conjugate.
 		for _, r := range toReal(k[0]) {
 			for _, c := range toReal(k[1]) {

@@ -197,8 +197,8 @@ func (f *fitter) coordinate(ctx context.Context, i int) error {
 		f.laws[i], f.wall[i] = uniform(d.A, d.B), true
 		return nil
 	}
-	var tail *fast.Unsupported
-	if errors.As(cause, &tail) {
+	var no *fast.Unsupported
+	if errors.As(cause, &no) {
 		return cause
 	}
 	if d.Kind == fast.HalfLine {
@@ -216,10 +216,7 @@ func (f *fitter) law(ctx context.Context, i int, drift, diff func(float64) float
 	if err != nil {
 		return err
 	}
-	if l.PowerTail {
-		return &fast.Unsupported{Method: "spectral", Reason: "the law of " + d.Name(0) + " falls off like a power, so polynomials are no basis"}
-	}
-	f.laws[i] = &measure{y: l.Y, w: l.Weight, density: l.Density, about: about,
+	f.laws[i] = &measure{y: l.Y, w: l.Weight, density: l.Density, about: about, heavy: l.PowerTail,
 		logSlope: func(y float64) float64 { return (2*drift(y) - slopeOf(diff, y, d)) / diff(y) }}
 	f.wall[i] = l.Touches[0] || l.Touches[1]
 	return nil
