@@ -104,6 +104,15 @@ func (l *level) invert(shift float64, adjoint bool) error {
 	if e.Singular() {
 		e.Stationary(null)
 		nullMass = l.op.Mass(null)
+		top := 0
+		for k := 0; k < n; k++ {
+			if null[at(k)] > null[at(top)] {
+				top = k
+			}
+		}
+		if e, err = volume.EliminateLast(l.op, shift, top); err != nil {
+			return err
+		}
 		for k := 0; k < n; k++ {
 			l.x[at(k)] = float32(null[at(k)])
 		}

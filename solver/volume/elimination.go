@@ -80,16 +80,38 @@ func (o *order) bandwidth(m *Operator) int {
 // (all cells when member is nil). Flows to cells left out are kept as losses.
 func Eliminate(m *Operator, shift float64, member []bool) (*Elimination, error) {
 	o := newOrder(m.Grid)
-	n := m.Grid.Cells()
-	e := &Elimination{m: m, place: make([]int, n), cell: make([]int, 0, n), band: o.bandwidth(m)}
-	byPlace := make([]int, n)
+	byPlace := o.cells(m.Grid)
+	return eliminate(m, shift, member, byPlace, o.bandwidth(m))
+}
+
+// EliminateLast is Eliminate for all cells with the given cell eliminated last,
+// without regard to the bandwidth. In the singular case Solve then returns the
+// solution that vanishes in this cell; when the stationary density is large
+// there, that solution is well scaled.
+func EliminateLast(m *Operator, shift float64, last int) (*Elimination, error) {
+	o := newOrder(m.Grid)
+	byPlace := o.cells(m.Grid)
+	at := slices.Index(byPlace, last)
+	byPlace[0], byPlace[at] = byPlace[at], byPlace[0]
+	return eliminate(m, shift, nil, byPlace, len(byPlace)-1)
+}
+
+// cells lists the cells in the order of their places.
+func (o *order) cells(g *grid.Grid) []int {
+	byPlace := make([]int, g.Cells())
 	for k := range byPlace {
 		pos := 0
-		for d, i := range m.Grid.Coordinates(k) {
+		for d, i := range g.Coordinates(k) {
 			pos += o.fold[d][i] * o.stride[d]
 		}
 		byPlace[pos] = k
 	}
+	return byPlace
+}
+
+func eliminate(m *Operator, shift float64, member []bool, byPlace []int, band int) (*Elimination, error) {
+	n := len(byPlace)
+	e := &Elimination{m: m, place: make([]int, n), cell: make([]int, 0, n), band: band}
 	for _, k := range byPlace {
 		e.place[k] = -1
 		if member == nil || member[k] {
