@@ -17,7 +17,7 @@ func (a *app) provenance(cmd *cobra.Command, sys *ito.System, file string) prese
 	p := present.Provenance{Version: version, SHA256: sys.SHA256, Model: sys.Source}
 	words := []string{"epslim", cmd.Name(), quote(baseName(file))}
 	cmd.Flags().VisitAll(func(f *pflag.Flag) {
-		if f.Name == "help" || f.Name == "quiet" || f.Name == "force" {
+		if f.Name == "help" || f.Name == "quiet" || f.Name == "force" || f.Name == "workers" {
 			return
 		}
 		values := []string{f.Value.String()}

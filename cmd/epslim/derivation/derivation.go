@@ -22,6 +22,9 @@ import (
 // Options of a derivation.
 type Options struct {
 	At []string // points at which numbers are wanted, as "x=0.3,y=0.2"
+	// SkipClaims leaves the claims of the model alone, for work that needs the
+	// limit only.
+	SkipClaims bool
 }
 
 // Result is everything that was found about one model.
@@ -120,6 +123,9 @@ func (res *Result) run(ctx context.Context, opt Options) error {
 	res.conditions()
 	res.certify()
 	for _, c := range sys.Claims {
+		if opt.SkipClaims {
+			break
+		}
 		res.Claims = append(res.Claims, res.judge(ctx, c))
 	}
 	for _, p := range points {
@@ -201,33 +207,21 @@ func (res *Result) conditions() {
 			res.Conditions = append(res.Conditions, s)
 		}
 	}
-	var have []algebra.Expr
-	if x := res.Limit.Existence; x != nil {
-		for _, c := range x.Conditions {
-			add(c.String())
-			have = append(have, c.Quantity)
-		}
+	x := &cell.Existence{}
+	if e := res.Limit.Existence; e != nil {
+		x.Conditions = append(x.Conditions, e.Conditions...)
 	}
-	for _, p := range res.Limit.Pivots {
-		covered := false
-		for _, f := range p.Factors() {
-			covered = true
-			known := f.Sign()&algebra.Zero == 0
-			for _, q := range have {
-				known = known || q.Equal(f) || q.Equal(f.Neg())
-			}
-			if !known {
-				covered = false
-				break
-			}
-		}
-		if !covered {
-			q := p.Primitive()
-			if q.Form().Op == algebra.FormNeg {
-				q = q.Neg()
-			}
-			add(cell.Condition{Quantity: q, Relation: "!="}.String())
-		}
+	// Divisors of the correctors count where they are left in the result.
+	final := append([]algebra.Expr(nil), res.Limit.Drift...)
+	for _, row := range res.Limit.Diffusion {
+		final = append(final, row...)
+	}
+	for _, e := range final {
+		_, den := e.NumDen()
+		x.Divides(den, "the limit")
+	}
+	for _, c := range x.Conditions {
+		add(c.String())
 	}
 }
 

@@ -35,6 +35,8 @@ func texEscape(s string) string {
 // as mathematics, and others by their code point.
 func texRune(c rune) string {
 	switch {
+	case c >= '₀' && c <= '₉':
+		return fmt.Sprintf("$_%d$", c-'₀')
 	case c < 0x80, c >= 0xA1 && c <= 0x17F && c != 0xAD:
 		return string(c)
 	case c >= 0x370 && c < 0x400:

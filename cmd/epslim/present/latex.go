@@ -33,12 +33,14 @@ func StoryLaTeX(st *Story, p Provenance, s LatexSettings) []byte {
 		l.printf("%% %s\n", oneLine(c))
 	}
 	l.printf("%% needs \\usepackage{amsmath,amssymb}\n")
+	l.printf("\\begingroup\\allowdisplaybreaks\\sloppy\n")
 	if st.Title != "" {
-		l.printf("\\subsection*{%s}\\label{%s:top}\n", texBreakable(st.Title), l.prefix)
+		l.printf("\\subsection*{\\raggedright %s}\\label{%s:top}\n", texBreakable(st.Title), l.prefix)
 	}
 	for _, sec := range st.Sections {
 		l.section(sec)
 	}
+	l.printf("\\par\\endgroup\n")
 	return []byte(l.b.String())
 }
 

@@ -68,7 +68,6 @@ var (
 	scriptL  = lit("ℒ", `\mathcal{L}`)
 	bigPhi   = lit("Φ", `\Phi`)
 	rho      = lit("ρ", `\rho`)
-	density  = Math{"p_s", `p_{s}`, "<msub>" + mi("p") + mi("s") + "</msub>"}
 	prob     = lit("p", "p")
 	sigma    = lit("σ", `\sigma`)
 	half     = Math{"½", `\tfrac12`, "<mfrac><mn>1</mn><mn>2</mn></mfrac>"}
@@ -160,6 +159,35 @@ func mean(m Math) Math {
 // notation prints expressions of one system with the user's own symbols.
 type notation struct {
 	latex map[string]string // the user's TeX of declared names
+	taken map[string]bool   // the printed names of the model, which ours must avoid
+}
+
+// spare are the letters that step in for ours where the model has taken them.
+var spare = map[string][]Math{
+	"u": {lit("u", "u"), lit("w", "w"), lit("ψ", `\psi`), lit("U", "U")},
+	"p": {prob, lit("P", "P"), lit("q", "q")},
+	"h": {lit("h", "h"), lit("H", "H"), lit("g", "g")},
+	"f": {lit("f", "f"), lit("F", "F"), lit("g", "g")},
+	"b": {lit("b", "b"), lit("B", "B"), lit("β", `\beta`)},
+	"c": {lit("c", "c"), lit("C", "C"), lit("γ", `\gamma`)},
+	"A": {lit("A", "A"), lit("𝒜", `\mathcal{A}`)},
+	"J": {lit("J", "J"), lit("𝒥", `\mathcal{J}`)},
+	"Φ": {bigPhi, lit("χ", `\chi`), lit("Ψ", `\Psi`)},
+	"ρ": {rho, lit("π", `\varpi`), lit("μ", `\mu`)},
+	"σ": {sigma, lit("S", "S"), lit("Σ", `\Sigma`)},
+	"T": {lit("T", "T"), lit("τ", `\tau`), lit("s", "s")},
+	"t": {lit("t", "t")},
+	"W": {lit("W", "W"), lit("B", "B")},
+}
+
+// own is one of our letters, or its deputy where the model uses it.
+func (n *notation) own(name string) Math {
+	for _, m := range spare[name] {
+		if !n.taken[m.Text] {
+			return m
+		}
+	}
+	return spare[name][0]
 }
 
 // symbol prints a declared name.
@@ -177,7 +205,37 @@ func (n *notation) expr(e algebra.Expr) Math {
 
 // formMath prints a form in all notations.
 func formMath(f *algebra.Form) Math {
+	f = lowIndices(f)
 	return Math{minus(f.Text()), f.LaTeX(algebra.LatexOptions{}), f.MathML()}
+}
+
+// lowIndices gives names that end in small digits, such as those of averages
+// without a closed form, an index in TeX.
+func lowIndices(f *algebra.Form) *algebra.Form {
+	if f.Latex == "" && f.Name != "" {
+		base := strings.TrimRight(f.Name, lowDigits)
+		if base != f.Name && base != "" {
+			g := *f
+			n := []rune(f.Name)[len([]rune(base)):]
+			for i, c := range n {
+				n[i] = c - '₀' + '0'
+			}
+			b := algebra.Form{Op: algebra.FormSymbol, Name: base}
+			g.Latex = b.LaTeX(algebra.LatexOptions{}) + "_{" + string(n) + "}"
+			f = &g
+		}
+	}
+	for i, a := range f.Args {
+		if b := lowIndices(a); b != a {
+			g := *f
+			g.Args = append(append([]*algebra.Form(nil), f.Args[:i]...), b)
+			for _, c := range f.Args[i+1:] {
+				g.Args = append(g.Args, lowIndices(c))
+			}
+			return &g
+		}
+	}
+	return f
 }
 
 // minus writes the sign of the printed mathematics.

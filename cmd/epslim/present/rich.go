@@ -9,38 +9,38 @@ import (
 // The sentences of the derivation hold small pieces of mathematics in plain
 // characters; rich finds them, so that each output sets them in its own way.
 
-var partialSum = Math{"∇·J", `\nabla\cdot J`, mi("∇") + mo("·") + mi("J")}
-
 func transposed(m Math) Math {
 	return Math{m.Text + "ᵀ", m.TeX + `^{\mathsf{T}}`, "<msup><mrow>" + m.MathML + "</mrow><mi>T</mi></msup>"}
 }
 
 // fragments are the pieces with a fixed spelling, longest first.
-func fragments() []struct {
+func (n *notation) fragments() []struct {
 	plain string
 	m     Math
 } {
 	l0 := sub(scriptL, integer(0))
-	f, h, a := lit("f", "f"), lit("h", "h"), lit("A", "A")
+	f, h, a, phi := n.own("f"), n.own("h"), n.own("A"), n.own("Φ")
 	zero := join(equals, integer(0))
-	ss := join(sigma, transposed(sigma))
+	s := n.own("σ")
+	ss := join(s, transposed(s))
 	inverse := power(a, big.NewRat(-1, 1))
-	divA := Math{"∇·A", `\nabla\cdot A`, mi("∇") + mo("·") + mi("A")}
+	nabla := Math{"∇·", `\nabla\cdot `, mi("∇") + mo("·")}
+	divA, divJ := join(nabla, a), join(nabla, n.own("J"))
 	two := join(integer(2), f)
 	return []struct {
 		plain string
 		m     Math
 	}{
 		{"h = A^-1 (2 f - div A)", join(h, equals, inverse, paren(join(two, op("−", "-"), divA)))},
-		{"L0 Phi + f - <f> = 0", join(l0, bigPhi, op("+", "+"), f, op("−", "-"), mean(f), zero)},
-		{"L0 Phi + f - <f>", join(l0, bigPhi, op("+", "+"), f, op("−", "-"), mean(f))},
+		{"L0 Phi + f - <f> = 0", join(l0, phi, op("+", "+"), f, op("−", "-"), mean(f), zero)},
+		{"L0 Phi + f - <f>", join(l0, phi, op("+", "+"), f, op("−", "-"), mean(f))},
 		{"sigma sigma^T - A = 0", join(ss, op("−", "-"), a, zero)},
 		{"A = sigma sigma^T", join(a, equals, ss)},
 		{"sigma sigma^T = A", join(ss, equals, a)},
 		{"sigma sigma^T", ss},
-		{"div J / p", join(partialSum, bare("/", "/"), prob)},
-		{"div J = 0", join(partialSum, zero)},
-		{"div J", partialSum},
+		{"div J / p", join(divJ, bare("/", "/"), n.own("p"))},
+		{"div J = 0", join(divJ, zero)},
+		{"div J", divJ},
 	}
 }
 
@@ -52,7 +52,7 @@ var (
 
 // rich is a sentence with its formulas set as such.
 func (n *notation) rich(s string) []Span {
-	for _, f := range fragments() {
+	for _, f := range n.fragments() {
 		if before, after, ok := strings.Cut(s, f.plain); ok {
 			return append(append(n.rich(before), inline(f.m)), n.rich(after)...)
 		}
@@ -73,7 +73,7 @@ func (n *notation) rich(s string) []Span {
 		return append(append(n.rich(s[:i[0]]), inline(m)), n.rich(s[i[1]:])...)
 	}
 	if i := loneField.FindStringIndex(s); i != nil {
-		return append(append(n.rich(s[:i[0]]), inline(lit("h", "h"))), n.rich(s[i[1]:])...)
+		return append(append(n.rich(s[:i[0]]), inline(n.own("h"))), n.rich(s[i[1]:])...)
 	}
 	if s == "" {
 		return nil

@@ -1,6 +1,7 @@
 package present
 
 import (
+	"fmt"
 	"math/big"
 
 	"epslim/cmd/epslim/derivation"
@@ -73,6 +74,18 @@ func newTeller(res *derivation.Result) *teller {
 		set(f.Name, f.Latex)
 	}
 	set(sys.Small, sys.Latex)
+	n.taken = map[string]bool{}
+	for _, vs := range [][]*ito.Variable{sys.Slow, sys.Fast} {
+		for _, v := range vs {
+			n.taken[n.symbol(v.Name).Text] = true
+		}
+	}
+	for _, p := range sys.Parameters {
+		n.taken[n.symbol(p.Name).Text] = true
+	}
+	for _, f := range sys.Functions {
+		n.taken[n.symbol(f.Name).Text] = true
+	}
 	t := &teller{notation: n, res: res, names: slowNames(res), step: big.NewRat(1, 1), lead: new(big.Rat)}
 	t.eps = n.symbol(sys.Small)
 	t.spacing()
@@ -111,7 +124,7 @@ func (t *teller) index(power *big.Rat) int {
 }
 
 func (t *teller) opName(power *big.Rat) Math { return sub(scriptL, integer(t.index(power))) }
-func (t *teller) u(j int) Math               { return sub(lit("u", "u"), integer(j)) }
+func (t *teller) u(j int) Math               { return sub(t.own("u"), integer(j)) }
 
 func (t *teller) epsTo(q *big.Rat) Math {
 	switch {
@@ -282,9 +295,9 @@ func (t *teller) sde(name string, drift algebra.Expr, noise []algebra.Expr, nois
 		return Math{"d" + m.Text, `\mathrm{d}` + m.TeX, upright("d") + m.MathML}
 	}
 	var ts []Term
-	ts = append(ts, t.scaled(drift, d(lit("t", "t")))...)
+	ts = append(ts, t.scaled(drift, d(t.own("t")))...)
 	for k, s := range noise {
-		w := d(sub(lit("W", "W"), wiener(noises, k)))
+		w := d(sub(t.own("W"), wiener(noises, k)))
 		if strat {
 			w = join(Math{"∘ ", `\circ `, mo("∘")}, w)
 		}
@@ -320,8 +333,8 @@ func (t *teller) conversion() Block {
 			sum = sum.Add(c.Term)
 		}
 		v := t.symbol(e.Variable)
-		left := join(half, thin, bare("Σ", `\textstyle\sum_{j,k}`), thin, sub(sigma, join(lit("j", "j"), lit("k", "k"))), thin,
-			Math{"∂_j", `\partial_{j}`, "<msub><mi>∂</mi><mi>j</mi></msub>"}, thin, sub(sigma, join(v, lit("k", "k"))))
+		left := join(half, thin, bare("Σ", `\textstyle\sum_{j,k}`), thin, sub(t.own("σ"), join(lit("j", "j"), lit("k", "k"))), thin,
+			Math{"∂_j", `\partial_{j}`, "<msub><mi>∂</mi><mi>j</mi></msub>"}, thin, sub(t.own("σ"), join(v, lit("k", "k"))))
 		ls = append(ls, line(left, equals, t.terms(sum)...))
 	}
 	return Equations{ID: "conversion", Lines: ls}
@@ -368,9 +381,9 @@ func (t *teller) fast() Section {
 	if !x.Density.Valid() {
 		return t.withBlocks(sec, append(p, text(" has no closed form here; averages come from the solvability of the fast problem itself.")))
 	}
-	l := line(join(rho, paren(join(args...))), propto, t.terms(x.Density)...)
+	l := line(join(t.own("ρ"), paren(join(args...))), propto, t.terms(x.Density)...)
 	if _, isConst := x.Density.IsConstant(); isConst {
-		l = line(join(rho, paren(join(args...))), propto, Term{Pre: integer(1)})
+		l = line(join(t.own("ρ"), paren(join(args...))), propto, Term{Pre: integer(1)})
 		l.Note = cell(text("uniform"))
 	}
 	return t.withBlocks(sec, append(p, text(", up to a factor, is")), Equations{ID: "invariant", Lines: []Line{l}})
@@ -391,9 +404,9 @@ func article(s string) string {
 // timeVariable is the time on which the limit lives.
 func (t *teller) timeVariable() Math {
 	if t.res.Limit.Power.Sign() == 0 {
-		return lit("t", "t")
+		return t.own("t")
 	}
-	return lit("T", "T")
+	return t.own("T")
 }
 
 // expansion is the hierarchy, one order a row.
@@ -402,10 +415,10 @@ func (t *teller) expansion() Section {
 	lim := t.res.Limit
 	q := new(big.Rat).Set(t.step)
 	series := []Term{{Post: t.u(0)}, {Pre: t.epsTo(q), Post: t.u(1)}, {Pre: t.epsTo(new(big.Rat).Add(q, q)), Post: t.u(2)}, {Post: ellipsis}}
-	p := Para{text("Insert "), inline(join(lit("u", "u"), equals, signed(series))), text(" into "),
-		inline(join(t.dt(lit("t", "t")), lit("u", "u"), equals, scriptL, lit("u", "u"))), text(". Each order is solvable when its right-hand side averages to zero over the fast process")}
+	p := Para{text("Insert "), inline(join(t.own("u"), equals, signed(series))), text(" into "),
+		inline(join(t.dt(t.own("t")), t.own("u"), equals, scriptL, t.own("u"))), text(". Each order is solvable when its right-hand side averages to zero over the fast process")}
 	if lim.Power.Sign() != 0 {
-		p = append(p, text("; the limit appears on the time "), inline(join(lit("T", "T"), equals, t.epsTo(lim.Power), thin, lit("t", "t"))))
+		p = append(p, text("; the limit appears on the time "), inline(join(t.own("T"), equals, t.epsTo(lim.Power), thin, t.own("t"))))
 	}
 	sec.Blocks = append(sec.Blocks, append(p, text(".")))
 	h := Hierarchy{ID: "hierarchy"}
@@ -490,14 +503,14 @@ func (t *teller) correctors() Section {
 	var ls []Line
 	for i, c := range t.res.Limit.Cell {
 		if c.Valid() && !c.IsZero() {
-			ls = append(ls, line(sub(bigPhi, t.symbol(t.names[i])), equals, t.terms(c)...))
+			ls = append(ls, line(sub(t.own("Φ"), t.symbol(t.names[i])), equals, t.terms(c)...))
 		}
 	}
 	if len(ls) == 0 {
 		return sec
 	}
-	b := lit("b", "b")
-	eq := join(sub(scriptL, integer(0)), thin, bigPhi, equals, Math{"−", "-", `<mo form="prefix">−</mo>`}, paren(join(b, op("−", "-"), mean(b))))
+	b := t.own("b")
+	eq := join(sub(scriptL, integer(0)), thin, t.own("Φ"), equals, Math{"−", "-", `<mo form="prefix">−</mo>`}, paren(join(b, op("−", "-"), mean(b))))
 	p := Para{text("The corrector of each slow drift "), inline(b), text(" at the first order, with "), inline(eq), text(":")}
 	return t.withBlocks(sec, append([]Block{p, Equations{ID: "correctors", Lines: ls}}, t.named()...)...)
 }
@@ -540,7 +553,7 @@ func negated(ts []Term) []Term {
 func (t *teller) limit() Section {
 	res, lim := t.res, t.res.Limit
 	sec := Section{ID: "limit", Title: "Limit"}
-	p := Para{text("As "), inline(join(t.eps, op("→", `\to`), integer(0))), text(" on times "), inline(join(lit("t", "t"), equals, power(t.eps, new(big.Rat).Neg(lim.Power)), thin, lit("T", "T"))), text(" (" + lim.Regime + ")")}
+	p := Para{text("As "), inline(join(t.eps, op("→", `\to`), integer(0))), text(" on times "), inline(join(t.own("t"), equals, power(t.eps, new(big.Rat).Neg(lim.Power)), thin, t.own("T"))), text(" (" + lim.Regime + ")")}
 	if lim.Power.Sign() == 0 {
 		p = Para{text("As "), inline(join(t.eps, op("→", `\to`), integer(0))), text(" (" + lim.Regime + ")")}
 	}
@@ -573,9 +586,10 @@ func (t *teller) timed(l Line) Line {
 	if t.res.Limit.Power.Sign() == 0 {
 		return l
 	}
+	tv := t.timeVariable()
 	for i, x := range l.Right {
 		if x.Post.Text == "dt" {
-			l.Right[i].Post = Math{"dT", `\mathrm{d}T`, upright("d") + mi("T")}
+			l.Right[i].Post = Math{"d" + tv.Text, `\mathrm{d}` + tv.TeX, upright("d") + tv.MathML}
 		}
 	}
 	return l
@@ -587,12 +601,12 @@ func (t *teller) stratonovich(noise [][]algebra.Expr) []Block {
 	for i, v := range t.names {
 		c := res.Limit.Drift[i].Sub(res.Stratonovich[i])
 		x := t.symbol(v)
-		left := join(sub(lit("c", "c"), x))
+		left := join(sub(t.own("c"), x))
 		corr = append(corr, line(left, equals, t.terms(c)...))
 		ls = append(ls, t.timed(t.sde(v, res.Stratonovich[i], noise[i], nil, true)))
 	}
-	def := join(sub(lit("c", "c"), lit("i", "i")), equals, half, thin, bare("Σ", `\textstyle\sum_{j,k}`), thin, sub(sigma, join(lit("j", "j"), lit("k", "k"))), thin,
-		Math{"∂_j", `\partial_{j}`, "<msub><mi>∂</mi><mi>j</mi></msub>"}, thin, sub(sigma, join(lit("i", "i"), lit("k", "k"))))
+	def := join(sub(t.own("c"), lit("i", "i")), equals, half, thin, bare("Σ", `\textstyle\sum_{j,k}`), thin, sub(t.own("σ"), join(lit("j", "j"), lit("k", "k"))), thin,
+		Math{"∂_j", `\partial_{j}`, "<msub><mi>∂</mi><mi>j</mi></msub>"}, thin, sub(t.own("σ"), join(lit("i", "i"), lit("k", "k"))))
 	return []Block{
 		Para{text("The Stratonovich drift is smaller by the correction "), inline(def), text(":")},
 		Equations{ID: "correction", Lines: corr},
@@ -609,13 +623,13 @@ func (t *teller) diffusion() []Block {
 	for i := range t.names {
 		for j := i; j < len(t.names); j++ {
 			zero = zero && a[i][j].IsZero()
-			ls = append(ls, line(sub(lit("A", "A"), join(t.symbol(t.names[i]), t.symbol(t.names[j]))), equals, t.terms(a[i][j])...))
+			ls = append(ls, line(sub(t.own("A"), join(t.symbol(t.names[i]), t.symbol(t.names[j]))), equals, t.terms(a[i][j])...))
 		}
 	}
 	if zero {
 		return []Block{Para{text("The limit is deterministic.")}}
 	}
-	p := Para{text("The diffusion matrix "), inline(join(lit("A", "A"), equals, sigma, Math{"σᵀ", `\sigma^{\mathsf{T}}`, "<msup><mi>σ</mi><mi>T</mi></msup>"}))}
+	p := Para{text("The diffusion matrix "), inline(join(t.own("A"), equals, t.own("σ"), transposed(t.own("σ"))))}
 	if t.res.Noise != nil {
 		p = append(p, note(" (the sign of a column of σ and a rotation of its columns do not change the law)"))
 	}
@@ -662,11 +676,11 @@ func (t *teller) fokkerPlanck() Section {
 	var div []Term
 	var ls []Line
 	for i, v := range t.names {
-		j := sub(lit("J", "J"), t.symbol(v))
+		j := sub(t.own("J"), t.symbol(v))
 		div = append(div, Term{Neg: true, Pre: t.partial(v, 1), Post: j})
 		ls = append(ls, line(j, equals, t.current(i)...))
 	}
-	head := line(join(t.dt(t.timeVariable()), prob), equals, div...)
+	head := line(join(t.dt(t.timeVariable()), t.own("p")), equals, div...)
 	sec.Blocks = append(sec.Blocks, Equations{ID: "fokker-planck", Lines: append([]Line{head}, ls...)})
 	if b := t.boundaries(); len(b) > 0 {
 		sec.Blocks = append(sec.Blocks, b)
@@ -677,7 +691,7 @@ func (t *teller) fokkerPlanck() Section {
 // current is f_i p - 1/2 sum_j d_j (A_ij p).
 func (t *teller) current(i int) []Term {
 	lim := t.res.Limit
-	ts := t.scaled(lim.Drift[i], prob)
+	ts := t.scaled(lim.Drift[i], t.own("p"))
 	for j, v := range t.names {
 		a := lim.Diffusion[i][j]
 		if a.IsZero() {
@@ -685,10 +699,10 @@ func (t *teller) current(i int) []Term {
 		}
 		if !dependsOn(a, t.names) {
 			k := a.Mul(a.Ring().Frac(1, 2)).Neg()
-			ts = append(ts, t.scaled(k, join(t.partial(v, 1), thin, prob))...)
+			ts = append(ts, t.scaled(k, join(t.partial(v, 1), thin, t.own("p")))...)
 			continue
 		}
-		inner := t.scaled(a, prob)
+		inner := t.scaled(a, t.own("p"))
 		body := signed(inner)
 		ts = append(ts, Term{Neg: true, Pre: join(half, thin, t.partial(v, 1)), Post: paren(body)})
 	}
@@ -716,14 +730,14 @@ func (t *teller) boundaries() Para {
 	var whole []string
 	for _, v := range t.res.System.Slow {
 		x := t.symbol(v.Name)
-		j := sub(lit("J", "J"), x)
+		j := sub(t.own("J"), x)
 		switch v.Domain.Kind {
 		case ito.Reflecting:
 			add(inline(join(j, equals, integer(0))), text(" at the walls "), inline(join(x, equals, t.expr(v.Domain.A), comma, t.expr(v.Domain.B))))
 		case ito.Absorbing:
-			add(inline(join(prob, equals, integer(0))), text(" at the absorbing ends "), inline(join(x, equals, t.expr(v.Domain.A), comma, t.expr(v.Domain.B))))
+			add(inline(join(t.own("p"), equals, integer(0))), text(" at the absorbing ends "), inline(join(x, equals, t.expr(v.Domain.A), comma, t.expr(v.Domain.B))))
 		case ito.Periodic, ito.Circle:
-			add(inline(prob), text(" and "), inline(j), text(" are periodic in "), inline(x))
+			add(inline(t.own("p")), text(" and "), inline(j), text(" are periodic in "), inline(x))
 		case ito.HalfLine:
 			add(inline(join(j, equals, integer(0))), text(" at "), inline(join(x, equals, integer(0))), text(" and at infinity"))
 		case ito.Line:
@@ -732,7 +746,7 @@ func (t *teller) boundaries() Para {
 	}
 	for _, n := range whole {
 		x := t.symbol(n)
-		add(inline(sub(lit("J", "J"), x)), text(" vanishes as "), inline(join(fenced(Math{Text: "|", TeX: "|"}, x, Math{Text: "|", TeX: "|"}), op("→", `\to`), lit("∞", `\infty`))))
+		add(inline(sub(t.own("J"), x)), text(" vanishes as "), inline(join(fenced(Math{Text: "|", TeX: "|"}, x, Math{Text: "|", TeX: "|"}), op("→", `\to`), lit("∞", `\infty`))))
 	}
 	if len(p) > 0 {
 		p = append(p, text("."))
@@ -749,7 +763,7 @@ func (t *teller) stationary() Section {
 		sec.Blocks = append(sec.Blocks, t.force(s.H)...)
 	}
 	if s.Density.Valid() {
-		l := line(density, propto, t.terms(s.Density)...)
+		l := line(sub(t.own("p"), lit("s", "s")), propto, t.terms(s.Density)...)
 		sec.Blocks = append(sec.Blocks, Equations{ID: "density", Lines: []Line{l}})
 		how := s.How
 		switch {
@@ -777,14 +791,14 @@ func (t *teller) stationary() Section {
 	sec.Blocks = append(sec.Blocks, p)
 	if s.Curl.Valid() && !s.Curl.IsZero() {
 		a, b := t.symbol(s.CurlAt[0]), t.symbol(s.CurlAt[1])
-		h := lit("h", "h")
+		h := t.own("h")
 		left := join(t.partial(s.CurlAt[0], 1), thin, sub(h, b), op("−", "-"), t.partial(s.CurlAt[1], 1), thin, sub(h, a))
-		sec.Blocks = append(sec.Blocks, Equations{ID: "curl", Lines: []Line{line(left, equals, t.terms(s.Curl)...)}})
+		sec.Blocks = append(sec.Blocks, Equations{ID: "curl", Lines: []Line{line(left, equals, t.atMost(s.Curl)...)}})
 	}
 	if s.Current != nil && !allZero(s.Current) {
 		var ls []Line
 		for i, j := range s.Current {
-			ls = append(ls, line(sub(lit("J", "J"), t.symbol(t.names[i])), equals, t.terms(j)...))
+			ls = append(ls, line(sub(t.own("J"), t.symbol(t.names[i])), equals, t.atMost(j)...))
 		}
 		sec.Blocks = append(sec.Blocks, Para{text("The stationary current, in units of the factor before the density:")}, Equations{ID: "current", Lines: ls})
 	}
@@ -798,11 +812,25 @@ func (t *teller) stationary() Section {
 func (t *teller) force(h []algebra.Expr) []Block {
 	var ls []Line
 	for i, e := range h {
-		ls = append(ls, line(sub(lit("h", "h"), t.symbol(t.names[i])), equals, t.terms(e)...))
+		ls = append(ls, line(sub(t.own("h"), t.symbol(t.names[i])), equals, t.atMost(e)...))
 	}
 	p := append(Para{text("A density without current is the exponential of a potential of ")}, t.rich("h = A^-1 (2 f - div A)")...)
-	p = append(p, text(", with "), inline(lit("f", "f")), text(" the Itô drift:"))
+	p = append(p, text(", with "), inline(t.own("f")), text(" the Itô drift:"))
 	return []Block{p, Equations{ID: "force", Lines: ls}}
+}
+
+// tooMuch is the length of a formula beyond which nobody reads it.
+const tooMuch = 2000
+
+// atMost is terms for side results, which are left out when they are very
+// long.
+func (t *teller) atMost(e algebra.Expr) []Term {
+	if e.Valid() {
+		if n := len(e.String()); n > tooMuch {
+			return []Term{{Pre: words(fmt.Sprintf("(%d characters; in full with --format json)", n))}}
+		}
+	}
+	return t.terms(e)
 }
 
 func allZero(es []algebra.Expr) bool {

@@ -43,9 +43,9 @@ func (t *teller) detailName(k string) Math {
 		if n == k {
 			switch t.res.Refused.Reason {
 			case "uncentred":
-				return mean(sub(lit("b", "b"), t.symbol(n)))
+				return mean(sub(t.own("b"), t.symbol(n)))
 			case "singular-noise":
-				return sub(lit("A", "A"), join(t.symbol(n), t.symbol(n)))
+				return sub(t.own("A"), join(t.symbol(n), t.symbol(n)))
 			}
 			return t.symbol(n)
 		}

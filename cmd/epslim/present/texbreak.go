@@ -41,6 +41,7 @@ func (l *latexWriter) term(lead string, t Term, room float64, depth int) []texPi
 	}
 	if pre, inner, post, ok := l.open(t); ok {
 		out := []texPiece{}
+		ahead := texWidth("x" + lead + pre + "(")
 		for k, s := range formTerms(inner) {
 			sl := ""
 			switch {
@@ -51,11 +52,15 @@ func (l *latexWriter) term(lead string, t Term, room float64, depth int) []texPi
 			case k > 0:
 				sl = "+ "
 			}
-			out = append(out, l.term(sl, s, room-2, depth+1)...)
+			have := room - 2
+			if k == 0 {
+				have = max(room-ahead-1, room*0.3)
+			}
+			out = append(out, l.term(sl, s, have, depth+1)...)
 		}
 		first, last := &out[0], &out[len(out)-1]
 		first.tex = lead + pre + `\Bigl(` + first.tex
-		first.width += texWidth("x" + lead + pre + "(")
+		first.width += ahead
 		last.tex += `\Bigr)` + post
 		last.width += texWidth(")" + post)
 		return out

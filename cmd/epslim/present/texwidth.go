@@ -103,6 +103,12 @@ func (m *texMeasure) one(start bool) (w float64, sign bool) {
 	if c >= 0x80 && c < 0xC0 { // inside a character of several bytes
 		return 0, false
 	}
+	switch {
+	case c == 'M' || c == 'W':
+		return 1, false
+	case c >= 'A' && c <= 'Z':
+		return 0.78, false
+	}
 	return 0.56, false
 }
 
