@@ -174,7 +174,7 @@ func (r *reader) formulas() {
 		}
 		l := &lowering{r: r, src: e.src}
 		if v, ok := l.lower(e.value); ok {
-			f.Body, f.body = v.expr, e.value
+			f.Body = v.expr
 		}
 	}
 }

@@ -158,7 +158,6 @@ type Function struct {
 	Position
 
 	Integer bool
-	body    syntax.Expr
 }
 
 // Let is an abbreviation; its value has been put in everywhere.
