@@ -439,6 +439,13 @@ func (a *assembly) widthOf(d, r int) float64 {
 func (a *assembly) absorb() error {
 	m, l := a.m, &a.m.Layout
 	m.Kill = l.Vector()
+	for d := 0; d < a.dim; d++ {
+		for side, rule := range [2]grid.Side{a.g.Axis(d).Lower, a.g.Axis(d).Upper} {
+			if rule == grid.Absorbing {
+				m.KillAt[d][side] = l.Vector()
+			}
+		}
+	}
 	return a.each(func(ev *evaluator, r int) error {
 		j, k := l.RowCoordinates(r)
 		for d := 0; d < a.dim; d++ {
@@ -498,6 +505,7 @@ func (a *assembly) absorbSide(ev *evaluator, r, d, side, first, n int) error {
 		}
 		o, _, _ := fluxPair(f, ev.diffusion[e][i], inner[i], ev.diffusion[e][i], dist)
 		m.Kill[l.Row(r)+first+i] += area * o
+		m.KillAt[d][side][l.Row(r)+first+i] += area * o
 	}
 	return nil
 }

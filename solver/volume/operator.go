@@ -24,6 +24,9 @@ type Operator struct {
 	Links  []Link
 	Kill   []float64 // outflow rate through absorbing sides times volume; nil without them
 	Report Report
+	// KillAt[d][0] and KillAt[d][1] are the parts of Kill that leave through the
+	// lower and the upper side of axis d; nil for sides that do not absorb.
+	KillAt [grid.MaxDim][2][]float64
 
 	rowVolume []float64 // product of the widths of a row along the other axes
 	width     []float64 // widths along the first axis
