@@ -6,10 +6,8 @@ import (
 	"math"
 
 	"epslim/perturb/cell/quadrature/fast"
+	"epslim/perturb/cell/spectral/internal/band"
 )
-
-// maxEntries bounds the memory of a factorization (in float64).
-const maxEntries = 40_000_000
 
 // vector is a function: its coefficients, the last space varying fastest.
 type vector struct {
@@ -27,7 +25,7 @@ type level struct {
 	n      int // functions of the full tensor; vectors have that length
 	set    *indexSet
 	matrix sparse // on the index set
-	lu     factors
+	lu     band.Factors
 	rho    []float64
 	outer  []bool // functions near the edge of the basis
 }
@@ -51,34 +49,34 @@ func newLevel(ctx context.Context, p *fast.Problem, spaces []*space) (*level, er
 	for i, row := range m {
 		k := 0
 		for _, e := range row {
-			if e.col != 0 {
+			if e.Col != 0 {
 				row[k] = e
 				k++
 			}
 		}
 		m[i] = row[:k]
 	}
-	m[0] = append([]entry{{0, -1}}, m[0]...)
+	m[0] = append([]entry{{Col: 0, V: -1}}, m[0]...)
 	l.matrix = m
-	if l.lu, err = factorize(ctx, m, l.set.orders()...); err != nil {
-		if err == errSingular {
+	if l.lu, err = band.Factorize(ctx, band.Matrix(m), l.set.orders()...); err != nil {
+		if err == band.ErrSingular {
 			return nil, l.reducible()
 		}
 		return nil, err
 	}
-	if l.lu.condition() > 1e16 {
+	if l.lu.Condition() > 1e16 {
 		return nil, l.reducible()
 	}
 	rhs := make([]float64, len(m))
 	rhs[0] = -1
-	rho := l.lu.solveTransposed(rhs)
+	rho := l.lu.SolveTransposed(rhs)
 	// One step of iterative refinement.
 	for i, row := range m {
 		for _, e := range row {
-			rhs[e.col] -= e.v * rho[i]
+			rhs[e.Col] -= e.V * rho[i]
 		}
 	}
-	for i, v := range l.lu.solveTransposed(rhs) {
+	for i, v := range l.lu.SolveTransposed(rhs) {
 		rho[i] += v
 	}
 	l.rho = l.set.scatter(rho)
@@ -332,9 +330,9 @@ func (l *level) along(m sparse, u []float64, axis int) []float64 {
 		for r, row := range m {
 			dst := out[o+r*inner : o+(r+1)*inner]
 			for _, e := range row {
-				src := u[o+e.col*inner : o+(e.col+1)*inner]
+				src := u[o+e.Col*inner : o+(e.Col+1)*inner]
 				for i, x := range src {
-					dst[i] += e.v * x
+					dst[i] += e.V * x
 				}
 			}
 		}
@@ -451,12 +449,12 @@ func (l *level) Solve(w fast.Vector) (fast.Vector, error) {
 	for i := range rhs {
 		rhs[i] = -rhs[i]
 	}
-	part := l.lu.solve(rhs)
+	part := l.lu.Solve(rhs)
 	r := l.matrix.apply(part)
 	for i := range r {
 		r[i] = rhs[i] - r[i]
 	}
-	for i, v := range l.lu.solve(r) {
+	for i, v := range l.lu.Solve(r) {
 		part[i] += v
 	}
 	phi := l.set.scatter(part)

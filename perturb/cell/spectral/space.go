@@ -74,8 +74,8 @@ func fourier(d fast.Domain, first, k int) *space {
 	d1 := newSparse(n)
 	for j := 1; j <= k; j++ {
 		// d cos = -jw sin, d sin = jw cos
-		d1[2*j] = []entry{{2*j - 1, -float64(j) * w}}
-		d1[2*j-1] = []entry{{2 * j, float64(j) * w}}
+		d1[2*j] = []entry{{Col: 2*j - 1, V: -float64(j) * w}}
+		d1[2*j-1] = []entry{{Col: 2 * j, V: float64(j) * w}}
 	}
 	s.deriv = []sparse{d1}
 	return s
@@ -353,7 +353,7 @@ func (s *space) atNodes(order []int) []float64 {
 		row, dst := s.basis[j*s.n:(j+1)*s.n], out[j*s.n:(j+1)*s.n]
 		for m, es := range d {
 			for _, e := range es {
-				dst[e.col] += row[m] * e.v
+				dst[e.Col] += row[m] * e.V
 			}
 		}
 	}
@@ -435,7 +435,7 @@ func transpose(a sparse) sparse {
 	out := newSparse(len(a))
 	for i, row := range a {
 		for _, e := range row {
-			out[e.col] = append(out[e.col], entry{i, e.v})
+			out[e.Col] = append(out[e.Col], entry{Col: i, V: e.V})
 		}
 	}
 	return out
@@ -507,8 +507,8 @@ func (s *space) expand(factors []fast.Factor) (c []float64, norm float64) {
 	}
 	if p, ok := powers(mine, len(s.deriv)); ok && s.multiply != nil {
 		for i, row := range s.multiply(p) {
-			if len(row) > 0 && row[0].col == 0 {
-				out[i] = row[0].v
+			if len(row) > 0 && row[0].Col == 0 {
+				out[i] = row[0].V
 			}
 		}
 		if d := total(p); d < int(math.Sqrt(float64(s.n))) {

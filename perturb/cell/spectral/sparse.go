@@ -3,13 +3,12 @@ package spectral
 import (
 	"math"
 	"sort"
+
+	"epslim/perturb/cell/spectral/internal/band"
 )
 
 // entry is one element of a row.
-type entry struct {
-	col int
-	v   float64
-}
+type entry = band.Entry
 
 // sparse is a square matrix by rows.
 type sparse [][]entry
@@ -19,7 +18,7 @@ func newSparse(n int) sparse { return make(sparse, n) }
 func identity(n int) sparse {
 	m := newSparse(n)
 	for i := range m {
-		m[i] = []entry{{i, 1}}
+		m[i] = []entry{{Col: i, V: 1}}
 	}
 	return m
 }
@@ -40,7 +39,7 @@ func fromDense(n int, a []float64) sparse {
 	for i := range m {
 		for j, v := range a[i*n : (i+1)*n] {
 			if math.Abs(v) > noise*math.Min(row[i], col[j]) {
-				m[i] = append(m[i], entry{j, v})
+				m[i] = append(m[i], entry{Col: j, V: v})
 			}
 		}
 	}
@@ -55,18 +54,18 @@ func (a sparse) times(b sparse) sparse {
 	for i, row := range a {
 		var cols []int
 		for _, e := range row {
-			for _, f := range b[e.col] {
-				if !seen[f.col] {
-					seen[f.col] = true
-					cols = append(cols, f.col)
+			for _, f := range b[e.Col] {
+				if !seen[f.Col] {
+					seen[f.Col] = true
+					cols = append(cols, f.Col)
 				}
-				acc[f.col] += e.v * f.v
+				acc[f.Col] += e.V * f.V
 			}
 		}
 		sort.Ints(cols)
 		for _, c := range cols {
 			if acc[c] != 0 {
-				out[i] = append(out[i], entry{c, acc[c]})
+				out[i] = append(out[i], entry{Col: c, V: acc[c]})
 			}
 			acc[c], seen[c] = 0, false
 		}
@@ -80,17 +79,17 @@ func (a sparse) plus(s float64, b sparse) sparse {
 	for i := range a {
 		merged := map[int]float64{}
 		for _, e := range a[i] {
-			merged[e.col] += e.v
+			merged[e.Col] += e.V
 		}
 		for _, e := range b[i] {
-			merged[e.col] += s * e.v
+			merged[e.Col] += s * e.V
 		}
 		for c, v := range merged {
 			if v != 0 {
-				out[i] = append(out[i], entry{c, v})
+				out[i] = append(out[i], entry{Col: c, V: v})
 			}
 		}
-		sort.Slice(out[i], func(p, q int) bool { return out[i][p].col < out[i][q].col })
+		sort.Slice(out[i], func(p, q int) bool { return out[i][p].Col < out[i][q].Col })
 	}
 	return out
 }
@@ -100,7 +99,7 @@ func (a sparse) cut(n int) sparse {
 	out := newSparse(n)
 	for i := range out {
 		for _, e := range a[i] {
-			if e.col < n {
+			if e.Col < n {
 				out[i] = append(out[i], e)
 			}
 		}
@@ -113,19 +112,11 @@ func (a sparse) apply(x []float64) []float64 {
 	for i, row := range a {
 		var s float64
 		for _, e := range row {
-			s += e.v * x[e.col]
+			s += e.V * x[e.Col]
 		}
 		out[i] = s
 	}
 	return out
-}
-
-func (a sparse) entries() int {
-	n := 0
-	for _, r := range a {
-		n += len(r)
-	}
-	return n
 }
 
 // product is a constant times a Kronecker product, one factor a space.
@@ -164,7 +155,7 @@ func kronecker(set *indexSet, terms []product) sparse {
 		}
 		for _, c := range cols {
 			if math.Abs(acc[c]) > 1e-16*size {
-				out[i] = append(out[i], entry{c, acc[c]})
+				out[i] = append(out[i], entry{Col: c, V: acc[c]})
 			}
 			acc[c], seen[c] = 0, false
 		}
@@ -178,7 +169,7 @@ func walk(factors []sparse, sizes, index []int, k, col int, v float64, add func(
 		return
 	}
 	for _, e := range factors[k][index[k]] {
-		walk(factors, sizes, index, k+1, col*sizes[k]+e.col, v*e.v, add)
+		walk(factors, sizes, index, k+1, col*sizes[k]+e.Col, v*e.V, add)
 	}
 }
 

@@ -229,7 +229,7 @@ func realBasis(degree, n int, m complexMatrix) sparse {
 	for r, row := range acc {
 		for c := 0; c < n; c++ {
 			if v, ok := row[c]; ok && math.Abs(real(v)) > 1e-15 {
-				out[r] = append(out[r], entry{c, real(v)})
+				out[r] = append(out[r], entry{Col: c, V: real(v)})
 			}
 		}
 	}

@@ -1,4 +1,7 @@
-package spectral
+// Package band factorizes sparse matrices: banded LU with row interchanges after
+// a narrowing reorder, or gonum's dense LU where the band would hold most of the
+// matrix. It is shared by the spectral and the grid route.
+package band
 
 import (
 	"context"
@@ -11,10 +14,30 @@ import (
 	"epslim/perturb/cell/quadrature/fast"
 )
 
-// errSingular is a matrix without an inverse.
-var errSingular = errors.New("spectral: singular matrix")
+// maxEntries bounds the memory of a factorization (in float64).
+const maxEntries = 40_000_000
 
-// banded is an LU factorization with row interchanges of a sparse matrix after
+// Entry is one element of a row.
+type Entry struct {
+	Col int
+	V   float64
+}
+
+// Matrix is a square matrix by rows.
+type Matrix [][]Entry
+
+func entries(a Matrix) int {
+	n := 0
+	for _, r := range a {
+		n += len(r)
+	}
+	return n
+}
+
+// ErrSingular is a matrix without an inverse.
+var ErrSingular = errors.New("band: singular matrix")
+
+// banded is an LU factorization with row interchanges of a Matrix matrix after
 // a symmetric reordering that makes its band narrow (reverse Cuthill-McKee).
 type banded struct {
 	n, lower, upper int // bandwidths; upper counts fill from interchanges
@@ -27,9 +50,9 @@ type banded struct {
 
 func (b *banded) width() int { return b.lower + b.upper + 1 }
 
-// factorizeBand tries the reverse Cuthill-McKee order and the given ones and takes
+// Banded tries the reverse Cuthill-McKee order and the given ones and takes
 // that with the narrowest band.
-func factorizeBand(ctx context.Context, a sparse, orders [][]int) (*banded, error) {
+func Banded(ctx context.Context, a Matrix, orders [][]int) (*banded, error) {
 	n := len(a)
 	best := cuthillMcKee(a)
 	cost := bandCost(a, best)
@@ -47,12 +70,12 @@ func factorizeBand(ctx context.Context, a sparse, orders [][]int) (*banded, erro
 	for i, row := range a {
 		var largest float64
 		for _, e := range row {
-			largest = math.Max(largest, math.Abs(e.v))
-			d := place[e.col] - place[i]
+			largest = math.Max(largest, math.Abs(e.V))
+			d := place[e.Col] - place[i]
 			b.lower, up = max(b.lower, -d), max(up, d)
 		}
 		if largest == 0 {
-			return nil, errSingular
+			return nil, ErrSingular
 		}
 		b.scale[i] = 1 / largest
 	}
@@ -65,31 +88,31 @@ func factorizeBand(ctx context.Context, a sparse, orders [][]int) (*banded, erro
 	for i, row := range a {
 		r := place[i]
 		for _, e := range row {
-			b.lu[r*w+place[e.col]-r+b.lower] += e.v * b.scale[i]
+			b.lu[r*w+place[e.Col]-r+b.lower] += e.V * b.scale[i]
 		}
 	}
 	return b, b.eliminate(ctx)
 }
 
-// factors is a factorized matrix.
-type factors interface {
-	solve(rhs []float64) []float64
-	solveTransposed(rhs []float64) []float64
-	// condition is a lower bound on the condition number, from the pivots.
-	condition() float64
+// Factors is a factorized matrix.
+type Factors interface {
+	Solve(rhs []float64) []float64
+	SolveTransposed(rhs []float64) []float64
+	// Condition is a lower bound on the condition number, from the pivots.
+	Condition() float64
 }
 
-// factorize takes a dense factorization where the band would hold most of the
+// Factorize takes a dense factorization where the band would hold most of the
 // matrix anyway.
-func factorize(ctx context.Context, a sparse, orders ...[]int) (factors, error) {
+func Factorize(ctx context.Context, a Matrix, orders ...[]int) (Factors, error) {
 	n := len(a)
-	if a.entries() > n*n/3 && n > 50 {
+	if entries(a) > n*n/3 && n > 50 {
 		if n > 5000 {
 			return nil, fast.ErrBudget
 		}
 		return newDense(a)
 	}
-	return factorizeBand(ctx, a, orders)
+	return Banded(ctx, a, orders)
 }
 
 // denseLU is gonum's factorization.
@@ -98,26 +121,26 @@ type denseLU struct {
 	lu mat.LU
 }
 
-func newDense(a sparse) (*denseLU, error) {
+func newDense(a Matrix) (*denseLU, error) {
 	n := len(a)
 	m := mat.NewDense(n, n, nil)
 	for i, row := range a {
 		for _, e := range row {
-			m.Set(i, e.col, e.v)
+			m.Set(i, e.Col, e.V)
 		}
 	}
 	d := &denseLU{n: n}
 	d.lu.Factorize(m)
 	if math.IsInf(d.lu.Cond(), 1) {
-		return nil, errSingular
+		return nil, ErrSingular
 	}
 	return d, nil
 }
 
-func (d *denseLU) condition() float64 { return d.lu.Cond() }
+func (d *denseLU) Condition() float64 { return d.lu.Cond() }
 
-func (d *denseLU) solve(rhs []float64) []float64           { return d.run(rhs, false) }
-func (d *denseLU) solveTransposed(rhs []float64) []float64 { return d.run(rhs, true) }
+func (d *denseLU) Solve(rhs []float64) []float64           { return d.run(rhs, false) }
+func (d *denseLU) SolveTransposed(rhs []float64) []float64 { return d.run(rhs, true) }
 
 func (d *denseLU) run(rhs []float64, trans bool) []float64 {
 	var x mat.VecDense
@@ -128,7 +151,7 @@ func (d *denseLU) run(rhs []float64, trans bool) []float64 {
 
 // bandCost is the product lower*(lower+upper) that the elimination costs per
 // row.
-func bandCost(a sparse, order []int) float64 {
+func bandCost(a Matrix, order []int) float64 {
 	place := make([]int, len(order))
 	for i, o := range order {
 		place[o] = i
@@ -136,7 +159,7 @@ func bandCost(a sparse, order []int) float64 {
 	lower, upper := 1, 1
 	for i, row := range a {
 		for _, e := range row {
-			d := place[e.col] - place[i]
+			d := place[e.Col] - place[i]
 			lower, upper = max(lower, -d), max(upper, d)
 		}
 	}
@@ -158,7 +181,7 @@ func (b *banded) eliminate(ctx context.Context) error {
 			}
 		}
 		if best == 0 {
-			return errSingular
+			return ErrSingular
 		}
 		small, large = math.Min(small, best), math.Max(large, best)
 		b.pivot[k] = p
@@ -188,10 +211,10 @@ func (b *banded) eliminate(ctx context.Context) error {
 	return nil
 }
 
-func (b *banded) condition() float64 { return 1 / b.smallest }
+func (b *banded) Condition() float64 { return 1 / b.smallest }
 
-// solve returns x with A x = rhs.
-func (b *banded) solve(rhs []float64) []float64 {
+// Solve returns x with A x = rhs.
+func (b *banded) Solve(rhs []float64) []float64 {
 	n, w := b.n, b.width()
 	x := make([]float64, n)
 	for i, o := range b.order {
@@ -224,8 +247,8 @@ func (b *banded) solve(rhs []float64) []float64 {
 	return out
 }
 
-// solveTransposed returns x with A' x = rhs.
-func (b *banded) solveTransposed(rhs []float64) []float64 {
+// SolveTransposed returns x with A' x = rhs.
+func (b *banded) SolveTransposed(rhs []float64) []float64 {
 	n, w := b.n, b.width()
 	x := make([]float64, n)
 	for i, o := range b.order {
@@ -261,14 +284,14 @@ func (b *banded) solveTransposed(rhs []float64) []float64 {
 
 // cuthillMcKee orders the symmetrized graph of a matrix breadth first from a
 // vertex far out, reversed.
-func cuthillMcKee(a sparse) []int {
+func cuthillMcKee(a Matrix) []int {
 	n := len(a)
 	near := make([][]int, n)
 	for i, row := range a {
 		for _, e := range row {
-			if e.col != i {
-				near[i] = append(near[i], e.col)
-				near[e.col] = append(near[e.col], i)
+			if e.Col != i {
+				near[i] = append(near[i], e.Col)
+				near[e.Col] = append(near[e.Col], i)
 			}
 		}
 	}
