@@ -1,6 +1,9 @@
 package ito
 
 import (
+	"maps"
+	"slices"
+
 	"epslim/generator/algebra"
 	"epslim/generator/ito/diagnostic"
 	"epslim/generator/ito/syntax"
@@ -11,6 +14,10 @@ import (
 type linear struct {
 	parts map[string]value // by differential, such as dt and dW1
 }
+
+// differentials returns the keys of parts in a fixed order, so that of several
+// errors the same one is met first in every run.
+func (f *linear) differentials() []string { return slices.Sorted(maps.Keys(f.parts)) }
 
 // equations works out the equations and reports those that are missing.
 func (r *reader) equations() {
@@ -171,7 +178,8 @@ func (l *lowering) linearSum(e *syntax.Binary) (*linear, bool) {
 		return nil, false
 	}
 	zero := value{expr: l.r.ring.Int(0), grade: gradeNone}
-	for d, b := range y.parts {
+	for _, d := range y.differentials() {
+		b := y.parts[d]
 		a, ok := x.parts[d]
 		if !ok {
 			if e.Op == "-" {
@@ -218,7 +226,8 @@ func (l *lowering) linearProduct(e *syntax.Binary) (*linear, bool) {
 	if !okX || !okC {
 		return nil, false
 	}
-	for d, v := range x.parts {
+	for _, d := range x.differentials() {
+		v := x.parts[d]
 		var ok bool
 		if e.Op == "/" {
 			v, ok = l.binary(e, v, c)

@@ -348,6 +348,8 @@ func TestLimits(t *testing.T) {
 		{"digits", head + strings.Repeat("1", 1001), Limits{}, "model:2:9: the number is out of bounds [bad-number]"},
 		{"exponent", head + "1e999999999999", Limits{}, "model:2:9: the number is out of bounds [bad-number]"},
 		{"encoding", "slow x\nlet é = 1 \xe9 2", Limits{}, "model:2:11: the text is not UTF-8: byte 0xe9 is no character [not-utf8]"},
+		{"control", "let q = \x00", Limits{}, "model:1:9: the character U+0000 has no meaning here [bad-character]"},
+		{"beyond", "let q = \U000e0001", Limits{}, "model:1:9: the character U+E0001 has no meaning here [bad-character]"},
 		{"empty", "", Limits{}, "model:1:1: the file holds no statement [empty]"},
 		{"comments", "# nothing\n\n", Limits{}, "model:1:1: the file holds no statement [empty]"},
 	} {

@@ -1,6 +1,7 @@
 package syntax
 
 import (
+	"fmt"
 	"strconv"
 	"strings"
 	"unicode"
@@ -443,7 +444,7 @@ func quoteRune(r rune) string {
 	if unicode.IsPrint(r) {
 		return "\"" + string(r) + "\""
 	}
-	return strings.ToUpper("U+" + strconv.FormatInt(0x10000+int64(r), 16)[1:])
+	return fmt.Sprintf("%U", r)
 }
 
 // characterHint says what to write for a character that looks like one of ours.
