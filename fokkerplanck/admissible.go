@@ -1,6 +1,7 @@
 package fokkerplanck
 
 import (
+	"context"
 	"fmt"
 
 	"epslim/generator/algebra"
@@ -11,7 +12,7 @@ import (
 // density of the diffusion, or returns the empty string: it must be
 // single-valued on periodic variables, and in one dimension without a period
 // carry no current.
-func (d *Diffusion) Admissible(p algebra.Expr) string {
+func (d *Diffusion) Admissible(ctx context.Context, p algebra.Expr) string {
 	if t, v, _ := d.singleValued(p); t == No {
 		return fmt.Sprintf("it does not return to its value over a period of %s", v)
 	}
@@ -22,7 +23,7 @@ func (d *Diffusion) Admissible(p algebra.Expr) string {
 		return ""
 	}
 	j := d.Current(p)[0]
-	if !j.IsZero() && j.ZeroTest() == algebra.VerdictNonZero {
+	if !d.vanishes(ctx, j) && j.ZeroTest() == algebra.VerdictNonZero {
 		if f, err := j.SubsFunc(d.Formulas); err == nil && f.IsZero() {
 			return ""
 		}

@@ -13,6 +13,8 @@
 package fokkerplanck
 
 import (
+	"context"
+
 	"epslim/generator/algebra"
 	"epslim/generator/ito"
 )
@@ -34,6 +36,20 @@ type Diffusion struct {
 	// be decided with names alone.
 	Formulas map[string]algebra.FuncDef
 	Values   map[string]algebra.Expr
+	// Number evaluates an expression at slow values, with formulas and values
+	// put in; it must know averages that are known by name only. Nil leaves
+	// everything numerical undecided.
+	Number func(ctx context.Context, e algebra.Expr, at map[string]float64) (float64, error)
+	// Vanishes decides whether an expression with such names is zero
+	// everywhere; nil takes the canonical form.
+	Vanishes func(ctx context.Context, e algebra.Expr) bool
+}
+
+func (d *Diffusion) vanishes(ctx context.Context, e algebra.Expr) bool {
+	if e.IsZero() {
+		return true
+	}
+	return d.Vanishes != nil && d.Vanishes(ctx, e)
 }
 
 func (d *Diffusion) names() []string {
@@ -98,7 +114,7 @@ func (d *Diffusion) Residual(p algebra.Expr) algebra.Expr {
 
 // with replaces functions by formulas, and parameters by values.
 func (d *Diffusion) with(formulas, values bool) (*Diffusion, error) {
-	out := &Diffusion{Ring: d.Ring, Slow: append([]Variable(nil), d.Slow...), Formulas: d.Formulas, Values: d.Values}
+	out := &Diffusion{Ring: d.Ring, Slow: append([]Variable(nil), d.Slow...), Formulas: d.Formulas, Values: d.Values, Number: d.Number, Vanishes: d.Vanishes}
 	sub := func(e algebra.Expr) (algebra.Expr, error) {
 		var err error
 		if formulas {
@@ -180,11 +196,11 @@ func (d *Diffusion) force() (h []algebra.Expr, ok bool, err error) {
 }
 
 // curl returns a non-zero component of the curl of h, or zero.
-func (d *Diffusion) curl(h []algebra.Expr) (algebra.Expr, [2]string) {
+func (d *Diffusion) curl(ctx context.Context, h []algebra.Expr) (algebra.Expr, [2]string) {
 	for i := range h {
 		for j := i + 1; j < len(h); j++ {
 			c := h[j].Diff(d.Slow[i].Name).Sub(h[i].Diff(d.Slow[j].Name))
-			if !c.IsZero() {
+			if !d.vanishes(ctx, c) {
 				return c, [2]string{d.Slow[i].Name, d.Slow[j].Name}
 			}
 		}

@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"math"
 
 	"epslim/generator/algebra"
 	"epslim/generator/ito"
@@ -97,20 +98,20 @@ func (d *Diffusion) attempt(ctx context.Context) (*Stationary, error) {
 		return s, nil
 	}
 	s.H = h
-	s.Curl, s.CurlAt = d.curl(h)
+	s.Curl, s.CurlAt = d.curl(ctx, h)
 	if !s.Curl.IsZero() {
 		s.Reversible = No
 		s.Why = fmt.Sprintf("h = A^-1 (2 f - div A) is no gradient: its curl in (%s, %s) does not vanish", s.CurlAt[0], s.CurlAt[1])
 		d.irreversible(s)
 		return s, nil
 	}
-	d.reversible(s)
+	d.reversible(ctx, s)
 	return s, nil
 }
 
 // reversible handles a curl-free h: the density is the exponential of its
 // potential, provided that this is single-valued.
-func (d *Diffusion) reversible(s *Stationary) {
+func (d *Diffusion) reversible(ctx context.Context, s *Stationary) {
 	u, err := d.Ring.Potential(s.H, d.names())
 	how := "potential of h in closed form"
 	if err != nil && len(d.Slow) == 1 {
@@ -131,7 +132,7 @@ func (d *Diffusion) reversible(s *Stationary) {
 	case Yes:
 		s.Reversible, s.Why = Yes, "h is the gradient of a single-valued potential"
 	case No:
-		d.multivalued(s, v, jump)
+		d.multivalued(ctx, s, v, jump)
 		if s.Reversible != Yes {
 			return
 		}
@@ -148,19 +149,72 @@ func (d *Diffusion) reversible(s *Stationary) {
 
 // multivalued decides by numbers when the jump of the potential over a
 // period is no closed zero.
-func (d *Diffusion) multivalued(s *Stationary, v string, jump algebra.Expr) {
+func (d *Diffusion) multivalued(ctx context.Context, s *Stationary, v string, jump algebra.Expr) {
 	s.Why = fmt.Sprintf("the potential of h changes by %s over a period of %s: the density is not exp of it unless that vanishes", jump, v)
-	x, err := numeric(jump)
+	x, err := d.jump(ctx, s.H, jump)
 	switch {
 	case err != nil:
 		s.Reversible = Unknown
-	case x > 1e-9 || x < -1e-9:
+	case x != 0 && math.Abs(x) > 1e-9:
 		s.Reversible = No
 		s.Why = fmt.Sprintf("the potential of h changes by %.10g over a period of %s, so it is not single-valued: a current runs around", x, v)
 	default:
 		s.Reversible = Yes
 		s.Why = fmt.Sprintf("the potential of h returns to its value over a period of %s (numerically, to %.1g)", v, x)
 	}
+}
+
+// jump is the change of the potential over a period, as a number: from the
+// closed form where that has a value, else in one dimension as the integral of
+// h over the period by the trapezoidal rule, which converges geometrically for
+// smooth periodic h.
+func (d *Diffusion) jump(ctx context.Context, h []algebra.Expr, closed algebra.Expr) (float64, error) {
+	if x, err := numeric(closed); err == nil {
+		return x, nil
+	}
+	if d.Number == nil || len(d.Slow) != 1 {
+		return 0, errors.New("no numbers")
+	}
+	v := d.Slow[0]
+	period, err := d.Number(ctx, d.periods()[v.Name], nil)
+	if err != nil {
+		return 0, err
+	}
+	start := 0.0
+	if v.A.Valid() {
+		if start, err = d.Number(ctx, v.A, nil); err != nil {
+			return 0, err
+		}
+	}
+	sum := func(n int) (s, size float64, err error) {
+		for k := 0; k < n; k++ {
+			y, err := d.Number(ctx, h[0], map[string]float64{v.Name: start + period*(float64(k)+0.5)/float64(n)})
+			if err != nil {
+				return 0, 0, err
+			}
+			s += y * period / float64(n)
+			size += math.Abs(y) * period / float64(n)
+		}
+		return s, size, nil
+	}
+	old, _, err := sum(16)
+	if err != nil {
+		return 0, err
+	}
+	for n := 32; n <= 512; n *= 2 {
+		s, size, err := sum(n)
+		if err != nil {
+			return 0, err
+		}
+		if math.Abs(s-old) <= 1e-11*size+1e-13 {
+			if math.Abs(s) <= 1e-10*size {
+				return 0, nil
+			}
+			return s, nil
+		}
+		old = s
+	}
+	return 0, errors.New("the integral over the period has not settled")
 }
 
 // integrate is the one-dimensional integrating factor: what has a closed

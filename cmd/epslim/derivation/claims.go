@@ -56,7 +56,7 @@ func (res *Result) judge(ctx context.Context, c *ito.Claim) Verdict {
 		i, j := index(c.Names[0]), index(c.Names[1])
 		return res.compare(ctx, c, c.Right, lim.Diffusion[i][j], func() string { return res.diffusionSlip(i, j, c.Right) })
 	case ito.ClaimDensity:
-		return res.judgeDensity(c)
+		return res.judgeDensity(ctx, c)
 	case ito.ClaimMean:
 		s, err := res.solveCell(ctx, c.Left)
 		if err != nil {
@@ -234,7 +234,7 @@ func (res *Result) diffusionSlip(i, j int, claimed algebra.Expr) string {
 }
 
 // judgeDensity tests a claimed density by the stationary equation itself.
-func (res *Result) judgeDensity(c *ito.Claim) Verdict {
+func (res *Result) judgeDensity(ctx context.Context, c *ito.Claim) Verdict {
 	p := c.Right
 	if p.IsZero() {
 		return Verdict{Claim: c, Verdict: Refuted, Reason: "zero is no density", Witness: &Witness{Difference: p}}
@@ -246,7 +246,7 @@ func (res *Result) judgeDensity(c *ito.Claim) Verdict {
 		if level.formulas && len(res.Diffusion.Formulas) == 0 {
 			continue
 		}
-		v, ok := res.densityAt(c, p, level.formulas, level.note)
+		v, ok := res.densityAt(ctx, c, p, level.formulas, level.note)
 		if ok {
 			return v
 		}
@@ -263,14 +263,23 @@ func (res *Result) judgeDensity(c *ito.Claim) Verdict {
 
 // densityAt proves a density at one level of detail; ok is false when the
 // equation is not satisfied there.
-func (res *Result) densityAt(c *ito.Claim, p algebra.Expr, formulas bool, note string) (Verdict, bool) {
+func (res *Result) densityAt(ctx context.Context, c *ito.Claim, p algebra.Expr, formulas bool, note string) (Verdict, bool) {
 	r := res.densityResidual(p, formulas, false)
-	z := r.ZeroTest()
+	var z algebra.Verdict
+	switch {
+	case !res.Route.IsNumerical(r):
+		z = r.ZeroTest()
+	case res.Diffusion.Vanishes(ctx, r):
+		z = algebra.VerdictUndecided
+		note = " with numerical averages"
+	default:
+		z = algebra.VerdictNonZero
+	}
 	if z == algebra.VerdictNonZero {
 		return Verdict{}, false
 	}
 	d := res.Diffusion
-	if why := d.Admissible(p); why != "" {
+	if why := d.Admissible(ctx, p); why != "" {
 		w := &Witness{Difference: res.System.Ring.Int(0), Slip: why}
 		return Verdict{Claim: c, Verdict: Refuted, Reason: "the stationary equation holds, but " + why, Witness: w}, true
 	}

@@ -116,6 +116,7 @@ func (res *Result) run(ctx context.Context, opt Options) error {
 		res.Stratonovich = perturb.StratonovichDrift(lim.Drift, res.Noise, prob.Slow)
 	}
 	res.Diffusion = slowDiffusion(sys, lim)
+	res.numbers()
 	if res.Stationary, err = res.Diffusion.Solve(ctx); err != nil {
 		return err
 	}
@@ -182,6 +183,33 @@ func slowDiffusion(sys *ito.System, lim *perturb.Limit) *fokkerplanck.Diffusion 
 		d.Slow = append(d.Slow, fokkerplanck.Variable{Name: v.Name, Kind: v.Domain.Kind, A: v.Domain.A, B: v.Domain.B})
 	}
 	return d
+}
+
+// numbers gives the Fokker-Planck side the means to evaluate averages that are
+// known by name only.
+func (res *Result) numbers() {
+	known := map[string]bool{"pi": true}
+	for n := range res.System.Values() {
+		known[n] = true
+	}
+	res.Diffusion.Number = func(ctx context.Context, e algebra.Expr, at map[string]float64) (float64, error) {
+		if err := res.missing(e, known); err != nil {
+			return 0, err
+		}
+		p := res.Route.At(nil, false)
+		for n, v := range at {
+			p.Bind(n, new(big.Float).SetPrec(200).SetFloat64(v))
+		}
+		v, _, err := p.Value(ctx, e)
+		return v, err
+	}
+	res.Diffusion.Vanishes = func(ctx context.Context, e algebra.Expr) bool {
+		if !res.Route.IsNumerical(e) {
+			return false
+		}
+		zero, _, err := res.Route.Settle(ctx, e)
+		return err == nil && zero
+	}
 }
 
 // TimeScale is the time on which the limit holds: "1", "1/eps", "1/eps^2".
