@@ -95,9 +95,12 @@ func runPair(ctx context.Context, fine, coarse Coupled, ratio int, s Settings) (
 	return total, p, q, err
 }
 
+// maxRatio bounds the rows of random numbers that a pair keeps.
+const maxRatio = 1 << 12
+
 func pairPlans(fine, coarse Coupled, ratio int, s Settings) (p, q *plan, err error) {
-	if ratio < 1 || ratio > 1<<20 {
-		return nil, nil, fmt.Errorf("ensemble: a ratio of steps of %d; between 1 and %d are possible", ratio, 1<<20)
+	if ratio < 1 || ratio > maxRatio {
+		return nil, nil, fmt.Errorf("ensemble: a ratio of steps of %d; between 1 and %d are possible", ratio, maxRatio)
 	}
 	if len(s.Times) > 0 || len(s.Histograms) > 0 || s.LongTime != nil || s.Checkpoint != "" {
 		return nil, nil, errors.New("ensemble: a pair has moments at the last time only: no observation times, histograms, long-time averages or checkpoints")

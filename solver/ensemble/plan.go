@@ -148,7 +148,16 @@ func (p *plan) compileObservables() error {
 	return nil
 }
 
-// Describe says in one line what a run does: scheme, largest step, steps.
-func (p *plan) describe() string {
-	return fmt.Sprintf("scheme %s, largest step %g, %d steps", p.scheme.Name, p.step, p.steps)
+// StepSize returns the number of operations of one compiled step of the scheme
+// and the number of rows of random numbers it draws.
+func (m *Model) StepSize(scheme string, h float64) (operations, random int, err error) {
+	s, err := SchemeByName(scheme)
+	if err != nil {
+		return 0, 0, err
+	}
+	st, err := newStepper(m, s, h)
+	if err != nil {
+		return 0, 0, err
+	}
+	return st.program.Len(), len(st.rows), nil
 }

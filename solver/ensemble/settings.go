@@ -63,20 +63,20 @@ type LongTime struct {
 
 // Progress reports on a run.
 type Progress struct {
-	Done, Total  uint64        // paths
-	Steps        uint64        // path-steps done by this process
-	StepsPerSec  float64       // path-steps per second
-	Elapsed      time.Duration // since the start of this process's part
-	Remaining    time.Duration // estimate
-	StandardErrs []float64     // reserved for targets: the current error bars
+	Done, Total uint64        // paths
+	Steps       uint64        // path-steps done by this process
+	StepsPerSec float64       // path-steps per second
+	Elapsed     time.Duration // since the start of this process's part
+	Remaining   time.Duration // estimate
 }
 
 // Limits on what is accepted.
 const (
 	MaxPaths = 1 << 40
 	MaxSteps = 1 << 40 // steps of one path
-	MaxTimes = 100000
+	MaxTimes = 10000
 	MaxCells = 1 << 24
+	MaxSums  = 1 << 17 // exact sums: times * n(n+3)/2 for n observables
 )
 
 // check validates the settings for the model.
@@ -100,6 +100,10 @@ func (s *Settings) check(m *Model) error {
 	}
 	if len(s.Times) > MaxTimes {
 		bad("%d observation times; at most %d are possible", len(s.Times), MaxTimes)
+	}
+	n := len(m.observables())
+	if sums := len(s.times()) * n * (n + 3) / 2; sums > MaxSums {
+		bad("%d observables at %d times need %d sums; at most %d are possible", n, len(s.times()), sums, MaxSums)
 	}
 	last := 0.0
 	for _, t := range s.Times {

@@ -7,8 +7,6 @@ import (
 	"math/rand/v2"
 	"testing"
 	"time"
-
-	"epslim/solver/kernel"
 )
 
 func TestMomentsAgainstTwoPasses(t *testing.T) {
@@ -243,7 +241,29 @@ func TestStudyOfTheCrawler(t *testing.T) {
 	if c, err = same.Run(context.Background(), Settings{To: 1 << 12, Time: 0.1, Seed: 1}); err != nil || c.Rates[0].Status != RateNoiseFloor {
 		t.Errorf("equal laws: %v, %v", c.Rates[0], err)
 	}
-	if kernel.BlockSize%64 != 0 {
-		t.Error("the block is not a whole number of vectors")
+}
+
+// A traced path is the path of the ensemble.
+func TestTracesAreThePathsOfTheEnsemble(t *testing.T) {
+	m, s := everything()
+	s.LongTime, s.Histograms = nil, nil
+	paths := []uint64{5, 700, 6, 1699}
+	tr, err := Trace(context.Background(), m, s, paths)
+	if err != nil {
+		t.Fatal(err)
+	}
+	for i, k := range paths {
+		s.From, s.To = k, k+1
+		r := run(t, m, s)
+		for at := range r.Times {
+			for o, want := range r.Times[at].Mean {
+				if got := tr.Values[i][at][o]; got != want {
+					t.Errorf("path %d time %v: %v, want %v", k, tr.Times[at], got, want)
+				}
+			}
+		}
+	}
+	if _, err := Trace(context.Background(), m, s, nil); err == nil {
+		t.Error("no paths: no error")
 	}
 }
