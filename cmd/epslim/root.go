@@ -71,7 +71,7 @@ func (a *app) root() *cobra.Command {
 	}
 	root.PersistentFlags().StringArrayVar(&a.set, "set", nil, "set a parameter (D=1.5) or a function (\"v(x,y)=1+x^2\"); repeatable")
 	root.PersistentFlags().BoolVar(&a.quiet, "quiet", false, "print results only")
-	root.AddCommand(a.deriveCommand(), a.densityCommand())
+	root.AddCommand(a.deriveCommand(), a.densityCommand(), a.checkCommand(), a.ensembleCommand())
 	return root
 }
 

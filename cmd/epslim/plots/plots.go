@@ -17,6 +17,7 @@ import (
 	"epslim/fokkerplanck"
 	"epslim/generator/ito"
 	"epslim/solver/density"
+	"epslim/solver/ensemble"
 )
 
 // Meta is the provenance as the unseen fields of a figure.
@@ -186,4 +187,28 @@ func DensityCSV(r *density.Result, diff *density.Difference, cur *density.Curren
 		b.WriteByte('\n')
 	}
 	return []byte(b.String())
+}
+
+// EpsConvergence draws the distance of the means of the full system from those
+// of the limit, with bars of two standard errors.
+func EpsConvergence(res *derivation.Result, c *ensemble.Convergence, meta []figure.Field) *figure.Plot {
+	d := figure.EpsConvergenceData{Small: res.System.Small, ErrorLabel: "distance of the mean from the limit"}
+	alt := ""
+	for i, n := range c.Limit.Observables {
+		e := figure.EpsErrors{Label: figure.Symbol(n)}
+		for _, p := range c.Points[i] {
+			v := math.Abs(p.Value)
+			if v == 0 {
+				continue
+			}
+			e.Eps = append(e.Eps, p.Eps)
+			e.Error = append(e.Error, v)
+			e.Low = append(e.Low, v-2*p.StdErr)
+			e.High = append(e.High, v+2*p.StdErr)
+			d.NoiseFloor = math.Max(d.NoiseFloor, 2*p.StdErr)
+		}
+		d.Observed = append(d.Observed, e)
+		alt += fmt.Sprintf("Mean of %s: rate in %s %s. ", n, res.System.Small, c.Rates[i])
+	}
+	return figure.EpsConvergence(d, figure.Settings{Title: "Convergence in " + res.System.Small, Alt: strings.TrimSpace(alt), Meta: meta})
 }

@@ -4,6 +4,8 @@ import (
 	"math/big"
 	"regexp"
 	"strings"
+
+	"epslim/cmd/epslim/derivation"
 )
 
 // The sentences of the derivation hold small pieces of mathematics in plain
@@ -79,4 +81,18 @@ func (n *notation) rich(s string) []Span {
 		return nil
 	}
 	return []Span{text(s)}
+}
+
+// Rich is a sentence about a derivation with its formulas set as such.
+func Rich(res *derivation.Result, s string) []Span { return newTeller(res).rich(s) }
+
+// WitnessSpans shows why a claim was refuted: the point, both values and the
+// difference, one line each.
+func WitnessSpans(res *derivation.Result, v derivation.Verdict) [][]Span {
+	if v.Witness == nil {
+		return nil
+	}
+	w := *v.Witness
+	w.Slip = ""
+	return newTeller(res).witness(&w)
 }

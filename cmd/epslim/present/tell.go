@@ -682,32 +682,64 @@ func (t *teller) fokkerPlanck() Section {
 	}
 	head := line(join(t.dt(t.timeVariable()), t.own("p")), equals, div...)
 	sec.Blocks = append(sec.Blocks, Equations{ID: "fokker-planck", Lines: append([]Line{head}, ls...)})
+	if t.anyLong() {
+		sec.Blocks = append(sec.Blocks, Para{text("Here "), inline(t.own("f")), text(" is the Itô drift and "), inline(t.own("A")), text(" the diffusion matrix above.")})
+	}
 	if b := t.boundaries(); len(b) > 0 {
 		sec.Blocks = append(sec.Blocks, b)
 	}
 	return sec
 }
 
-// current is f_i p - 1/2 sum_j d_j (A_ij p).
+// current is f_i p - 1/2 sum_j d_j (A_ij p). Long coefficients stand there by
+// their names.
 func (t *teller) current(i int) []Term {
 	lim := t.res.Limit
-	ts := t.scaled(lim.Drift[i], t.own("p"))
+	p := t.own("p")
+	ts := t.scaled(lim.Drift[i], p)
+	if t.long(lim.Drift[i]) {
+		ts = []Term{{Pre: sub(t.own("f"), t.symbol(t.names[i])), Post: p}}
+	}
 	for j, v := range t.names {
 		a := lim.Diffusion[i][j]
 		if a.IsZero() {
 			continue
 		}
-		if !dependsOn(a, t.names) {
+		if !dependsOn(a, t.names) && !t.long(a) {
 			k := a.Mul(a.Ring().Frac(1, 2)).Neg()
-			ts = append(ts, t.scaled(k, join(t.partial(v, 1), thin, t.own("p")))...)
+			ts = append(ts, t.scaled(k, join(t.partial(v, 1), thin, p))...)
 			continue
 		}
-		inner := t.scaled(a, t.own("p"))
-		body := signed(inner)
+		body := glue(t.entry(i, j), p)
+		if !t.long(a) {
+			body = signed(t.scaled(a, p))
+		}
 		ts = append(ts, Term{Neg: true, Pre: join(half, thin, t.partial(v, 1)), Post: paren(body)})
 	}
 	return ts
 }
+
+func (t *teller) anyLong() bool {
+	for i, f := range t.res.Limit.Drift {
+		if t.long(f) {
+			return true
+		}
+		for _, a := range t.res.Limit.Diffusion[i] {
+			if t.long(a) {
+				return true
+			}
+		}
+	}
+	return false
+}
+
+// entry is the name of an entry of A, in the order in which it was listed.
+func (t *teller) entry(i, j int) Math {
+	return sub(t.own("A"), join(t.symbol(t.names[min(i, j)]), t.symbol(t.names[max(i, j)])))
+}
+
+// long tells coefficients that are better called by their names.
+func (t *teller) long(e algebra.Expr) bool { return len(e.String()) > 60 }
 
 func dependsOn(e algebra.Expr, names []string) bool {
 	for _, n := range names {

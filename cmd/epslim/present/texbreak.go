@@ -111,7 +111,16 @@ func (l *latexWriter) open(t Term) (pre string, inner *algebra.Form, post string
 	default:
 		return "", nil, "", false
 	}
-	before := product(rest)
+	// A derivative goes behind, so that it does not seem to act on the sum.
+	var kept []*algebra.Form
+	for _, g := range rest {
+		if g.Op == algebra.FormDiff && len(g.Args) == 0 {
+			post = `\,` + g.LaTeX(algebra.LatexOptions{}) + post
+			continue
+		}
+		kept = append(kept, g)
+	}
+	before := product(kept)
 	if den != nil {
 		if before == nil {
 			before = one()
