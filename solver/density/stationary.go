@@ -224,7 +224,7 @@ func absorbingSides(g *grid.Grid) error {
 
 func (r *Result) direct(member []bool) error {
 	start := time.Now()
-	e, err := volume.Eliminate(r.Operator, 0, member)
+	e, err := volume.EliminateClass(r.Operator, member)
 	if err != nil {
 		return err
 	}

@@ -81,7 +81,15 @@ func (o *order) bandwidth(m *Operator) int {
 func Eliminate(m *Operator, shift float64, member []bool) (*Elimination, error) {
 	o := newOrder(m.Grid)
 	byPlace := o.cells(m.Grid)
-	return eliminate(m, shift, member, byPlace, o.bandwidth(m))
+	return eliminate(m, shift, member, byPlace, o.bandwidth(m), false)
+}
+
+// EliminateClass is Eliminate for the stationary vector of a single recurrent
+// class. Where all ways out of a cell have rates below the range of floating
+// point numbers, the cell keeps all mass that comes to it.
+func EliminateClass(m *Operator, member []bool) (*Elimination, error) {
+	o := newOrder(m.Grid)
+	return eliminate(m, 0, member, o.cells(m.Grid), o.bandwidth(m), true)
 }
 
 // EliminateLast is Eliminate for all cells with the given cell eliminated last,
@@ -93,7 +101,7 @@ func EliminateLast(m *Operator, shift float64, last int) (*Elimination, error) {
 	byPlace := o.cells(m.Grid)
 	at := slices.Index(byPlace, last)
 	byPlace[0], byPlace[at] = byPlace[at], byPlace[0]
-	return eliminate(m, shift, nil, byPlace, len(byPlace)-1)
+	return eliminate(m, shift, nil, byPlace, len(byPlace)-1, false)
 }
 
 // cells lists the cells in the order of their places.
@@ -109,7 +117,7 @@ func (o *order) cells(g *grid.Grid) []int {
 	return byPlace
 }
 
-func eliminate(m *Operator, shift float64, member []bool, byPlace []int, band int) (*Elimination, error) {
+func eliminate(m *Operator, shift float64, member []bool, byPlace []int, band int, keep bool) (*Elimination, error) {
 	n := len(byPlace)
 	e := &Elimination{m: m, place: make([]int, n), cell: make([]int, 0, n), band: band}
 	for _, k := range byPlace {
@@ -120,7 +128,7 @@ func eliminate(m *Operator, shift float64, member []bool, byPlace []int, band in
 		}
 	}
 	e.fill(shift)
-	return e, e.factor()
+	return e, e.factor(keep)
 }
 
 func (e *Elimination) fill(shift float64) {
@@ -166,7 +174,7 @@ func (e *Elimination) fill(shift float64) {
 
 // factor eliminates the positions from the last to the first. rate[p][j] with
 // j < p then holds the outflow fractions, rate[j][p] the inflows.
-func (e *Elimination) factor() error {
+func (e *Elimination) factor(keep bool) error {
 	n, b, w := len(e.cell), e.band, 2*e.band+1
 	for p := n - 1; p > 0; p-- {
 		lo := max(0, p-b)
@@ -175,6 +183,10 @@ func (e *Elimination) factor() error {
 		s := lost
 		for _, v := range out {
 			s += v
+		}
+		if s < 1e-280 && keep {
+			clear(out)
+			s = 1e-280
 		}
 		if !(s > 0) {
 			return fmt.Errorf("elimination: nothing leaves the cell at %s", e.m.Grid.Describe(e.cell[p]))
@@ -208,19 +220,23 @@ func (e *Elimination) Stationary(p []float64) {
 	x := make([]float64, n)
 	x[0] = 1
 	big := 1.0
-	for q := 1; q < n; q++ {
-		var s float64
+	inflow := func(q int) (s float64) {
 		for i := max(0, q-b); i < q; i++ {
 			s += e.rate[i*w+q-i+b] * x[i]
 		}
-		x[q] = s / e.total[q]
-		big = max(big, x[q])
-		if x[q] > 1e200 {
-			for i := range x[:q+1] {
+		return s
+	}
+	for q := 1; q < n; q++ {
+		v := inflow(q) / e.total[q]
+		for tries := 0; v > 1e200 && tries < 4; tries++ {
+			for i := range x[:q] {
 				x[i] *= 1e-200
 			}
 			big *= 1e-200
+			v = inflow(q) / e.total[q]
 		}
+		x[q] = min(v, 1e300)
+		big = max(big, x[q])
 	}
 	l := &e.m.Layout
 	clear(p)
