@@ -25,11 +25,11 @@ type value struct {
 // The arithmetic of a model is bounded: a short text such as (x+y)^100000
 // must not exhaust time or memory.
 const (
-	maxTerms = 20_000     // terms of one result
-	maxPair  = 40_000     // product of the sizes of two operands
-	maxBits  = 100_000    // of the numbers in a result
-	maxWork  = 30_000_000 // sum of the products of sizes over the file
-	maxDepth = 10         // of functions and roots within each other, through abbreviations too
+	maxTerms = 20_000    // terms of one result
+	maxPair  = 40_000    // product of the sizes of two operands
+	maxBits  = 100_000   // of the numbers in a result
+	maxWork  = 5_000_000 // sum of the products of sizes over the file
+	maxDepth = 10        // of functions and roots within each other, through abbreviations too
 )
 
 // lowering turns expressions of one text into algebra. Its methods report errors
@@ -297,6 +297,9 @@ func (l *lowering) power(e *syntax.Binary, x, y value) (out value, ok bool) {
 	if !ok || !l.affordable(e, terms*x.expr.Size(), bits) {
 		return out, false
 	}
+	// Repeated squaring multiplies two sums that have the terms of the half power.
+	half := min(terms, maxPair)
+	l.r.work += min(half*half/4, maxWork/4)
 	out.bits = bits
 	if constant {
 		out.grade, ok = x.grade.pow(q)
