@@ -234,6 +234,19 @@ func (l *lowering) emitTrig(x Node, n node) int32 {
 	return l.value[x]
 }
 
+// lastReads returns for each value the number of the last operation that reads it.
+func (l *lowering) lastReads() []int {
+	last := make([]int, l.values)
+	for i, o := range l.ops {
+		for _, v := range [...]int32{o.a, o.b, o.e} {
+			if v >= 0 {
+				last[v] = i
+			}
+		}
+	}
+	return last
+}
+
 // allocate replaces values by rows: inputs, then outputs, then temporaries,
 // which are reused once their last reader is done. No operation writes a row it
 // reads: the kernels with a slow path look at their operand again afterwards.
@@ -254,14 +267,7 @@ func (l *lowering) allocate(results []int32) *Program {
 			tail = append(tail, op{code: opCopy, d: nin + int32(i), a: row[v], b: none, e: none})
 		}
 	}
-	last := make([]int, l.values)
-	for i, o := range l.ops {
-		for _, v := range [...]int32{o.a, o.b, o.e} {
-			if v >= 0 {
-				last[v] = i
-			}
-		}
-	}
+	last := l.lastReads()
 	rows := nin + nout
 	var free []int32
 	take := func(v int32) {
