@@ -274,6 +274,9 @@ func (p texPrinter) callParen(f *Form, sup string) string {
 	case "sin", "cos", "tan", "sinh", "cosh", "tanh", "log":
 		return "\\" + f.Name + sup + in(args...)
 	case "exp":
+		if f.Args[0].isOne() {
+			return "\\mathrm{e}"
+		}
 		x := texPrinter{slash: true}.form(f.Args[0], bindSum)
 		if len(f.Args[0].String()) > 32 {
 			return "\\exp" + in(args...)

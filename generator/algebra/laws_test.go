@@ -88,11 +88,12 @@ func checkLaws(r *Ring, ta, tb, tc *ast) error {
 	return nil
 }
 
-// hasAlgebraicKernel looks inside arguments, too.
+// hasAlgebraicKernel looks inside arguments, too. Roots of unity other than
+// the tabulated ones count: the form does not know their relations.
 func hasAlgebraicKernel(e Expr) bool {
 	found := false
 	e.eachKernel(func(k *kernel) {
-		found = found || k.algebraic && k.kind != kindPrime
+		found = found || k.algebraic && k.kind != kindPrime || k.kind == kindCis && k.args[0].Equal(e.n.r.Pi())
 		for _, a := range k.args {
 			found = found || hasAlgebraicKernel(a)
 		}

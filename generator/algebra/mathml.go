@@ -214,6 +214,9 @@ func mathCall(f *Form) string {
 	}
 	switch f.Name {
 	case "exp":
+		if f.Args[0].isOne() {
+			return mmlUpright("e")
+		}
 		return "<msup>" + mmlUpright("e") + mrow(args[0]) + "</msup>"
 	case "cis":
 		return "<msup>" + mmlUpright("e") + mrow(mmlUpright("i")+mmlTimes+mathForm(f.Args[0], bindPower)) + "</msup>"

@@ -35,6 +35,7 @@ func TestLaTeXAndText(t *testing.T) {
 		{"D_r*x1*speed", `D_{r} \, \mathit{speed} \, x_{1}`, "Dᵣ·speed·x₁"},
 		{"lambda_max", `\lambda_{\mathrm{max}}`, "λₘₐₓ"},
 		{"eps", `\varepsilon`, "ε"},
+		{"exp(1)*x", `x \mathrm{e}`, "x·e"},
 		{"q^2", `{q^{\ast}}^{2}`, "q²"},
 		{"straße*ж", `\mathit{stra\text{ß}e} \, \mathrm{u436}`, "straße·ж"},
 	} {

@@ -208,6 +208,11 @@ func textCall(f *Form) string {
 			return "|" + args[0] + "|"
 		}
 		return "abs" + in(args...)
+	case "exp":
+		if f.Args[0].isOne() {
+			return "e"
+		}
+		return f.Name + in(args...)
 	case "gamma":
 		return "Γ" + in(args...)
 	case "besseli":
@@ -222,7 +227,7 @@ func textCall(f *Form) string {
 		return "ψ^(" + args[0] + ")" + in(args[1])
 	case "cis":
 		return "exp(i·" + textForm(f.Args[0], bindPower) + ")"
-	case "exp", "log", "sin", "cos", "tan", "sinh", "cosh", "tanh", "sign", "erf":
+	case "log", "sin", "cos", "tan", "sinh", "cosh", "tanh", "sign", "erf":
 		return f.Name + in(args...)
 	}
 	return textName(f.Name) + in(args...)
