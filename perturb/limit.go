@@ -19,7 +19,9 @@ func (e *expansion) limit(ctx context.Context, o Order) error {
 	}
 	e.out.Drift, e.out.Diffusion = drift, diffusion
 	if o.Power.Sign() < 0 {
-		return e.refuse(o)
+		if err := e.tooEarly(o); err != nil {
+			return err
+		}
 	}
 	e.out.Regime = "averaging"
 	for _, s := range o.Source {
@@ -38,7 +40,41 @@ func (e *expansion) limit(ctx context.Context, o Order) error {
 	if err := e.correctors(); err != nil {
 		return err
 	}
-	return e.origins(ctx, o)
+	if err := e.origins(ctx, o); err != nil {
+		return err
+	}
+	next := e.Next
+	if e.frame != nil && e.frame.Short && next == nil {
+		next = big.NewRat(1, 1)
+	}
+	if next == nil {
+		return nil
+	}
+	return e.corrections(ctx, o.J, next)
+}
+
+// tooEarly deals with an averaged operator that does not vanish at a negative
+// power: a refusal, or a moving frame where one was asked for.
+func (e *expansion) tooEarly(o Order) error {
+	for _, row := range e.out.Diffusion {
+		for _, a := range row {
+			if !a.IsZero() {
+				return e.refuse(o)
+			}
+		}
+	}
+	if !e.MovingFrame {
+		return e.refuse(o)
+	}
+	f := &Frame{Power: o.Power, Velocity: e.out.Drift}
+	if e.frame == nil && e.movable(e.out.Drift) {
+		e.moved = e.subtract(o.Power, e.out.Drift)
+		e.frame = f
+		return errMoved
+	}
+	f.Short = true
+	e.frame = f
+	return nil
 }
 
 // coefficients splits an operator on u0 into drift and A = sigma sigma^T.

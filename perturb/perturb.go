@@ -37,6 +37,11 @@ type Problem struct {
 	// power of the small parameter at which the averaged operator is still
 	// looked for. Zero means 4.
 	MaxPower int
+	// MovingFrame deals with a large mean drift instead of refusing it.
+	MovingFrame bool
+	// Next asks for corrections to the limit up to this power of the small
+	// parameter, relative to the limit; nil asks for none.
+	Next *big.Rat
 	// Numbers settle conditions that the declared signs leave open.
 	Numbers cell.Numbers
 }
@@ -86,21 +91,24 @@ type Contribution struct {
 
 // Limit is the outcome of the expansion.
 type Limit struct {
-	Lead      *big.Rat // lowest power of the small parameter
-	Power     *big.Rat // power at which the limit appears; time is of order eps^-Power
-	U0        string   // name of the undetermined function
-	Orders    []Order
-	Regime    string // "homogenization" or "averaging"
-	Method    string // "closure", ...
-	Drift     []algebra.Expr
-	Diffusion [][]algebra.Expr
-	Cell      []algebra.Expr // corrector of each slow variable's large drift
-	Terms     [][]Term
-	Pivots    []algebra.Expr  // divided by on the way; must not vanish
-	Existence *cell.Existence // of the stationary law of the fast process
-	Process   *cell.Process
-	Generator algebra.Expr // the limit generator on u0
-	routes    []cell.Route
+	Lead        *big.Rat // lowest power of the small parameter
+	Power       *big.Rat // power at which the limit appears; time is of order eps^-Power
+	U0          string   // name of the undetermined function
+	Orders      []Order
+	Regime      string // "homogenization" or "averaging"
+	Method      string // "closure", ...
+	Drift       []algebra.Expr
+	Diffusion   [][]algebra.Expr
+	Cell        []algebra.Expr // corrector of each slow variable's large drift
+	Terms       [][]Term
+	Pivots      []algebra.Expr  // divided by on the way; must not vanish
+	Existence   *cell.Existence // of the stationary law of the fast process
+	Process     *cell.Process
+	Generator   algebra.Expr // the limit generator on u0
+	Frame       *Frame       // nil unless a mean drift was dealt with
+	Corrections []Correction // beyond the limit, as far as asked for
+	WhyNot      []string     // why earlier routes did not apply
+	routes      []cell.Route
 }
 
 // Term is a piece of the Ito drift with its origin.
@@ -117,6 +125,8 @@ type expansion struct {
 	u     []algebra.Expr
 	used  map[string]bool
 	out   *Limit
+	frame *Frame
+	moved *generator.Graded // the generator in a moving frame, for another run
 }
 
 // Derive runs the expansion. A model without a limit gives a *Refusal.
@@ -124,14 +134,28 @@ func Derive(ctx context.Context, p Problem) (*Limit, error) {
 	if p.MaxPower == 0 {
 		p.MaxPower = 4
 	}
-	e := &expansion{Problem: p, used: map[string]bool{}}
-	var out *Limit
-	err := algebra.Guard(func() error {
-		var err error
-		out, err = e.run(ctx)
-		return err
-	})
-	return out, err
+	var frame *Frame
+	for {
+		e := &expansion{Problem: p, used: map[string]bool{}, frame: frame}
+		var out *Limit
+		err := algebra.Guard(func() error {
+			var err error
+			out, err = e.run(ctx)
+			return err
+		})
+		if errors.Is(err, errMoved) {
+			p.Gen, frame = e.moved, e.frame
+			continue
+		}
+		var bad *cell.NotErgodic
+		if errors.As(err, &bad) {
+			err = &Refusal{Reason: NotErgodic, Order: p.Gen.Parts[0].Power, Text: bad.Text, Mend: bad.Mend, Detail: bad.Detail}
+		}
+		if out != nil {
+			out.Frame = e.frame
+		}
+		return out, err
+	}
 }
 
 func (e *expansion) run(ctx context.Context) (*Limit, error) {
@@ -153,8 +177,10 @@ func (e *expansion) run(ctx context.Context) (*Limit, error) {
 	}
 	e.spacing()
 	name := "u₀"
-	if err := e.Ring.DeclareFunction(name, e.Slow, algebra.Attr{Latex: "u_{0}"}); err != nil {
-		return nil, err
+	if e.frame == nil {
+		if err := e.Ring.DeclareFunction(name, e.Slow, algebra.Attr{Latex: "u_{0}"}); err != nil {
+			return nil, err
+		}
 	}
 	args := make([]algebra.Expr, len(e.Slow))
 	for i, s := range e.Slow {
@@ -343,7 +369,7 @@ func (e *expansion) derivative(index []int) algebra.Expr {
 
 // solve tries the routes in turn.
 func (e *expansion) solve(ctx context.Context, f algebra.Expr) (cell.Solution, error) {
-	var first error
+	var last error
 	for _, r := range e.Routes {
 		s, err := r.Solve(ctx, f)
 		if err == nil {
@@ -351,32 +377,35 @@ func (e *expansion) solve(ctx context.Context, f algebra.Expr) (cell.Solution, e
 			e.out.Method = r.Name()
 			return s, nil
 		}
-		if first == nil {
-			first = err
+		if !errors.Is(err, cell.ErrDoesNotApply) {
+			return cell.Solution{}, err
+		}
+		e.whyNot(r.Name() + ": " + err.Error())
+		last = err
+	}
+	return cell.Solution{}, last
+}
+
+func (e *expansion) whyNot(s string) {
+	for _, t := range e.out.WhyNot {
+		if t == s {
+			return
 		}
 	}
-	return cell.Solution{}, first
+	if len(e.out.WhyNot) < 3 {
+		e.out.WhyNot = append(e.out.WhyNot, s)
+	}
 }
 
 // nothing is the outcome when no averaged operator appears at all.
 func (e *expansion) nothing(lead generator.Part) (*Limit, error) {
-	n := len(e.Slow)
 	e.out.Power = new(big.Rat)
 	e.out.Regime = "averaging"
 	e.out.Method = "closure"
 	e.out.Generator = e.Ring.Int(0)
-	e.out.Drift = make([]algebra.Expr, n)
-	e.out.Diffusion = make([][]algebra.Expr, n)
-	e.out.Terms = make([][]Term, n)
-	e.out.Cell = make([]algebra.Expr, n)
-	for i := range e.out.Drift {
-		e.out.Drift[i] = e.Ring.Int(0)
-		e.out.Cell[i] = e.Ring.Int(0)
-		e.out.Diffusion[i] = make([]algebra.Expr, n)
-		for k := range e.out.Diffusion[i] {
-			e.out.Diffusion[i][k] = e.Ring.Int(0)
-		}
-	}
+	e.out.Terms = make([][]Term, len(e.Slow))
+	e.out.Drift, e.out.Diffusion = e.zeros()
+	e.out.Cell, _ = e.zeros()
 	return e.out, nil
 }
 

@@ -13,7 +13,7 @@ import (
 
 func (a *app) deriveCommand() *cobra.Command {
 	var format string
-	var at []string
+	var opt derivation.Options
 	cmd := &cobra.Command{
 		Use:   "derive FILE",
 		Short: "Derive the limiting SDE and its stationary density",
@@ -29,7 +29,7 @@ func (a *app) deriveCommand() *cobra.Command {
 			if err != nil {
 				return err
 			}
-			res, err := derivation.Run(cmd.Context(), sys, derivation.Options{At: at})
+			res, err := derivation.Run(cmd.Context(), sys, opt)
 			if err != nil {
 				return a.deriveError(err)
 			}
@@ -44,7 +44,9 @@ func (a *app) deriveCommand() *cobra.Command {
 		},
 	}
 	cmd.Flags().StringVar(&format, "format", "text", "text, json, latex or markdown")
-	cmd.Flags().StringArrayVar(&at, "at", nil, "a point \"x=0.3,y=0.2\" at which numbers are wanted; repeatable")
+	cmd.Flags().StringArrayVar(&opt.At, "at", nil, "a point \"x=0.3,y=0.2\" at which numbers are wanted; repeatable")
+	cmd.Flags().BoolVar(&opt.MovingFrame, "moving-frame", false, "subtract a large mean drift instead of refusing the model")
+	cmd.Flags().IntVar(&opt.Next, "order", 0, "also derive the corrections up to this power of the small parameter")
 	return cmd
 }
 

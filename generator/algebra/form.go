@@ -122,9 +122,14 @@ func (b *former) arrange(e Expr, depth int) *Form {
 	best := b.factored(num, den, depth)
 	if depth < maxFormDepth && len(num) > 1 {
 		if len(den) == 0 {
-			best = shorter(best, b.expanded(num))
+			x := b.expanded(num)
+			if best.Op == FormQuotient && best.Args[0].Op == FormSum && len(num) <= 4 && !hasAlgebraic(num) && 4*x.cost() <= 5*best.cost() {
+				best = x // a sum of quotients reads better than one long quotient
+			}
+			best = shorter(best, x)
 		}
 		if len(num) <= 400 {
+			best = shorter(best, b.byFunctions(e, depth))
 			best = shorter(best, b.byDerivatives(e, num, depth))
 		}
 		if len(num) <= 40 {
@@ -163,10 +168,73 @@ func (b *former) divided(e Expr, depth int) *Form {
 }
 
 func shorter(a, b *Form) *Form {
-	if b == nil || len(b.String()) >= len(a.String()) {
+	if b == nil || b.cost() >= a.cost() {
 		return a
 	}
 	return b
+}
+
+// cost measures how hard a form is to read: its length, more for sums nested
+// in sums, less for the square of a sum.
+func (f *Form) cost() int {
+	n := len(f.String())
+	var walk func(g *Form, depth int)
+	walk = func(g *Form, depth int) {
+		switch g.Op {
+		case FormSum:
+			if depth > 0 {
+				n += 3 * depth
+			}
+			depth++
+		case FormPower:
+			if g.Args[0].Op == FormSum && g.Args[1].String() == "2" {
+				n -= 7
+			}
+		case FormCall, FormRoot, FormIntegral:
+			return
+		}
+		for _, a := range g.Args {
+			walk(a, depth)
+		}
+	}
+	walk(f, 0)
+	return n
+}
+
+// byFunctions groups the terms by the named function whose derivatives they
+// contain and arranges each group on its own.
+func (b *former) byFunctions(e Expr, depth int) *Form {
+	r := b.r
+	owner := func(m *mono) string {
+		for _, q := range m.p {
+			if q.k.kind == kindFunc && sumInts(q.k.deriv) > 0 {
+				return q.k.name
+			}
+		}
+		return ""
+	}
+	groups := map[string]poly{}
+	var order []string
+	for _, t := range e.n.num {
+		o := owner(t.m)
+		if _, ok := groups[o]; !ok {
+			order = append(order, o)
+		}
+		groups[o] = append(groups[o], t)
+	}
+	if len(order) < 2 || len(order) > 12 {
+		return nil
+	}
+	var ts []*Form
+	for _, o := range order {
+		f := b.expr(r.reduce(groups[o], e.n.den, nil), depth+1)
+		if f.Op == FormSum {
+			ts = append(ts, f.Args...)
+		} else {
+			ts = append(ts, f)
+		}
+	}
+	return positiveFirst(ts)
 }
 
 // realParts multiplies numerator and denominator by units so that both are
@@ -313,7 +381,7 @@ func (b *former) factored(num poly, den []polyFactor, depth int) *Form {
 	p := &prod{b: b, c: c, depth: depth}
 	p.mono(m)
 	if !q.isConst() {
-		for _, f := range b.factors(q) {
+		for _, f := range b.merged(b.factors(q)) {
 			if f.e == 0 { // a sign
 				p.c = p.c.neg()
 				continue
@@ -327,7 +395,7 @@ func (b *former) factored(num poly, den []polyFactor, depth int) *Form {
 	} else if len(q) == 1 {
 		p.c = p.c.mul(q[0].c.re)
 	}
-	for _, f := range den {
+	for _, f := range b.merged(den) {
 		dc, dm, dq := b.content(f.p)
 		for i := 0; i < f.e; i++ {
 			p.c = p.c.mul(dc.inv())
@@ -340,6 +408,28 @@ func (b *former) factored(num poly, den []polyFactor, depth int) *Form {
 		p.form(s, -f.e)
 	}
 	return p.build()
+}
+
+// merged multiplies out pairs of factors whose product is shorter, such as
+// (a - b)*(a + b).
+func (b *former) merged(fs []polyFactor) []polyFactor {
+	if len(fs) < 2 || len(fs) > 6 {
+		return fs
+	}
+	out := append([]polyFactor(nil), fs...)
+	for i := 0; i < len(out); i++ {
+		for j := i + 1; j < len(out); j++ {
+			if out[i].e != out[j].e || out[i].e == 0 || len(out[i].p) != 2 || len(out[j].p) != 2 {
+				continue
+			}
+			if p := b.r.mulPoly(out[i].p, out[j].p); len(p) == 2 && !hasCis(p) {
+				out[i].p = p
+				out = append(out[:j], out[j+1:]...)
+				j = i
+			}
+		}
+	}
+	return out
 }
 
 // factors splits a content-free polynomial; with exp(i m) present every
@@ -547,7 +637,7 @@ func (b *former) unrationalised(e Expr, num poly, depth int) *Form {
 		return nil
 	}
 	rest := e.Mul(r.fromPoly(conj))
-	if len(rest.n.num) >= len(num) || rest.Size() >= e.Size() {
+	if rest.IsZero() || len(rest.n.num) >= len(num) || rest.Size() >= e.Size() {
 		return nil
 	}
 	f := b.expr(rest, depth+1)

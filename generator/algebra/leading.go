@@ -151,3 +151,26 @@ func (r *Ring) SignOf(name string) Sign {
 	}
 	return AnyReal
 }
+
+// FactorPower is one factor of a product, with a rational exponent.
+type FactorPower struct {
+	Base Expr
+	Exp  *big.Rat
+}
+
+// FactorPowers splits a non-zero real expression into a rational content and
+// factors, as far as the core factors; ok is false for expressions that are
+// not known to be real.
+func (e Expr) FactorPowers() (content *big.Rat, fs []FactorPower, ok bool) {
+	if e.IsZero() {
+		return nil, nil, false
+	}
+	c, ps, ok := e.parts()
+	if !ok {
+		return nil, nil, false
+	}
+	for _, p := range ps {
+		fs = append(fs, FactorPower{p.base, p.e.rat().rational()})
+	}
+	return new(big.Rat).Set(c.rational()), fs, true
+}

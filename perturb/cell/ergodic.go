@@ -17,7 +17,9 @@ type Condition struct {
 
 // String writes the condition as the user would: "k > D" for k - D > 0.
 func (c Condition) String() string {
-	if f := c.Quantity.Form(); c.Relation != "!=" && f.Op == algebra.FormSum && len(f.Args) == 2 && f.Args[1].Op == algebra.FormNeg && f.Args[0].Op != algebra.FormNeg {
+	if f := c.Quantity.Form(); c.Relation != "!=" && f.Op == algebra.FormSum && len(f.Args) == 2 && f.Args[0].Op == algebra.FormNumber && f.Args[1].Op == algebra.FormNeg {
+		return fmt.Sprintf("%s %s %s", f.Args[1].Args[0], strings.Replace(c.Relation, ">", "<", 1), f.Args[0])
+	} else if c.Relation != "!=" && f.Op == algebra.FormSum && len(f.Args) == 2 && f.Args[1].Op == algebra.FormNeg && f.Args[0].Op != algebra.FormNeg {
 		return fmt.Sprintf("%s %s %s", f.Args[0], c.Relation, f.Args[1].Args[0])
 	}
 	return fmt.Sprintf("%s %s 0", c.Quantity, c.Relation)
@@ -94,13 +96,101 @@ func (x *Existence) require(n Numbers, quantity algebra.Expr, relation, what str
 	if t := n.sign(quantity); t != 0 && t&want == 0 {
 		return fail()
 	}
-	for _, c := range x.Conditions {
-		if c.Relation == relation && c.Quantity.Equal(quantity) {
-			return nil
+	for _, c := range simplify(Condition{quantity, relation, what}) {
+		x.add(c)
+	}
+	return nil
+}
+
+// Divides notes that a result divides by the quantity.
+func (x *Existence) Divides(quantity algebra.Expr, what string) {
+	if quantity.Sign()&algebra.Zero == 0 {
+		return
+	}
+	for _, c := range simplify(Condition{quantity, "!=", what}) {
+		x.add(c)
+	}
+}
+
+// simplify reduces a condition to factors that can fail: positive factors go,
+// even powers only have to differ from zero.
+func simplify(c Condition) []Condition {
+	content, fs, ok := c.Quantity.FactorPowers()
+	if !ok {
+		return []Condition{c}
+	}
+	r := c.Quantity.Ring()
+	var out []Condition
+	rest := r.Int(1)
+	negative := content.Sign() < 0
+	left := 0
+	for _, f := range fs {
+		s := f.Base.Sign()
+		odd := f.Exp.Num().Bit(0) == 1
+		switch {
+		case s == algebra.Positive:
+		case s == algebra.Negative:
+			negative = negative != odd
+		case c.Relation == "!=" || !odd:
+			if s&algebra.Zero != 0 && f.Exp.Sign() > 0 && c.Relation != ">=" {
+				out = append(out, Condition{f.Base, "!=", c.For})
+			}
+		default:
+			rest = rest.Mul(f.Base)
+			left++
 		}
 	}
-	x.Conditions = append(x.Conditions, Condition{quantity, relation, what})
-	return nil
+	if left > 0 {
+		if negative {
+			rest = rest.Neg()
+		}
+		out = append(out, Condition{rest.Primitive(), c.Relation, c.For})
+	}
+	return out
+}
+
+// add keeps a condition unless another one implies it, and drops those that
+// it implies.
+func (x *Existence) add(c Condition) {
+	for _, o := range x.Conditions {
+		if o.implies(c) {
+			return
+		}
+	}
+	kept := x.Conditions[:0]
+	for _, o := range x.Conditions {
+		if !c.implies(o) {
+			kept = append(kept, o)
+		}
+	}
+	x.Conditions = append(kept, c)
+}
+
+// implies recognises the same quantity under a stronger relation, and a
+// quantity that is larger by something of known sign.
+func (c Condition) implies(o Condition) bool {
+	if c.Quantity.Equal(o.Quantity) || c.Quantity.Neg().Equal(o.Quantity) && o.Relation == "!=" {
+		return c.Relation == o.Relation || c.Relation == ">"
+	}
+	if c.Relation != ">" && c.Relation != ">=" {
+		return false
+	}
+	if o.Relation == "!=" && c.Relation == ">" {
+		// a divisor of a positive quantity does not vanish
+		if q, err := c.Quantity.Div(o.Quantity); err == nil {
+			if _, den := q.NumDen(); den.IsOne() {
+				return true
+			}
+		}
+	}
+	s := o.Quantity.Sub(c.Quantity).Sign()
+	switch {
+	case s == algebra.Positive:
+		return true
+	case s.Is(algebra.NonNegative):
+		return c.Relation == ">" || o.Relation == ">="
+	}
+	return false
 }
 
 // Check examines the existence of one stationary law. Integrands lists

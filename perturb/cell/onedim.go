@@ -129,6 +129,19 @@ func (p *Process) checkNoise(x *Existence, n Numbers, i int) error {
 			}
 			continue
 		}
+		if q, ok := p.harmonic(i, g); ok {
+			err := x.require(n, q, ">", "noise of "+v.Name+" at every "+v.Name, func() *NotErgodic {
+				return &NotErgodic{
+					Text:   fmt.Sprintf("the noise of %s vanishes where %s = 0", v.Name, g),
+					Mend:   "keep the noise away from zero, or restrict the domain to one side of the point",
+					Detail: map[string]algebra.Expr{"must be positive": q},
+				}
+			})
+			if err != nil && p.trapped(n, i, g) != "" {
+				return err
+			}
+			continue
+		}
 		lo, hi, err := p.sampleRange(n, i, g)
 		switch {
 		case err == nil && lo > 0 || err == nil && hi < 0:
@@ -148,6 +161,36 @@ func (p *Process) checkNoise(x *Existence, n Numbers, i int) error {
 		}
 	}
 	return nil
+}
+
+// harmonic recognises c0 + c1 cos(k y) + s1 sin(k y) on a circle and returns
+// c0^2 - c1^2 - s1^2, which is positive when it has no zero.
+func (p *Process) harmonic(i int, g algebra.Expr) (algebra.Expr, bool) {
+	v := p.Fast[i]
+	if v.Kind != Circle && v.Kind != Periodic {
+		return algebra.Expr{}, false
+	}
+	parts, err := g.SplitReal(v.Name)
+	if err != nil {
+		return algebra.Expr{}, false
+	}
+	q := p.Ring.Int(0)
+	var freq algebra.Expr
+	for _, t := range parts {
+		switch {
+		case len(t.Atoms) == 0:
+			q = q.Add(t.Coef.Mul(t.Coef))
+		case len(t.Atoms) == 1 && (t.Atoms[0].Kind == algebra.AtomCos || t.Atoms[0].Kind == algebra.AtomSin):
+			if freq.Valid() && !freq.Equal(t.Atoms[0].Frequency) {
+				return algebra.Expr{}, false
+			}
+			freq = t.Atoms[0].Frequency
+			q = q.Sub(t.Coef.Mul(t.Coef))
+		default:
+			return algebra.Expr{}, false
+		}
+	}
+	return q, freq.Valid()
 }
 
 // inside tells whether a point is in the open domain (Positive), outside or

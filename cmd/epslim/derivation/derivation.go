@@ -21,10 +21,10 @@ import (
 
 // Options of a derivation.
 type Options struct {
-	At []string // points at which numbers are wanted, as "x=0.3,y=0.2"
-	// SkipClaims leaves the claims of the model alone, for work that needs the
-	// limit only.
-	SkipClaims bool
+	At          []string // points at which numbers are wanted, as "x=0.3,y=0.2"
+	SkipClaims  bool     // leave the claims alone, for work that needs the limit only
+	MovingFrame bool     // subtract a large mean drift instead of refusing it
+	Next        int      // powers of the small parameter beyond the limit
 }
 
 // Result is everything that was found about one model.
@@ -102,6 +102,10 @@ func (res *Result) run(ctx context.Context, opt Options) error {
 	res.Route = numeric.New(proc, prob.Slow, prob.Numbers)
 	prob.Routes = []cell.Route{cell.NewClosure(proc), res.Route}
 	prob.Settle = res.Route.Settle
+	prob.MovingFrame = opt.MovingFrame
+	if opt.Next > 0 {
+		prob.Next = big.NewRat(int64(opt.Next), 1)
+	}
 	lim, err := perturb.Derive(ctx, prob)
 	var refused *perturb.Refusal
 	if errors.As(err, &refused) {

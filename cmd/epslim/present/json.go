@@ -125,7 +125,38 @@ func full(res *derivation.Result, version string) object {
 		{"certificates", certificates(res)},
 		{"claims", claims(res)},
 	}
+	if lim.Frame != nil {
+		o = append(o, member{"frame", object{
+			{"power", json.Number(decimal(lim.Frame.Power))},
+			{"velocity", byVariable(res, lim.Frame.Velocity)},
+			{"deviation", lim.Frame.Short},
+		}})
+	}
+	if len(lim.Corrections) > 0 {
+		o = append(o, member{"corrections", corrections(res)})
+	}
+	o = append(o, member{"routes_tried", list(lim.WhyNot)})
 	return append(o, member{"values", values(res)})
+}
+
+// corrections are the operators beyond the limit.
+func corrections(res *derivation.Result) []object {
+	out := []object{}
+	for _, c := range res.Limit.Corrections {
+		diff := object{}
+		for i, v := range res.System.Slow {
+			for j := i; j < len(res.System.Slow); j++ {
+				diff = append(diff, member{v.Name + "," + res.System.Slow[j].Name, closedForm(res, c.Diffusion[i][j])})
+			}
+		}
+		out = append(out, object{
+			{"power", json.Number(decimal(c.Power))},
+			{"drift", byVariable(res, c.Drift)},
+			{"diffusion", diff},
+			{"higher", closedForm(res, c.Higher)},
+		})
+	}
+	return out
 }
 
 func list(s []string) []string {

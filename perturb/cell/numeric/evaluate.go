@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"math"
 	"math/big"
+	"strings"
 
 	"epslim/generator/algebra"
 	"epslim/perturb/cell"
@@ -146,7 +147,7 @@ func (p *Point) prepare(ctx context.Context) error {
 	} else {
 		p.solver, err = spectral.New(ctx, prob, spectral.Settings{Tolerance: p.Tolerance})
 	}
-	return err
+	return outcome(err)
 }
 
 func (p *Point) domain(ctx context.Context, i int) (fast.Domain, error) {
@@ -240,7 +241,7 @@ func (p *Point) phi(ctx context.Context, n *Name, alpha []int) (solved, error) {
 		s.mean, err = ns.Value, nil // the error estimate says how good it is
 	}
 	if err != nil {
-		return solved{}, err
+		return solved{}, outcome(err)
 	}
 	p.phis[key] = s
 	return s, nil
@@ -296,4 +297,25 @@ func (p *Point) operator(ctx context.Context, n *Name, c []int) (fast.Operator, 
 		out = append(out, fast.OperatorTerm{Coefficient: q, Order: order})
 	}
 	return out, nil
+}
+
+// outcome turns what a solver found wrong with the fast process into the
+// refusal of the cell problem.
+func outcome(err error) error {
+	var ne *fast.NotErgodic
+	if errors.As(err, &ne) {
+		text := ne.Reason
+		if len(ne.Components) > 0 {
+			text += "; stationary laws: " + strings.Join(ne.Components, "; ")
+		}
+		return &cell.NotErgodic{Text: text, Mend: ne.Mend}
+	}
+	var dv *fast.Divergent
+	if errors.As(err, &dv) {
+		return &cell.NotErgodic{
+			Text: fmt.Sprintf("the stationary law exists, but the average of %s diverges at %s, where the integrand is like a power with exponent %.4g", dv.Quantity, dv.Where, dv.Exponent),
+			Mend: "lighter tails of the fast process, or a bounded amplitude",
+		}
+	}
+	return err
 }
