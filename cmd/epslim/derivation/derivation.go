@@ -222,6 +222,10 @@ func (res *Result) TimeScale() string {
 	switch {
 	case p.Sign() == 0:
 		return "1"
+	case p.Cmp(big.NewRat(-1, 1)) == 0:
+		return res.System.Small
+	case p.Sign() < 0:
+		return res.System.Small + "^(" + perturb.NegPower(p) + ")"
 	case p.Cmp(big.NewRat(1, 1)) == 0:
 		return "1/" + res.System.Small
 	case p.IsInt():
