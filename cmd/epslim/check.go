@@ -12,6 +12,7 @@ import (
 	"epslim/cmd/epslim/numbers"
 	"epslim/cmd/epslim/present"
 	"epslim/generator/ito"
+	"epslim/solver/ensemble"
 )
 
 // The verdicts on what is no claim.
@@ -139,6 +140,12 @@ func (a *app) gridCheck(ctx context.Context, res *derivation.Result, cells []int
 		row.Verdict, row.Detail = skipped, short(err)
 		return []check{row}
 	}
+	return []check{gridVerdict(d)}
+}
+
+// gridVerdict is the row of a grid solution.
+func gridVerdict(d *numbers.Density) check {
+	row := check{Kind: "grid", What: "stationary density"}
 	ok, why := d.Verdict()
 	row.Verdict, row.Detail = passed, why
 	if d.Difference == nil {
@@ -154,7 +161,7 @@ func (a *app) gridCheck(ctx context.Context, res *derivation.Result, cells []int
 	if !ok {
 		row.Verdict, row.fails = failed, true
 	}
-	return []check{row}
+	return row
 }
 
 // ensembleCheck compares means of the full system with those of the limit.
@@ -165,6 +172,11 @@ func (a *app) ensembleCheck(ctx context.Context, res *derivation.Result, run ens
 		row.Verdict, row.Detail = skipped, short(err)
 		return []check{row}
 	}
+	return studyVerdicts(c)
+}
+
+// studyVerdicts are the rows of a study.
+func studyVerdicts(c *ensemble.Convergence) []check {
 	var rows []check
 	for _, g := range numbers.Judge(c) {
 		r := check{Kind: "ensemble", What: "mean of " + g.Observable, Verdict: passed, Detail: g.Why}
@@ -201,31 +213,42 @@ func (a *app) printChecks(res *derivation.Result, rows []check, format string) e
 			Checks  []check `json:"checks"`
 		}{present.Format, version, res.System.SHA256, ok, rows})
 	}
-	t := present.Table{Head: []string{"verdict", "kind", "what", "why"}}
 	count := map[string]int{}
 	for _, r := range rows {
-		kind := present.Good
 		switch {
 		case r.fails:
-			kind = present.Bad
 			count["fail"]++
 		case r.Verdict == skipped || r.Verdict == derivation.Undecided:
-			kind = present.Strong
 			count["open"]++
 		default:
 			count["hold"]++
-		}
-		t.Rows = append(t.Rows, [][]present.Span{{{Text: r.Verdict, Kind: kind}}, {{Text: r.Kind}}, present.Rich(res, r.What), present.Rich(res, r.Detail)})
-		for _, m := range r.more {
-			t.Rows = append(t.Rows, [][]present.Span{nil, nil, nil, m})
 		}
 	}
 	sum := fmt.Sprintf("%d hold, %d fail", count["hold"], count["fail"])
 	if n := count["open"]; n > 0 {
 		sum += fmt.Sprintf(", %d not decided or skipped", n)
 	}
-	st := &present.Story{Title: res.System.Title, Sections: []present.Section{{ID: "checks", Title: "Checks", Blocks: []present.Block{t}},
+	st := &present.Story{Title: res.System.Title, Sections: []present.Section{{ID: "checks", Title: "Checks", Blocks: []present.Block{checkTable(res, rows)}},
 		{ID: "sum", Title: sum + ".", Blocks: nil}}}
 	_, err := a.out.Write(present.StoryText(st, present.TextSettings{Colour: colour(a.out)}))
 	return err
+}
+
+// checkTable sets the rows of a check.
+func checkTable(res *derivation.Result, rows []check) present.Table {
+	t := present.Table{Head: []string{"verdict", "kind", "what", "why"}}
+	for _, r := range rows {
+		kind := present.Good
+		switch {
+		case r.fails:
+			kind = present.Bad
+		case r.Verdict == skipped || r.Verdict == derivation.Undecided:
+			kind = present.Strong
+		}
+		t.Rows = append(t.Rows, [][]present.Span{{{Text: r.Verdict, Kind: kind}}, {{Text: r.Kind}}, present.Rich(res, r.What), present.Rich(res, r.Detail)})
+		for _, m := range r.more {
+			t.Rows = append(t.Rows, [][]present.Span{nil, nil, nil, m})
+		}
+	}
+	return t
 }

@@ -74,3 +74,6 @@ func texBreakable(s string) string {
 	}
 	return b.String()
 }
+
+// TeXText makes text stand for itself in TeX.
+func TeXText(s string) string { return texBreakable(oneLine(s)) }
