@@ -97,6 +97,21 @@ func findNoiseZeros(d fast.Domain, drift, diff *fast.Coefficient) (zeros []noise
 	return zeros, false
 }
 
+// NoiseZeros returns the places inside a one-dimensional domain where the noise
+// vanishes (none when it vanishes everywhere).
+func NoiseZeros(d fast.Domain, drift, noise func(y float64) float64) []float64 {
+	f, a := fast.Func1("drift", drift), fast.Func1("noise^2", noise)
+	zeros, none := findNoiseZeros(d, &f, &a)
+	if none {
+		return nil
+	}
+	var out []float64
+	for _, z := range zeros {
+		out = append(out, z.y)
+	}
+	return out
+}
+
 // snap moves a place found to half precision to a round one nearby.
 func snap(z, width float64) float64 {
 	for _, unit := range []float64{1, 0.5, 0.25, 0.1, 0.01, math.Pi / 6, math.Pi / 4} {

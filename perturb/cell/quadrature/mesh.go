@@ -286,15 +286,26 @@ func (b *builder) extend(middle []*panel, dir int, base, c float64) ([]*panel, e
 			}
 			return nil, err
 		}
-		if dir < 0 {
-			w -= p.dW
+		leaves, err := b.followed(p)
+		if err != nil {
+			return nil, err
 		}
-		top = math.Max(top, w+p.high)
-		far = b.endLog(p, dir) + w
-		if dir > 0 {
-			w += p.dW
+		if leaves == nil {
+			return out, b.oscillates(out, dir, top-far)
 		}
-		out = append(out, p)
+		for i := range leaves { // in growing y
+			q := leaves[i]
+			if dir < 0 {
+				q = leaves[len(leaves)-1-i]
+				w -= q.dW
+			}
+			top = math.Max(top, w+q.high)
+			far = b.endLog(q, dir) + w
+			if dir > 0 {
+				w += q.dW
+			}
+			out = append(out, q)
+		}
 		t += outward * step
 		if far < top-b.fid.cutoff-50 {
 			break
@@ -307,6 +318,48 @@ func (b *builder) extend(middle []*panel, dir int, base, c float64) ([]*panel, e
 			Mend: "a drift that confines"}
 	}
 	return out, nil
+}
+
+// followed bisects a new outer panel until the increments of W are known, which
+// an oscillating drift makes necessary; nil when that takes too many panels.
+func (b *builder) followed(p *panel) ([]*panel, error) {
+	leaves, todo := []*panel{}, []*panel{p}
+	for len(todo) > 0 {
+		q := todo[len(todo)-1]
+		todo = todo[:len(todo)-1]
+		if tail, largest := b.cheb.tail(q.h); tail <= 1e-7+1e-7*largest || b.atomic(q) {
+			leaves = append(leaves, q)
+			continue
+		}
+		if len(leaves)+len(todo) > 4000 {
+			return nil, nil
+		}
+		l, r := q.bisect()
+		if _, err := b.fillAll([]*panel{l, r}); err != nil {
+			return nil, err
+		}
+		todo = append(todo, r, l) // left first
+	}
+	return leaves, nil
+}
+
+// oscillates is the outcome for a drift that oscillates towards an unbounded
+// end faster than can be followed; drop is how far the log density has fallen.
+func (b *builder) oscillates(out []*panel, dir int, drop float64) error {
+	place := b.iv.hi
+	if dir < 0 {
+		place = b.iv.lo
+	}
+	reach := 0.0
+	for _, p := range out {
+		reach = math.Max(reach, math.Max(math.Abs(p.left()), math.Abs(p.right())))
+	}
+	// A law must fall faster than 1/|y|.
+	if drop < math.Log(math.Max(reach, 2)) {
+		return &fast.NotErgodic{Reason: fmt.Sprintf("the speed density does not fall off towards %s: followed to |y| = %.3g it is only a factor exp(-%.3g) below its maximum and oscillates", ends(place), reach, math.Max(drop, 0)),
+			Mend: "a drift that confines, or a circle in the place of the line"}
+	}
+	return &fast.Unsupported{Method: "quadrature", Reason: fmt.Sprintf("the drift oscillates towards %s and could be followed to |y| = %.3g only", ends(place), reach)}
 }
 
 // endLog is log m + log|dy/dt| at the outer end relative to W at the left end.

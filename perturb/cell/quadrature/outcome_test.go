@@ -29,6 +29,7 @@ func TestRefusals(t *testing.T) {
 		{"circle without anything", one(circle, constant(0), constant(0)), "neither"},
 		{"absorbing corner", one(wall(0, 1), constant(0), func(y float64) float64 { return y * (1 - y) }), "not integrable at 0"},
 		{"absorbed at a wall far from zero", one(wall(1000, 1001), constant(-1), func(y float64) float64 { return (y - 1000) * (1001 - y) }), "not integrable at 1000"},
+		{"washboard on the line", one(line, func(y float64) float64 { return -math.Sin(y) }, constant(2)), "does not fall off"},
 		{"unconfined tail", one(line, lin(-1), constant(2)), "attracting"},
 	} {
 		t.Run(c.name, func(t *testing.T) {
@@ -59,6 +60,8 @@ func TestNotRefused(t *testing.T) {
 			"inverse Gamma law on y > 0 (Wong 1964): stationarity of the mean"},
 		{"geometric noise with growth", one(half, func(y float64) float64 { return y - y*y }, func(y float64) float64 { return y * y }), func(y float64) float64 { return y }, 0.5,
 			"Gamma law y^(2/s^2-2) exp(-2y/s^2): mean 1 - s^2/2"},
+		{"washboard in a bowl", one(line, func(y float64) float64 { return -y + 3*math.Sin(5*y) }, constant(2)), func(y float64) float64 { return y * (y - 3*math.Sin(5*y)) }, 1,
+			"<V' y> = T by parts"},
 		{"noise that vanishes at a wall", one(wall(0, 1), func(y float64) float64 { return 0.5 - y }, func(y float64) float64 { return y * (1 - y) }), func(y float64) float64 { return y * y }, 1. / 3,
 			"f = a'/2 gives the uniform law"},
 	} {
