@@ -655,16 +655,19 @@ func (e Expr) DependsOn(name string) bool {
 }
 
 // IsReal reports whether e is real for real values of its symbols.
-func (e Expr) IsReal() bool {
+func (e Expr) IsReal() bool { return e.conj().Equal(e) }
+
+// conj is the complex conjugate.
+func (e Expr) conj() Expr {
 	r := e.n.r
-	conj := r.fromPoly(r.conjPoly(e.n.num))
+	out := r.fromPoly(r.conjPoly(e.n.num))
 	for _, f := range e.n.den {
-		if conj.IsZero() {
+		if out.IsZero() {
 			break
 		}
-		conj = conj.over(r.fromPoly(r.conjPoly(f.f.p)).powNat(f.e))
+		out = out.over(r.fromPoly(r.conjPoly(f.f.p)).powNat(f.e))
 	}
-	return conj.Equal(e)
+	return out
 }
 
 // Size counts the terms of numerator and denominator: a measure of length.

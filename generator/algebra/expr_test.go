@@ -62,6 +62,13 @@ func TestPrinted(t *testing.T) {
 		{"sqrt(1+x^2)*sqrt(1+x^2)", "x^2 + 1"},
 		{"1/(1+sqrt(1+x^2))", "(sqrt(x^2 + 1) - 1)/x^2"},
 		{"diff(sqrt(1+x^2), x)", "x/sqrt(x^2 + 1)"},
+		{"sin(sin(x))", "sin(sin(x))"},
+		{"exp(a*cos(theta))*exp(-a*cos(theta)+sin(theta))", "exp(sin(theta))"},
+		{"diff(exp(a*cos(theta)), theta)", "-a*sin(theta)*exp(a*cos(theta))"},
+		{"tan(tan(x))", "sin(sin(x)/cos(x))/cos(sin(x)/cos(x))"},
+		{"abs(x)/x + abs(x+y)/(x+y)", "((x + y)*abs(x) + x*abs(x + y))/(x*(x + y))"},
+		{"gamma((x+y)/(x-y))", "gamma((x + y)/(x - y))"},
+		{"gamma(x+2)", "x*(x + 1)*gamma(x)"},
 	} {
 		r := testRing(t)
 		e, err := readExpr(r, c.in)

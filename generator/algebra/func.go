@@ -104,6 +104,10 @@ func (e Expr) leadsNegative() bool {
 		return false
 	}
 	c := e.n.num[0].c
+	if hasCis(e.n.num) {
+		// c e^{ia} + conj is 2 re cos a - 2 im sin a
+		return c.re.sign() < 0 || c.re.isZero() && c.im.sign() > 0
+	}
 	return c.re.sign() < 0 || c.re.isZero() && c.im.sign() < 0
 }
 
