@@ -469,11 +469,33 @@ func (e Expr) trigSummands() (out []linearPart, ok bool) {
 		sin := r.fromPoly(poly{{m, half.mul(coefI.neg())}, {conj, half.mul(coefI)}}).over(den)
 		for _, s := range []linearPart{{a.add(b), cos}, {a.sub(b).mul(coefI), sin}} {
 			if !s.q.isZero() {
-				out = append(out, s)
+				out = append(out, s.normalised(den)...)
 			}
 		}
 	}
 	return out, true
+}
+
+// normalised gives a sine or cosine over a denominator the content 1/2 that
+// it has without one; where the denominator cancels, the summand is split
+// anew.
+func (s linearPart) normalised(den Expr) []linearPart {
+	if den.IsOne() {
+		return []linearPart{s}
+	}
+	if len(s.m.n.den) == 0 {
+		out := s.m.summands()
+		for i := range out {
+			out[i].q = out[i].q.mul(s.q)
+		}
+		return out
+	}
+	g := ratZero
+	for _, t := range s.m.n.num {
+		g = ratGCD(ratGCD(g, t.c.re), t.c.im)
+	}
+	g = g.mul(ratInt(2))
+	return []linearPart{{s.q.mul(coefRat(g)), s.m.Mul(s.m.n.r.ratExpr(g.inv()))}}
 }
 
 // divRem is the division with remainder in the lexicographic order; Laurent
