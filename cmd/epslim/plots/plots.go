@@ -8,6 +8,7 @@ import (
 	"fmt"
 	"math"
 	"path/filepath"
+	"slices"
 	"strings"
 
 	"epslim/cmd/epslim/derivation"
@@ -74,7 +75,7 @@ func Density(res *derivation.Result, d *numbers.Density, meta []figure.Field) *f
 	g := d.Result.Grid
 	if g.Dim() == 1 {
 		x := g.Axis(0).Centers()
-		curves := []figure.Series{{Label: "grid", X: x, Y: d.Result.P, Marks: figure.LineOnly}}
+		curves := []figure.Series{{Label: "grid", X: x, Y: flat(d.Result.P), Marks: figure.LineOnly}}
 		if d.Difference != nil {
 			curves = append(curves, figure.Series{Label: "closed form", X: x, Y: d.Difference.Exact, Marks: figure.LineOnly})
 		}
@@ -83,10 +84,10 @@ func Density(res *derivation.Result, d *numbers.Density, meta []figure.Field) *f
 			XLabel: figure.Symbol(slow[0].Name), YLabel: "$p_{s}(" + figure.SymbolMath(slow[0].Name) + ")$", X: a, Curves: curves,
 		}, s)
 	}
-	data := mapData(res, d, d.Result.P)
+	data := mapData(res, d, flat(d.Result.P))
 	data.Quantity = "$p_{s}(" + figure.SymbolMath(slow[0].Name) + ", " + figure.SymbolMath(slow[1].Name) + ")$"
 	if g.Dim() == 3 {
-		data.Density = d.Result.Marginal(0, 1)
+		data.Density = flat(d.Result.Marginal(0, 1))
 	} else if Flows(res, d) {
 		data.Current = &figure.VectorField{
 			X: g.Axis(0).Centers(), Y: g.Axis(1).Centers(), U: d.Current.Cells[0], V: d.Current.Cells[1],
@@ -94,6 +95,19 @@ func Density(res *derivation.Result, d *numbers.Density, meta []figure.Field) *f
 		}
 	}
 	return figure.DensityMap(data, s)
+}
+
+// flat draws a density that is constant up to rounding as a constant.
+func flat(p []float64) []float64 {
+	lo, hi := slices.Min(p), slices.Max(p)
+	if hi-lo > 1e-9*hi {
+		return p
+	}
+	out := make([]float64, len(p))
+	for i := range out {
+		out[i] = (lo + hi) / 2
+	}
+	return out
 }
 
 func mapData(res *derivation.Result, d *numbers.Density, values []float64) figure.DensityMapData {

@@ -245,22 +245,15 @@ func (l *latexWriter) table(t Table) {
 	if cols == 0 {
 		return
 	}
-	spec := strings.Repeat("l", cols)
-	if cols > 2 {
-		spec = strings.Repeat("l", cols-2) + `p{0.3\linewidth}p{0.45\linewidth}`
-	}
+	spec, wide := columns(t, cols)
 	l.printf("\\begin{center}\\small\\raggedright\n\\begin{tabular}{@{}%s@{}}\n", spec)
 	row := func(cells []string) {
 		for i := range cells {
-			if i >= cols-2 && cols > 2 {
+			if wide[i] {
 				cells[i] = "\\raggedright " + cells[i]
 			}
 		}
-		end := " \\\\\n"
-		if cols > 2 {
-			end = " \\tabularnewline\n"
-		}
-		l.printf("%s%s", strings.Join(cells, " & "), end)
+		l.printf("%s \\tabularnewline\n", strings.Join(cells, " & "))
 	}
 	if len(t.Head) > 0 {
 		row(append([]string(nil), t.Head...))
@@ -274,6 +267,46 @@ func (l *latexWriter) table(t Table) {
 		row(cells)
 	}
 	l.printf("\\end{tabular}\n\\end{center}\n")
+}
+
+// columns chooses the columns of a table: natural ones where they fit, and
+// paragraphs for the last, and then for the one before, where not. Characters
+// are taken to be 0.0135 of the line in small type.
+func columns(t Table, cols int) (spec string, wide []bool) {
+	const char, line = 0.0135, 0.98
+	natural := make([]float64, cols)
+	sum := 0.0
+	for k := range natural {
+		if k < len(t.Head) {
+			natural[k] = float64(width(t.Head[k]))
+		}
+		for _, r := range t.Rows {
+			if k < len(r) {
+				natural[k] = max(natural[k], float64(width(plain(r[k]))))
+			}
+		}
+		natural[k] = natural[k]*char + 0.035
+		sum += natural[k]
+	}
+	wide = make([]bool, cols)
+	for k := cols - 1; k >= 0 && k >= cols-2 && sum > line; k-- {
+		room := max(line-(sum-natural[k]), 0.3)
+		if k == cols-1 && room <= 0.3 {
+			room = 0.45
+		}
+		if room < natural[k] {
+			sum += room - natural[k]
+			natural[k], wide[k] = room, true
+		}
+	}
+	for k := range natural {
+		if wide[k] {
+			spec += fmt.Sprintf("p{%.2f\\linewidth}", natural[k]-0.035)
+		} else {
+			spec += "l"
+		}
+	}
+	return spec, wide
 }
 
 // cellSpans sets a cell; formulas in it may break at signs.

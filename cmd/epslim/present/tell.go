@@ -33,7 +33,9 @@ func Tell(res *derivation.Result) *Story {
 	add(t.fast())
 	add(t.expansion())
 	add(t.correctors())
+	add(t.frame())
 	add(t.limit())
+	add(t.next())
 	add(t.origins())
 	add(t.fokkerPlanck())
 	add(t.stationary())
@@ -553,7 +555,7 @@ func negated(ts []Term) []Term {
 func (t *teller) limit() Section {
 	res, lim := t.res, t.res.Limit
 	sec := Section{ID: "limit", Title: "Limit"}
-	p := Para{text("As "), inline(join(t.eps, op("→", `\to`), integer(0))), text(" on times "), inline(join(t.own("t"), equals, power(t.eps, new(big.Rat).Neg(lim.Power)), thin, t.own("T"))), text(" (" + lim.Regime + ")")}
+	p := Para{text("As "), inline(join(t.eps, op("→", `\to`), integer(0))), text(" on times "), inline(join(t.own("t"), equals, glue(t.epsTo(new(big.Rat).Neg(lim.Power)), t.own("T")))), text(" (" + lim.Regime + ")")}
 	if lim.Power.Sign() == 0 {
 		p = Para{text("As "), inline(join(t.eps, op("→", `\to`), integer(0))), text(" (" + lim.Regime + ")")}
 	}
@@ -578,6 +580,46 @@ func (t *teller) limit() Section {
 		sec.Blocks = append(sec.Blocks, t.stratonovich(noise)...)
 	}
 	sec.Blocks = append(sec.Blocks, t.diffusion()...)
+	return sec
+}
+
+// frame tells that a large mean drift was subtracted.
+func (t *teller) frame() Section {
+	f := t.res.Limit.Frame
+	sec := Section{ID: "frame", Title: "Moving frame"}
+	if f == nil {
+		return sec
+	}
+	var ls []Line
+	for i, v := range f.Velocity {
+		ls = append(ls, line(sub(t.own("c"), t.symbol(t.names[i])), equals, t.terms(v)...))
+	}
+	p := Para{text("The large drift has the mean "), inline(glue(t.epsTo(f.Power), t.own("c"))), text(", which was subtracted: the limit below is that of the deviation from the point that moves with it. With")}
+	if f.Short {
+		p = Para{text("The large drift has the mean "), inline(glue(t.epsTo(f.Power), t.own("c"))), text(", and no frame can move with it, because the model varies along the way: the limit below is the averaging limit on the shorter time scale. With")}
+	}
+	return t.withBlocks(sec, p, Equations{ID: "frame", Lines: ls})
+}
+
+// next is the corrections beyond the limit, where they were asked for.
+func (t *teller) next() Section {
+	sec := Section{ID: "next", Title: "Beyond the limit"}
+	for _, c := range t.res.Limit.Corrections {
+		var ls []Line
+		for i, n := range t.names {
+			ls = append(ls, line(sub(t.own("f"), t.symbol(n)), equals, t.atMost(c.Drift[i])...))
+		}
+		for i := range t.names {
+			for j := i; j < len(t.names); j++ {
+				ls = append(ls, line(t.entry(i, j), equals, t.atMost(c.Diffusion[i][j])...))
+			}
+		}
+		p := Para{text("At the relative order "), inline(power(t.eps, c.Power)), text(" the generator gains the drift "), inline(t.own("f")), text(" and the diffusion matrix "), inline(t.own("A")), text(":")}
+		sec.Blocks = append(sec.Blocks, p, Equations{Lines: ls})
+		if c.Higher.Valid() && !c.Higher.IsZero() {
+			sec.Blocks = append(sec.Blocks, Para{text("It also gains derivatives of third or higher order, so that the corrected equation is not that of a diffusion.")})
+		}
+	}
 	return sec
 }
 
