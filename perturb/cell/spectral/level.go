@@ -28,6 +28,10 @@ type level struct {
 	lu     band.Factors
 	rho    []float64
 	outer  []bool // functions near the edge of the basis
+	share  float64
+	// trusted says that the stationary law is known to exist with all moments
+	// (linear drift), so that polynomials need no proof from the density.
+	trusted bool
 }
 
 func newLevel(ctx context.Context, p *fast.Problem, spaces []*space) (*level, error) {
@@ -124,12 +128,29 @@ func (l *level) generator(ctx context.Context) (sparse, error) {
 			continue
 		}
 		terms = append(terms, l.products(parts, op[i].Order, true)...)
+		if err := l.defined(&op[i].Coefficient); err != nil {
+			return nil, err
+		}
 	}
 	m := kronecker(l.set, terms)
 	if dense != nil {
 		m = m.plus(1, dense)
 	}
 	return m, nil
+}
+
+// defined reports a factor without a finite value that was met since the last
+// call.
+func (l *level) defined(c *fast.Coefficient) error {
+	for _, s := range l.spaces {
+		if bad := s.bad; bad != nil {
+			s.bad = nil
+			clear(s.cache) // matrices made from it are no good
+			bad.Coefficient = c.Label()
+			return bad
+		}
+	}
+	return nil
 }
 
 // wallOf returns the space with a wall in which a term has two derivatives, -1
@@ -275,6 +296,9 @@ func (l *level) Coefficient(c *fast.Coefficient) (fast.Vector, error) {
 			out.lost += math.Abs(t.Constant) * math.Sqrt(loss)
 		}
 	}
+	if err := l.defined(c); err != nil {
+		return nil, err
+	}
 	return out, finite(out.c, c)
 }
 
@@ -362,7 +386,11 @@ func (l *level) Apply(op fast.Operator, w fast.Vector) (fast.Vector, error) {
 			}
 			continue
 		}
-		for _, p := range l.products(terms, op[i].Order, false) {
+		products := l.products(terms, op[i].Order, false)
+		if err := l.defined(&op[i].Coefficient); err != nil {
+			return nil, err
+		}
+		for _, p := range products {
 			v := u
 			for k, m := range p.factors {
 				v = l.along(m, v, k)
@@ -416,7 +444,24 @@ func (l *level) Mean(w fast.Vector) (fast.Value, error) {
 	if scale > 0 {
 		v.Error += u.lost * u.lost / scale
 	}
+	if share := l.unresolved(); share > maxUnresolved && !l.trusted {
+		v.Error += share * scale
+	}
 	return v, nil
+}
+
+// maxUnresolved is the part of the density near the edge of the basis beyond
+// which nothing that follows from it is believed: the density divided by the
+// weight is then not square integrable, as when there is no stationary law or
+// the weight has the wrong tails.
+const maxUnresolved = 0.03
+
+// unresolved is the part of the density near the edge of the basis.
+func (l *level) unresolved() float64 {
+	if l.share == 0 {
+		l.share = l.edge(l.rho)/math.Sqrt(dot(l.rho, l.rho)) + 1e-300
+	}
+	return l.share
 }
 
 // edge is the norm of the coefficients in the outer tenth of the index set and

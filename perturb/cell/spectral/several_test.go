@@ -153,3 +153,36 @@ func TestHighFrequency(t *testing.T) {
 	_, cell, _ = solve(t, single(circle, fast.Constant(0), fast.Constant(2)), g, g)
 	check(t, "cos(40 theta)", cell, 1./3200, 1e-12)
 }
+
+// Processes without a stationary law that no simple test finds, and
+// coefficients that are not defined: no number may come back as settled.
+func TestNoNumberWithoutLaw(t *testing.T) {
+	pendulum := &fast.Problem{Domains: []fast.Domain{line, line}, Drift: []fast.Coefficient{
+		coordinate(1), sum("F", tm(-1, sinf(0, 1)), tm(-1, pow(1, 1)))}, Diffusion: diagonal(fast.Constant(0), fast.Constant(2))}
+	weak := &fast.Problem{Domains: []fast.Domain{line, line}, Drift: []fast.Coefficient{
+		fast.FuncN("f", func(y []float64) float64 { return -0.3*y[0]/(1+y[0]*y[0]) + 0.1*y[1] }), sum("-y", tm(-1, pow(1, 1)))},
+		Diffusion: diagonal(fast.Constant(2), fast.Constant(2))}
+	escaping := &fast.Problem{Domains: []fast.Domain{line, line}, Drift: []fast.Coefficient{
+		sum("f", tm(1, pow(0, 3)), tm(1, pow(1, 1))), sum("-y", tm(-1, pow(1, 1)))}, Diffusion: diagonal(fast.Constant(2), fast.Constant(2))}
+	undamped := &fast.Problem{Domains: []fast.Domain{line, line}, Drift: []fast.Coefficient{
+		coordinate(1), sum("F", tm(-1, pow(0, 3)))}, Diffusion: diagonal(fast.Constant(0), fast.Constant(0))}
+	wall := &fast.Problem{Domains: []fast.Domain{line, line}, Drift: []fast.Coefficient{
+		sum("f", tm(1, pow(0, 1)), tm(-1, pow(0, 3)), tm(0.3, pow(0, 1), pow(1, 1))), sum("-y", tm(-1, pow(1, 1)))},
+		Diffusion: diagonal(sum("a", tm(0.5, pow(0, 2))), fast.Constant(2))}
+	log := &fast.Problem{Domains: []fast.Domain{line, line}, Drift: []fast.Coefficient{
+		sum("f", tm(-1, pow(0, 1)), fast.Term{Constant: 1, Factors: []fast.Factor{{Coordinate: 1, Kind: fast.Other, Func: math.Log}}}), sum("-y", tm(-1, pow(1, 1)))},
+		Diffusion: diagonal(fast.Constant(2), fast.Constant(2))}
+	for name, p := range map[string]*fast.Problem{"pendulum unrolled on a line": pendulum, "weak confinement": weak, "escape": escaping,
+		"undamped quartic oscillator": undamped, "surface without noise and drift": wall, "logarithm of a negative number": log} {
+		ctx := context.Background()
+		s, err := spectral.New(ctx, p, spectral.Settings{Levels: 4})
+		var v fast.Value
+		if err == nil {
+			v, err = s.Mean(ctx, s.Coefficient(sum("y^2", tm(1, pow(0, 2)))))
+		}
+		if err == nil {
+			t.Errorf("%s: settled at %v", name, v)
+		}
+		t.Logf("%s: %v", name, err)
+	}
+}

@@ -2,6 +2,7 @@ package spectral
 
 import (
 	"context"
+	"errors"
 	"math"
 
 	"epslim/perturb/cell/quadrature/fast"
@@ -43,6 +44,9 @@ func New(ctx context.Context, p *fast.Problem, s Settings) (*fast.Engine, error)
 	if err := m.adjust(ctx); err != nil {
 		return nil, err
 	}
+	if err := m.widen(ctx); err != nil {
+		return nil, err
+	}
 	levels := len(m.steps)
 	if s.Levels >= 2 {
 		levels = min(levels, s.Levels)
@@ -68,7 +72,12 @@ func (m *maker) level(ctx context.Context, z sizes) (fast.Level, error) {
 	if err != nil {
 		return nil, err
 	}
-	return newLevel(ctx, m.p, spaces)
+	l, err := newLevel(ctx, m.p, spaces)
+	if err != nil {
+		return nil, err
+	}
+	l.trusted = m.f.exact
+	return l, nil
 }
 
 func (m *maker) spaces(z sizes) ([]*space, error) {
@@ -142,6 +151,51 @@ func (m *maker) adjust(ctx context.Context) error {
 			break
 		}
 	}
+	return nil
+}
+
+// widen stretches the weights of the lines until the density is resolved at the
+// second level, if that can be had.
+func (m *maker) widen(ctx context.Context) error {
+	if m.f.exact || len(m.p.Domains) == 1 {
+		return nil
+	}
+	start := map[int]*measure{}
+	for _, i := range m.f.open {
+		if m.f.domain(i).Kind == fast.Line {
+			start[i] = m.f.laws[i]
+		}
+	}
+	if len(start) == 0 {
+		return nil
+	}
+	best, at := math.Inf(1), 1.0
+	stretch := func(s float64) {
+		for i, law := range start {
+			mean, _ := law.moments()
+			m.f.laws[i] = law
+			if s != 1 {
+				m.f.laws[i] = law.affine(mean-s*mean, s)
+			}
+		}
+	}
+	for _, s := range []float64{1, 1.25, 1.6, 2, 2.6, 3.4} {
+		stretch(s)
+		made, err := m.level(ctx, m.steps[1])
+		if errors.Is(err, fast.ErrBudget) {
+			break
+		}
+		if err != nil {
+			return err
+		}
+		if share := made.(*level).unresolved(); share < best {
+			best, at = share, s
+		}
+		if best < maxUnresolved {
+			break
+		}
+	}
+	stretch(at)
 	return nil
 }
 

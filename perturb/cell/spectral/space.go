@@ -43,6 +43,8 @@ type space struct {
 	// they are there.
 	fill  func()
 	cache map[string]sparse
+	// bad is the first place at which a factor had no finite value.
+	bad   *fast.Undefined
 	about string
 }
 
@@ -278,6 +280,12 @@ func (s *space) sample(factors []fast.Factor) []float64 {
 		h[j] = 1
 		for _, f := range factors {
 			h[j] *= f.Value(s.nodes[f.Coordinate][j])
+		}
+		if s.bad == nil && (math.IsNaN(h[j]) || math.IsInf(h[j], 0)) {
+			s.bad = &fast.Undefined{Value: h[j]}
+			for _, c := range s.nodes {
+				s.bad.At = append(s.bad.At, c[j])
+			}
 		}
 	}
 	return h

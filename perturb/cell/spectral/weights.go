@@ -151,9 +151,52 @@ func (f *fitter) exists(ctx context.Context) error {
 	return ctx.Err()
 }
 
+// walls refuses when a surface y_i = c cannot be crossed: noise and drift of
+// y_i vanish there together, whatever the other coordinates.
+func (f *fitter) walls() error {
+	for i := range f.owner {
+		d := f.domain(i)
+		if d.Kind == fast.Sphere || f.p.Diffusion[i][i].IsZero() {
+			continue
+		}
+		drift, noise := f.frozen(f.p.Drift[i], i), f.frozen(f.p.Diffusion[i][i], i)
+		for _, c := range quadrature.NoiseZeros(d, drift, noise) {
+			if f.closed(i, c) {
+				return &fast.NotErgodic{
+					Reason: fmt.Sprintf("noise and drift of %s vanish together at %.6g whatever the other variables do, so the two sides do not mix", d.Name(0), c),
+					Mend:   "restrict the domain to one side or add noise that crosses"}
+			}
+		}
+	}
+	return nil
+}
+
+// closed reports whether noise and drift of coordinate i vanish at c for all
+// probed values of the others.
+func (f *fitter) closed(i int, c float64) bool {
+	for _, k := range []fast.Coefficient{f.p.Drift[i], f.p.Diffusion[i][i]} {
+		for t := 0; t < 12; t++ {
+			y := probe(f.p, t)
+			y[i] = c
+			at := k.At(y...)
+			y[i] = c + 0.3
+			off := math.Abs(k.At(y...))
+			y[i] = c - 0.3
+			off = math.Max(off, math.Abs(k.At(y...)))
+			if math.Abs(at) > 1e-6*off {
+				return false
+			}
+		}
+	}
+	return true
+}
+
 // fit chooses all weights.
 func (f *fitter) fit(ctx context.Context) error {
 	if err := f.exists(ctx); err != nil {
+		return err
+	}
+	if err := f.walls(); err != nil {
 		return err
 	}
 	done, err := f.linear(ctx)
@@ -323,17 +366,37 @@ func (f *fitter) linear(ctx context.Context) (bool, error) {
 		return false, nil
 	}
 	for k, i := range f.open {
-		v := s.At(k, k)
-		if v <= 1e-14*mat.Max(q)/mat.Norm(a, 2) {
+		if v := s.At(k, k); v <= 1e-14*mat.Max(q)/mat.Norm(a, 2) {
 			return false, &fast.Unsupported{Method: "spectral", Reason: "noise does not reach " + f.domain(i).Name(0) + ", so the law has no density"}
 		}
+	}
+	spread := correlationSpread(s)
+	for k, i := range f.open {
 		f.centre[i] = -mean.AtVec(k)
-		if err := f.gaussian(ctx, i, f.centre[i], math.Sqrt(v)); err != nil {
+		if err := f.gaussian(ctx, i, f.centre[i], math.Sqrt(spread*s.At(k, k))); err != nil {
 			return false, err
 		}
 	}
 	f.exact = true
 	return true, nil
+}
+
+// correlationSpread is the factor on the variances that makes a law with
+// covariance s square integrable relative to the product of Gaussians: with the
+// largest eigenvalue m of the correlation matrix it must exceed m/2.
+func correlationSpread(s *mat.Dense) float64 {
+	n, _ := s.Dims()
+	r := mat.NewSymDense(n, nil)
+	for i := 0; i < n; i++ {
+		for j := i; j < n; j++ {
+			r.SetSym(i, j, (s.At(i, j)+s.At(j, i))/2/math.Sqrt(s.At(i, i)*s.At(j, j)))
+		}
+	}
+	var e mat.EigenSym
+	if !e.Factorize(r, false) {
+		return 1
+	}
+	return math.Max(1, 0.75*e.Values(nil)[n-1])
 }
 
 // linearParts returns drift = A y + b and the noise matrix on the open

@@ -30,6 +30,9 @@ func Windows(ctx context.Context, p *fast.Problem, fraction float64) ([]Window, 
 	if err := m.adjust(ctx); err != nil {
 		return nil, err
 	}
+	if err := m.widen(ctx); err != nil {
+		return nil, err
+	}
 	out := make([]Window, len(f.owner))
 	for _, i := range f.open {
 		law := f.laws[i]
