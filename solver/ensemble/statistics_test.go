@@ -231,8 +231,27 @@ func TestStudyOfTheCrawler(t *testing.T) {
 	if q.Status != RateOK || math.Abs(q.Exponent-1) > 0.2+q.StdErr {
 		t.Errorf("rate %v from %v", q, c.Points[0])
 	}
+	// The same study from parts, in two slices, gives the same rates.
+	settings := Settings{To: 1 << 14, Time: 0.05, Seed: 1}
+	var parts []*Part
+	for number, m := range st.systems() {
+		var slices []*Part
+		for _, cut := range []Interval{{0, 5000}, {5000, 1 << 14}} {
+			s := st.SystemSettings(settings, number)
+			s.From, s.To = cut.From, cut.To
+			slices = append(slices, parse(t, part(t, m, s)))
+		}
+		whole, err := MergeParts(slices...)
+		if err != nil {
+			t.Fatal(err)
+		}
+		parts = append(parts, whole)
+	}
+	if again, err := st.Evaluate(settings, parts); err != nil || again.Rates[0].String() != q.String() || again.Limit.Times[0].Mean[0] != c.Limit.Times[0].Mean[0] {
+		t.Errorf("from parts: %v, %v; want %v", again.Rates[0], err, q)
+	}
 	// Observing nothing that changes gives no rate.
-	same := Study{Limit: observe(crawlerLimit()), LimitStep: 2e-3, LimitScheme: "euler", FullScheme: "euler", Steps: []float64{2e-3, 2e-3}}
+	same := Study{Bias: true, Limit: observe(crawlerLimit()), LimitStep: 2e-3, LimitScheme: "euler", FullScheme: "euler", Steps: []float64{2e-3, 2e-3}}
 	for _, eps := range []float64{0.2, 0.1} {
 		m := observe(crawlerLimit())
 		m.Eps = eps
