@@ -399,6 +399,9 @@ func (r *Ring) gcdPoly(a, b poly) poly {
 	if g, ok := r.tryDivide(a, b); ok {
 		return g
 	}
+	if g, ok := r.gcdHeuristic(a, b); ok {
+		return g
+	}
 	sort.Slice(active, func(i, j int) bool {
 		if deg[active[i]] != deg[active[j]] {
 			return deg[active[i]] < deg[active[j]]

@@ -209,3 +209,36 @@ func TestSplitPoly(t *testing.T) {
 		}
 	}
 }
+
+// TestGCDRoutes: the heuristic gcd and the subresultant remainder sequence
+// agree, and the heuristic one masters what the other cannot.
+func TestGCDRoutes(t *testing.T) {
+	for i := range uint64(40) {
+		c := seeded(i + 5<<32)
+		r := testRing(t)
+		g, a, b := c.genPoly(r, 2, 1), c.genPoly(r, 2, 2), c.genPoly(r, 2, 2)
+		if g.IsZero() || a.IsZero() || b.IsZero() {
+			continue
+		}
+		pa, pb := r.prim(g.Mul(a).n.num), r.prim(g.Mul(b).n.num)
+		x := r.symbols["x"]
+		if pa.degree(x).n == 0 || pb.degree(x).n == 0 {
+			continue
+		}
+		h, ok := r.gcdHeuristic(pa, pb)
+		if !ok {
+			t.Errorf("seed %d: no heuristic gcd of %s and %s", i, r.fromPoly(pa), r.fromPoly(pb))
+			continue
+		}
+		if s := r.gcdIn(pa, pb, x); !s.equal(h) {
+			t.Errorf("seed %d: %s by remainders, %s by evaluation", i, r.fromPoly(s), r.fromPoly(h))
+		}
+	}
+	r := testRing(t)
+	g := mustRead(t, r, "D^2*x + omega_*y + a*b*x*y + 1")
+	a := mustRead(t, r, "(x^2 + a*y + D)*(x - y + b)").Mul(g)
+	b := mustRead(t, r, "(x*y + a + omega_)*(x + 2*y - D)").Mul(g)
+	if h := r.gcdPoly(a.n.num, b.n.num); !h.equal(r.prim(g.n.num)) {
+		t.Errorf("gcd %s, want %s", r.fromPoly(h), g)
+	}
+}
