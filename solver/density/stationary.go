@@ -18,7 +18,7 @@ type Method int
 
 // The methods.
 const (
-	Auto      Method = iota // Direct in one dimension and on small grids, Multigrid otherwise
+	Auto      Method = iota // Direct in one dimension, on small grids and where Multigrid fails; else Multigrid
 	Direct                  // elimination without subtractions
 	Multigrid               // BiCGStab preconditioned by multigrid
 )
@@ -198,12 +198,32 @@ func Stationary(ctx context.Context, g *grid.Grid, c volume.Coefficients, s Sett
 		err = r.direct(member)
 	} else {
 		err = r.multigrid(ctx, c, s)
+		if err == nil && s.Method == Auto && r.fallBack(s) {
+			err = r.direct(member)
+		}
 	}
 	if err != nil {
 		return nil, err
 	}
 	r.finish(member)
 	return r, r.checkWindow(s)
+}
+
+// fallbackFlops is the work that elimination may take after multigrid has
+// failed, some tens of seconds.
+const fallbackFlops = 4e10
+
+// fallBack reports whether elimination should replace a solve that did not
+// converge. That happens where the density falls into parts which exchange
+// mass at rates near the rounding unit: elimination without subtractions gives
+// the weights of such parts to full relative accuracy.
+func (r *Result) fallBack(s Settings) bool {
+	if r.Outcome != multigrid.IterationLimit && r.Outcome != multigrid.Stagnated {
+		return false
+	}
+	flops, bytes := volume.EliminationCost(r.Operator)
+	limit := s.memoryLimit()
+	return flops < fallbackFlops && (limit == 0 || bytes < float64(limit))
 }
 
 func absorbingSides(g *grid.Grid) error {
@@ -234,7 +254,7 @@ func (r *Result) direct(member []bool) error {
 	for i := range r.padded {
 		r.padded[i] /= mass
 	}
-	r.Method, r.Levels, r.Solve = Direct, 1, time.Since(start)
+	r.Method, r.Outcome, r.Levels, r.Solve = Direct, multigrid.Converged, 1, r.Solve+time.Since(start)
 	return nil
 }
 

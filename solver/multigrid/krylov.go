@@ -214,7 +214,7 @@ func (s *Solver) note(st *Stats, residual float64) {
 }
 
 // slow decides whether to leave the point smoother: when at the rate measured
-// so far more than as many iterations again would be needed.
+// so far more than twice as many iterations again would be needed.
 func (s *Solver) slow(done int, reduction, goal float64) bool {
 	if s.settings.Smoother != Auto || s.kind.line || done < slowAfter {
 		return false
@@ -223,5 +223,5 @@ func (s *Solver) slow(done int, reduction, goal float64) bool {
 		return true
 	}
 	need := math.Log(goal) / math.Log(reduction) * float64(done)
-	return need-float64(done) > slowAfter
+	return need-float64(done) > 2*slowAfter
 }

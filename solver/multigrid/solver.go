@@ -86,7 +86,7 @@ type Solver struct {
 
 // slowAfter is the number of point-smoothed iterations after which Auto looks
 // whether lines would be better.
-const slowAfter = 8
+const slowAfter = 4
 
 // New builds the hierarchy for M + shift V, or its transpose. The coefficients
 // are evaluated on every coarse grid. In the singular case (shift zero and no
