@@ -49,7 +49,7 @@ and ensembles of the full system at decreasing eps against the limit.
 The exit status is 1 when something fails.`,
 		Example: `  epslim check crawler.ito
   epslim check crawler.ito --without ensemble --format json`,
-		Args: cobra.ExactArgs(1),
+		Args: oneFile,
 		RunE: func(cmd *cobra.Command, args []string) error { return a.check(cmd, args[0], f) },
 	}
 	cmd.Flags().StringVar(&f.format, "format", "text", "text or json")

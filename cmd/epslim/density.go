@@ -35,7 +35,7 @@ func (a *app) densityCommand() *cobra.Command {
 compare with the closed form on two grids where there is one.`,
 		Example: `  epslim density crawler.ito
   epslim density crawler.ito --cells 256 --figure density.svg --csv density.csv`,
-		Args: cobra.ExactArgs(1),
+		Args: oneFile,
 		RunE: func(cmd *cobra.Command, args []string) error { return a.density(cmd, args[0], f) },
 	}
 	cmd.Flags().StringVar(&f.format, "format", "text", "text or json")

@@ -19,7 +19,7 @@ func (a *app) deriveCommand() *cobra.Command {
 		Short: "Derive the limiting SDE and its stationary density",
 		Example: `  epslim derive crawler.ito
   epslim derive crawler.ito --format json --at "x=0.3,y=0.2"`,
-		Args: cobra.ExactArgs(1),
+		Args: oneFile,
 		RunE: func(cmd *cobra.Command, args []string) error {
 			render, ok := formats[format]
 			if !ok {

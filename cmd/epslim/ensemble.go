@@ -103,7 +103,7 @@ func (a *app) ensembleCommand() *cobra.Command {
 and compare the means of the observables, with standard errors and the observed rate.`,
 		Example: `  epslim ensemble crawler.ito
   epslim ensemble crawler.ito --eps 0.4,0.2,0.1 --paths 100000 --time 2 --figure rate.svg`,
-		Args: cobra.ExactArgs(1),
+		Args: oneFile,
 		RunE: func(cmd *cobra.Command, args []string) error {
 			if err := oneOf("--format", format, "text", "json"); err != nil {
 				return err

@@ -24,7 +24,7 @@ func (a *app) newCommand() *cobra.Command {
 		Long:  "Write NAME.ito, a commented model to start from. The kinds:\n\n" + strings.Join(lines, "\n"),
 		Example: `  epslim new crawler
   epslim new furrow --kind channel --title "A tracer in a furrow"`,
-		Args: cobra.ExactArgs(1),
+		Args: oneName,
 		RunE: func(_ *cobra.Command, args []string) error {
 			file := args[0]
 			if filepath.Ext(file) != ".ito" && file != "-" {
@@ -67,7 +67,7 @@ func (a *app) formatCommand() *cobra.Command {
 		Long:  "Print a model file in its canonical layout, or rewrite files in place.",
 		Example: `  epslim format crawler.ito
   epslim format --write models/*.ito`,
-		Args: cobra.MinimumNArgs(1),
+		Args: someFiles,
 		RunE: func(_ *cobra.Command, args []string) error {
 			for _, name := range args {
 				src, label, err := a.source(name)

@@ -36,7 +36,7 @@ func (a *app) reportCommand() *cobra.Command {
 as one self-contained HTML page, or as a LaTeX article.`,
 		Example: `  epslim report crawler.ito --out crawler-report
   epslim report crawler.ito --out paper --format article`,
-		Args: cobra.ExactArgs(1),
+		Args: oneFile,
 		RunE: func(cmd *cobra.Command, args []string) error { return a.report(cmd, args[0], f) },
 	}
 	cmd.Flags().StringVar(&f.out, "out", "", "folder to write (default: the name of the model and -report)")

@@ -192,3 +192,25 @@ func (a *app) modelError(err error) error {
 	}
 	return err
 }
+
+// The arguments of the commands.
+func oneFile(cmd *cobra.Command, args []string) error {
+	if len(args) != 1 {
+		return fmt.Errorf("%s takes one model file, or - for standard input; %d names were given", cmd.Name(), len(args))
+	}
+	return nil
+}
+
+func oneName(cmd *cobra.Command, args []string) error {
+	if len(args) != 1 {
+		return fmt.Errorf("%s takes one name for the model file; %d were given", cmd.Name(), len(args))
+	}
+	return nil
+}
+
+func someFiles(cmd *cobra.Command, args []string) error {
+	if len(args) == 0 {
+		return fmt.Errorf("%s takes at least one model file, or - for standard input", cmd.Name())
+	}
+	return nil
+}

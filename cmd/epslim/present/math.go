@@ -292,9 +292,10 @@ func isOne(f *algebra.Form) bool {
 // partial is the derivative in a variable.
 func (n *notation) partial(name string, times int) Math {
 	v := n.symbol(name)
-	t := algebra.Form{Op: algebra.FormDiff, Vars: repeat(name, times)}
+	// The printer writes derivatives of functions; the function is cut off.
+	t := algebra.Form{Op: algebra.FormDiff, Name: "u", Vars: repeat(name, times)}
 	m := Math{
-		Text:   strings.TrimSpace(t.Text()),
+		Text:   strings.TrimSpace(strings.TrimSuffix(t.Text(), "u")),
 		TeX:    `\partial_{` + v.TeX + "}",
 		MathML: "<msub>" + mi("∂") + "<mrow>" + v.MathML + "</mrow></msub>",
 	}
@@ -336,6 +337,9 @@ func (t Term) whole() Math {
 		return glue(t.Pre, t.Post)
 	}
 	m := formMath(t.F)
+	if t.F.Op == algebra.FormNumber && t.F.Num.Cmp(big.NewRat(1, 2)) == 0 && !t.Post.Empty() {
+		m = half
+	}
 	if t.F.Op == algebra.FormSum && !(t.Pre.Empty() && t.Post.Empty()) || t.F.Op == algebra.FormIntegral && !t.Post.Empty() {
 		m = paren(m)
 	}
