@@ -46,7 +46,23 @@ func powMod(a, n uint64) uint64 {
 	return out
 }
 
-func invMod(a uint64) uint64 { return powMod(a, modPrime-2) }
+// invMod is the inverse of a non-zero residue by Euclid's algorithm.
+func invMod(a uint64) uint64 {
+	if a == 1 {
+		return 1
+	}
+	r0, r1 := int64(modPrime), int64(a)
+	t0, t1 := int64(0), int64(1) // both stay below modPrime in size
+	for r1 != 0 {
+		q := r0 / r1
+		r0, r1 = r1, r0-q*r1
+		t0, t1 = t1, t0-q*t1
+	}
+	if t0 < 0 {
+		t0 += modPrime
+	}
+	return uint64(t0)
+}
 
 // sqrtMinusOne is a square root of -1 modulo modPrime.
 var sqrtMinusOne = func() uint64 {

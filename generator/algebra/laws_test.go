@@ -89,16 +89,26 @@ func checkLaws(r *Ring, ta, tb, tc *ast) error {
 }
 
 // hasAlgebraicKernel looks inside arguments, too. Roots of unity other than
-// the tabulated ones count: the form does not know their relations.
+// the tabulated ones count, and so do functions of trigonometric quotients:
+// the form does not know all their relations.
 func hasAlgebraicKernel(e Expr) bool {
 	found := false
 	e.eachKernel(func(k *kernel) {
 		found = found || k.algebraic && k.kind != kindPrime || k.kind == kindCis && k.args[0].Equal(e.n.r.Pi())
 		for _, a := range k.args {
-			found = found || hasAlgebraicKernel(a)
+			found = found || hasAlgebraicKernel(a) || trigDenominator(a)
 		}
 	})
 	return found
+}
+
+func trigDenominator(e Expr) bool {
+	for _, f := range e.n.den {
+		if hasCis(f.f.p) {
+			return true
+		}
+	}
+	return false
 }
 
 // genPoly draws a polynomial in a few symbols.
@@ -240,5 +250,13 @@ func TestGCDRoutes(t *testing.T) {
 	b := mustRead(t, r, "(x*y + a + omega_)*(x + 2*y - D)").Mul(g)
 	if h := r.gcdPoly(a.n.num, b.n.num); !h.equal(r.prim(g.n.num)) {
 		t.Errorf("gcd %s, want %s", r.fromPoly(h), g)
+	}
+}
+
+func TestInvMod(t *testing.T) {
+	for _, a := range []uint64{1, 2, 3, modPrime - 1, modPrime / 2, 1 << 60, 123456789} {
+		if mulMod(a, invMod(a)) != 1 || invMod(a) >= modPrime {
+			t.Errorf("the inverse of %d is %d", a, invMod(a))
+		}
 	}
 }

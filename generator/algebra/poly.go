@@ -2,6 +2,7 @@ package algebra
 
 import (
 	"math/big"
+	"slices"
 	"sort"
 	"strings"
 )
@@ -123,7 +124,7 @@ func (a *accumulator) poly() poly {
 			out = append(out, term{m, c})
 		}
 	}
-	sort.Slice(out, func(i, j int) bool { return compareMono(out[i].m, out[j].m) > 0 })
+	slices.SortFunc(out, func(s, t term) int { return compareMono(t.m, s.m) })
 	return out
 }
 
