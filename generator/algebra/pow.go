@@ -162,6 +162,7 @@ func (e Expr) parts() (c rat, out []part, ok bool) {
 			if p, ok = r.symmetrise(p); !ok {
 				return rat{}, nil, false
 			}
+			p = trigPrimitive(p)
 		}
 		out = append(out, part{r.fromPoly(p), nil, mkExpo(int64(-f.e), 1), r.signPoly(p, 2)})
 	}
@@ -185,12 +186,13 @@ func (e Expr) parts() (c rat, out []part, ok bool) {
 	if !q.isConst() {
 		prod := r.unit
 		var fs []part
-		for _, f := range r.splitPoly(q) {
+		for _, f := range r.joinHalfAngles(r.splitPoly(q)) {
 			g := f.p
 			if hasCis(g) {
 				if g, ok = r.symmetrise(g); !ok {
 					break
 				}
+				g = trigPrimitive(g)
 			}
 			fs = append(fs, part{r.fromPoly(g), nil, mkExpo(int64(f.e), 1), r.signPoly(g, 2)})
 			prod = prod.Mul(r.fromPoly(g).powNat(f.e))
@@ -208,6 +210,51 @@ func (e Expr) parts() (c rat, out []part, ok bool) {
 		return rat{}, nil, false
 	}
 	return c, out, true
+}
+
+// trigPrimitive scales a real polynomial in exp(i m) so that its sines,
+// cosines and other terms have coprime integer coefficients.
+func trigPrimitive(p poly) poly {
+	g := ratZero
+	for _, t := range p {
+		c := t.c
+		if hasCis(poly{t}) {
+			c = c.mul(coefInt(2)) // one of a conjugate pair
+		}
+		g = ratGCD(ratGCD(g, c.re), c.im)
+	}
+	return p.scale(coefRat(g.inv()))
+}
+
+// joinHalfAngles multiplies factors such as exp(i x) - 1 and exp(i x) + 1,
+// which are real in half angles only, together to sin(x) where they occur
+// with the same power.
+func (r *Ring) joinHalfAngles(fs []polyFactor) []polyFactor {
+	at := map[string]int{}
+	var out []polyFactor
+	for _, f := range fs {
+		key, half := "", false
+		for _, k := range f.p.kernels() {
+			if k.kind != kindCis {
+				continue
+			}
+			key += k.key + ";"
+			d := f.p.degree(k)
+			half = half || d.n%2 != 0
+		}
+		if !half {
+			out = append(out, f)
+			continue
+		}
+		key += itoa(f.e)
+		if i, ok := at[key]; ok {
+			out[i].p = r.prim(r.mulPoly(out[i].p, f.p))
+			continue
+		}
+		at[key] = len(out)
+		out = append(out, f)
+	}
+	return out
 }
 
 func (e Expr) isNumber() bool {
