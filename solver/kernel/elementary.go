@@ -85,16 +85,28 @@ const (
 	exp13 = 1.0 / 6227020800
 )
 
-// quadrant returns sine and cosine of r + k*pi/2 for |r| <= pi/4; only the two
-// low bits of k count.
+// quadrants replaces r and t by sine and cosine of r + k*pi/2 for |r| <= pi/4,
+// where k is the pattern of bits of t; only its two low bits count.
+func quadrants(r, t []float64) {
+	t = t[:len(r)]
+	for i, x := range r {
+		k := math.Float64bits(t[i])
+		z := float64(x * x)
+		ps := math.FMA(math.FMA(math.FMA(math.FMA(math.FMA(sin6, z, sin5), z, sin4), z, sin3), z, sin2), z, sin1)
+		pc := math.FMA(math.FMA(math.FMA(math.FMA(math.FMA(cos6, z, cos5), z, cos4), z, cos3), z, cos2), z, cos1)
+		si := math.Float64bits(math.FMA(float64(z*x), ps, x))
+		ci := math.Float64bits(math.FMA(float64(z*z), pc, math.FMA(-0.5, z, 1)))
+		swap := (si ^ ci) & -(k & 1)
+		r[i] = math.Float64frombits(si ^ swap ^ (k&2)<<62)
+		t[i] = math.Float64frombits(ci ^ swap ^ ((k+1)&2)<<62)
+	}
+}
+
+// quadrant is quadrants for one point.
 func quadrant(r float64, k uint64) (s, c float64) {
-	z := float64(r * r)
-	ps := math.FMA(math.FMA(math.FMA(math.FMA(math.FMA(sin6, z, sin5), z, sin4), z, sin3), z, sin2), z, sin1)
-	pc := math.FMA(math.FMA(math.FMA(math.FMA(math.FMA(cos6, z, cos5), z, cos4), z, cos3), z, cos2), z, cos1)
-	si := math.Float64bits(math.FMA(float64(z*r), ps, r))
-	ci := math.Float64bits(math.FMA(float64(z*z), pc, math.FMA(-0.5, z, 1)))
-	swap := (si ^ ci) & -(k & 1)
-	return math.Float64frombits(si ^ swap ^ (k&2)<<62), math.Float64frombits(ci ^ swap ^ ((k+1)&2)<<62)
+	x, t := [1]float64{r}, [1]float64{math.Float64frombits(k)}
+	quadrants(x[:], t[:])
+	return x[0], t[0]
 }
 
 // halfturn returns the sine of r + k*pi for |r| <= pi/2; only the low bit of k counts.

@@ -208,15 +208,19 @@ func portableCos(d, a []float64, c float64) uint64 {
 
 func portableSinCos(d, d2, a []float64, c float64) uint64 {
 	d2, a = d2[:len(d)], a[:len(d)]
+	large := false
 	for i := range d {
 		x := float64(c * a[i])
-		if !(math.Abs(x) <= trigMax) {
-			d[i], d2[i] = sinCosLarge(x)
-			continue
-		}
+		large = large || !(math.Abs(x) <= trigMax)
 		t := math.FMA(x, invPio2, magic)
 		kf := t - magic
-		d[i], d2[i] = quadrant(math.FMA(kf, -pio2C, math.FMA(kf, -pio2B, math.FMA(kf, -pio2A, x))), math.Float64bits(t))
+		d[i], d2[i] = math.FMA(kf, -pio2C, math.FMA(kf, -pio2B, math.FMA(kf, -pio2A, x))), t
+	}
+	quadrants(d, d2)
+	if large {
+		for i := range d {
+			d[i], d2[i] = SinCos(float64(c * a[i]))
+		}
 	}
 	return 0
 }

@@ -102,9 +102,18 @@ func portableBoxer(u, v []float64) {
 	for i, x := range u {
 		u[i] = math.Sqrt(-2 * logFast(x, 0))
 	}
-	for i, r := range u {
-		t := math.FMA(v[i], 4, magic)
-		s, c := quadrant(float64(math.FMA(t-magic, -0.25, v[i])*tau), math.Float64bits(t))
-		u[i], v[i] = float64(r*c), float64(r*s)
+	var cosines [unit]float64
+	for len(u) > 0 {
+		n := min(len(u), unit)
+		s, c := v[:n], cosines[:n]
+		for i, x := range s {
+			c[i] = math.FMA(x, 4, magic)
+			s[i] = float64(math.FMA(c[i]-magic, -0.25, x) * tau)
+		}
+		quadrants(s, c)
+		for i, r := range u[:n] {
+			u[i], s[i] = float64(r*c[i]), float64(r*s[i])
+		}
+		u, v = u[n:], v[n:]
 	}
 }
