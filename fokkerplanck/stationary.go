@@ -32,7 +32,7 @@ func (d *Diffusion) solve(ctx context.Context) (*Stationary, error) {
 	}
 	best := first
 	for _, level := range []struct{ formulas, values bool }{{true, false}, {true, true}} {
-		if best.Density.Valid() && best.Reversible != Unknown && (best.Reversible == Yes || level.values) {
+		if best.Density.Valid() && !best.integral() && best.Reversible != Unknown && (best.Reversible == Yes || level.values) {
 			break
 		}
 		if err := ctx.Err(); err != nil {
@@ -68,12 +68,20 @@ func better(a, b *Stationary) *Stationary {
 			return a
 		}
 		return b
+	case a.integral() && b.Density.Valid() && !b.integral():
+		return b
 	case !a.Density.Valid() && b.Density.Valid():
 		b.Reversible, b.Curl, b.CurlAt, b.Why, b.H = a.Reversible, a.Curl, a.CurlAt, a.Why, a.H
 		return b
 	}
 	return a
 }
+
+// integral reports a density that keeps an integral by name; a closed form for
+// particular formulas is preferred to it.
+func (s *Stationary) integral() bool { return s.How == howIntegral }
+
+const howIntegral = "integrating factor, with an integral left"
 
 // attempt works with the coefficients as they are.
 func (d *Diffusion) attempt(ctx context.Context) (*Stationary, error) {
@@ -252,7 +260,7 @@ func (d *Diffusion) integrate(h algebra.Expr) (algebra.Expr, string, error) {
 	if err != nil {
 		return u, "", err
 	}
-	return u.Add(r.Integral(f, name, lo, x)), "integrating factor, with an integral left", nil
+	return u.Add(r.Integral(f, name, lo, x)), howIntegral, nil
 }
 
 // irreversible tries closed forms for a density with a current.
@@ -277,12 +285,18 @@ func (d *Diffusion) irreversible(s *Stationary) {
 	if s.H == nil {
 		return
 	}
-	u, err := d.Ring.MatchGradient(s.H, d.names())
-	if err != nil || u.IsZero() {
+	us, err := d.Ring.MatchGradient(s.H, d.names())
+	if err != nil || len(us) == 0 {
 		return
 	}
-	if p, err := d.Ring.Call("exp", u); err == nil {
-		try(p, "the gradient part of h; the rest drives a current without divergence")
+	sum := d.Ring.Int(0)
+	for _, u := range us {
+		sum = sum.Add(u)
+	}
+	for _, u := range append([]algebra.Expr{sum}, us...) {
+		if p, err := d.Ring.Call("exp", u); err == nil && try(p, "the gradient part of h; the rest drives a current without divergence") {
+			return
+		}
 	}
 }
 

@@ -47,6 +47,7 @@ func TestPrinted(t *testing.T) {
 		{"gamma(5)", "24"},
 		{"sqrt(1 - cos(x)^2)", "abs(sin(x))"},
 		{"log(2 + sin(x))", "log(sin(x) + 2)"},
+		{"sign(sin(x)) - sign(y - x) - sign(x - y)", "sign(sin(x))"},
 		{"abs(sin(x)*cos(y))", "abs(sin(x))*abs(cos(y))"},
 		{"sqrt(1 - cos(x))", "abs(sin(x/2))*sqrt(2)"},
 		{"gamma(a + 1/2)*gamma(c)", "gamma(a + 1/2)*gamma(c)"},

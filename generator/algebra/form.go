@@ -130,6 +130,8 @@ func (b *former) arrange(e Expr, depth int) *Form {
 		}
 		if len(num) <= 400 {
 			best = shorter(best, b.byFunctions(e, depth))
+			best = shorter(best, b.quotientRule(e, depth))
+			best = shorter(best, b.byKernel(e, depth))
 			best = shorter(best, b.byDerivatives(e, num, depth))
 		}
 		if len(num) <= 40 {
@@ -199,6 +201,165 @@ func (f *Form) cost() int {
 	}
 	walk(f, 0)
 	return n
+}
+
+// quotientRule puts the derivative of a quotient of two named functions back
+// together: D*v_x - v*D_x over D^2 is diff(v/D, x).
+func (b *former) quotientRule(e Expr, depth int) *Form {
+	r := b.r
+	if len(e.n.num) > 60 {
+		return nil
+	}
+	var ts []*Form
+	rest := e
+	for again := true; again; {
+		again = false
+		ks := firstDerivatives(rest)
+	search:
+		for _, f := range ks {
+			for _, g := range ks {
+				if f.k == g.k || f.arg != g.arg || f.k.name == g.k.name {
+					continue
+				}
+				c1, c2 := rest.linearIn(f.k), rest.linearIn(g.k)
+				if !c1.Valid() || !c2.Valid() {
+					continue
+				}
+				// c1 F_s - (c1 F/G) G_s is c1 G (F/G)_s; the rest of c2 must
+				// get shorter by it.
+				part := c1.Mul(f.base).over(g.base).Neg()
+				if left := c2.Sub(part); !left.IsZero() && len(left.n.num)+len(part.n.num) > len(c2.n.num) {
+					continue
+				}
+				c2 = part
+				q := &Form{Op: FormDiff, Vars: []string{f.arg}, Args: []*Form{b.expr(f.base.over(g.base), depth+1)}}
+				p := &prod{b: b, c: ratOne, depth: depth}
+				t := b.expr(c1.Mul(g.base), depth+1)
+				neg := t.Op == FormNeg
+				if neg {
+					t = t.Args[0]
+				}
+				if t.Op == FormQuotient {
+					p.form(t.Args[0], 1)
+					p.form(t.Args[1], -1)
+				} else {
+					p.form(t, 1)
+				}
+				p.fs = append(p.fs, prodFactor{class: 6, form: q, e: ratOne})
+				t = p.build()
+				if neg {
+					t = negForm(t)
+				}
+				ts = append(ts, t)
+				rest = rest.Sub(c1.Mul(r.kernelExpr(f.k))).Sub(c2.Mul(r.kernelExpr(g.k)))
+				again = true
+				break search
+			}
+		}
+	}
+	if len(ts) == 0 {
+		return nil
+	}
+	if !rest.IsZero() {
+		f := b.expr(rest, depth+1)
+		if f.Op == FormSum {
+			ts = append(append([]*Form(nil), f.Args...), ts...)
+		} else {
+			ts = append([]*Form{f}, ts...)
+		}
+	}
+	return positiveFirst(ts)
+}
+
+// firstDerivative is a first derivative kernel with the function it is the
+// derivative of.
+type firstDerivative struct {
+	k    *kernel
+	arg  string
+	base Expr
+}
+
+func firstDerivatives(e Expr) []firstDerivative {
+	r := e.n.r
+	var out []firstDerivative
+	for _, k := range e.n.num.kernels() {
+		if k.kind != kindFunc || sumInts(k.deriv) != 1 {
+			continue
+		}
+		f := r.funcs[k.name]
+		for i, d := range k.deriv {
+			if d == 1 && k.args[i].Equal(r.kernelExpr(r.symbols[f.args[i]])) {
+				base := r.kernelExpr(r.funcKernel(f, make([]int, len(k.args)), k.args))
+				out = append(out, firstDerivative{k, f.args[i], base})
+			}
+		}
+	}
+	return out
+}
+
+// linearIn is the coefficient of k where e is linear in it and k stands in no
+// denominator, else not Valid; terms with k may contain other kernels.
+func (e Expr) linearIn(k *kernel) Expr {
+	r := e.n.r
+	for _, f := range e.n.den {
+		if !f.f.p.degree(k).isZero() {
+			return Expr{}
+		}
+	}
+	var c poly
+	for _, t := range e.n.num {
+		switch d := t.m.degree(k); d {
+		case expo{0, 1}:
+		case expo{1, 1}:
+			c = append(c, term{r.monoWithout(t.m, k), t.c})
+		default:
+			return Expr{}
+		}
+	}
+	if len(c) == 0 {
+		return Expr{}
+	}
+	sort.Slice(c, func(i, j int) bool { return compareMono(c[i].m, c[j].m) > 0 })
+	return r.reduce(c, e.n.den, nil)
+}
+
+// byKernel groups a fraction by the powers of one function or symbol and
+// reduces each coefficient on its own: c^2/D + s/(1 + D) for the fraction
+// over D*(1 + D).
+func (b *former) byKernel(e Expr, depth int) *Form {
+	if len(e.n.den) == 0 || len(e.n.num) > 30 || depth > 2 {
+		return nil
+	}
+	r := b.r
+	var best *Form
+	for _, k := range e.n.num.kernels() {
+		if k.kind != kindFunc && k.kind != kindSymbol {
+			continue
+		}
+		exps, cs := r.split(e.n.num, k)
+		if len(exps) < 2 || len(exps) > 4 {
+			continue
+		}
+		var ts []*Form
+		gain := false
+		for i, x := range exps {
+			c := r.reduce(cs[i], e.n.den, nil)
+			gain = gain || len(c.n.den) < len(e.n.den)
+			f := b.expr(c.Mul(r.kernelPower(k, x)), depth+2)
+			if f.Op == FormSum {
+				ts = append(ts, f.Args...)
+			} else {
+				ts = append(ts, f)
+			}
+		}
+		if gain {
+			f := positiveFirst(ts)
+			if best == nil || f.cost() < best.cost() {
+				best = f
+			}
+		}
+	}
+	return best
 }
 
 // byFunctions groups the terms by the named function whose derivatives they
@@ -839,11 +1000,22 @@ func (p *prod) form(f *Form, e int) {
 		}
 		return
 	}
-	class := 6
-	if f.Op != FormSum {
-		class = 3
+	p.fs = append(p.fs, prodFactor{class: formClass(f), form: f, e: ratInt(int64(e))})
+}
+
+// formClass is displayClass for what is arranged already.
+func formClass(f *Form) int {
+	switch f.Op {
+	case FormSymbol:
+		return 3
+	case FormPower:
+		return formClass(f.Args[0])
+	case FormDiff:
+		return 5
+	case FormSum:
+		return 6
 	}
-	p.fs = append(p.fs, prodFactor{class: class, form: f, e: ratInt(int64(e))})
+	return 7
 }
 
 func displayClass(k *kernel) int {

@@ -314,6 +314,9 @@ func (p texPrinter) diff(f *Form) string {
 		}
 		b.WriteString(" ")
 	}
+	if f.Name == "" {
+		return b.String() + brackets("(", p.form(f.Args[0], bindSum), ")")
+	}
 	b.WriteString(f.latexName())
 	if len(f.Args) == 0 {
 		return b.String()

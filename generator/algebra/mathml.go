@@ -249,6 +249,9 @@ func mathDiff(f *Form) string {
 			b.WriteString("<msub>" + mmlPart + mmlSymbol(g.name) + "</msub>")
 		}
 	}
+	if f.Name == "" {
+		return mrow(b.String() + mmlBrackets(mathForm(f.Args[0], bindSum)))
+	}
 	b.WriteString(f.mmlName())
 	if len(f.Args) == 0 {
 		return mrow(b.String())

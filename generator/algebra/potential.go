@@ -335,11 +335,12 @@ func (r *Ring) fitGradient(h, cands []Expr, vars []string) ([]Expr, bool) {
 }
 
 // MatchGradient looks for constants c_k such that every c_k dw_k/dvars[i]
-// occurs in h[i], candidate by candidate, and returns sum c_k w_k. Its
-// gradient need not be h: the rest of h is left over. It serves to guess the
-// stationary density of irreversible diffusions, to be tested by the caller.
-func (r *Ring) MatchGradient(h []Expr, vars []string) (Expr, error) {
-	u := r.zero
+// occurs in h[i], candidate by candidate, and returns the c_k w_k. The
+// gradient of their sum need not be h: the rest of h is left over. It serves
+// to guess the stationary density of irreversible diffusions, to be tested by
+// the caller.
+func (r *Ring) MatchGradient(h []Expr, vars []string) ([]Expr, error) {
+	var u []Expr
 	err := Guard(func() error {
 		dep := func(k *kernel) bool {
 			for _, v := range vars {
@@ -375,7 +376,7 @@ func (r *Ring) MatchGradient(h []Expr, vars []string) (Expr, error) {
 				c = q
 			}
 			if ok && c.Valid() {
-				u = u.Add(c.Mul(w))
+				u = append(u, c.Mul(w))
 			}
 		}
 		return nil

@@ -137,7 +137,12 @@ func (f *Form) sourceDiff(b *strings.Builder) {
 			b.WriteByte(')')
 		}()
 	}
-	b.WriteString("diff(" + f.Name)
+	b.WriteString("diff(")
+	if f.Name == "" {
+		f.Args[0].source(b, 0) // the derivative of an expression
+	} else {
+		b.WriteString(f.Name)
+	}
 	for i := 0; i < len(vars); {
 		n := 1
 		for i+n < len(vars) && vars[i+n] == vars[i] {

@@ -250,6 +250,9 @@ func textDiff(f *Form) string {
 			b.WriteByte(' ')
 		}
 	}
+	if f.Name == "" {
+		return b.String() + "(" + textForm(f.Args[0], bindSum) + ")"
+	}
 	b.WriteString(textName(f.Name))
 	if len(f.Args) == 0 {
 		return b.String()
