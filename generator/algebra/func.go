@@ -351,6 +351,9 @@ func (r *Ring) signFunc(u Expr) (Expr, error) {
 			rest = rest.Mul(r.partPower(p, expo{1, 1}))
 		}
 	}
+	if rest.leadsNegative() {
+		rest, neg = rest.Neg(), !neg
+	}
 	out := r.call("sign", u.Sign()|NonZero, rest)
 	if neg {
 		out = out.Neg()
