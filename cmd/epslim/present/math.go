@@ -160,6 +160,7 @@ func mean(m Math) Math {
 type notation struct {
 	latex map[string]string // the user's TeX of declared names
 	taken map[string]bool   // the printed names of the model, which ours must avoid
+	forms map[algebra.Expr]*algebra.Form
 }
 
 // spare are the letters that step in for ours where the model has taken them.
@@ -195,12 +196,25 @@ func (n *notation) symbol(name string) Math {
 	return formMath(&algebra.Form{Op: algebra.FormSymbol, Name: name, Latex: n.latex[name]})
 }
 
+// form arranges an expression; the same expression is arranged once.
+func (n *notation) form(e algebra.Expr) *algebra.Form {
+	if f, ok := n.forms[e]; ok {
+		return f
+	}
+	if n.forms == nil {
+		n.forms = map[algebra.Expr]*algebra.Form{}
+	}
+	f := e.Form()
+	n.forms[e] = f
+	return f
+}
+
 // expr prints an expression in one piece.
 func (n *notation) expr(e algebra.Expr) Math {
 	if !e.Valid() {
 		return words("no closed form")
 	}
-	return formMath(e.Form())
+	return formMath(n.form(e))
 }
 
 // formMath prints a form in all notations.
@@ -246,7 +260,7 @@ func (n *notation) terms(e algebra.Expr) []Term {
 	if !e.Valid() {
 		return []Term{{Pre: words("no closed form")}}
 	}
-	return formTerms(e.Form())
+	return formTerms(n.form(e))
 }
 
 func formTerms(f *algebra.Form) []Term {
@@ -274,7 +288,7 @@ func (n *notation) scaled(e algebra.Expr, post Math) []Term {
 	if e.IsZero() {
 		return nil
 	}
-	f := e.Form()
+	f := n.form(e)
 	t := Term{F: f, Post: post}
 	if f.Op == algebra.FormNeg {
 		t.Neg, t.F = true, f.Args[0]

@@ -4,6 +4,7 @@ import (
 	"math/big"
 	"regexp"
 	"strings"
+	"sync"
 
 	"epslim/cmd/epslim/derivation"
 )
@@ -46,10 +47,11 @@ func (n *notation) fragments() []struct {
 	}
 }
 
+// The patterns are compiled on first use: most runs of the program need none.
 var (
-	powerText = regexp.MustCompile(`([\pL_][\pL\pN_]*)\^\((-?[0-9/.e+-]+)\)`)
-	arrowText = regexp.MustCompile(`([\pL_][\pL\pN_]*) -> 0`)
-	loneField = regexp.MustCompile(`\bh\b`)
+	powerText = sync.OnceValue(func() *regexp.Regexp { return regexp.MustCompile(`([\pL_][\pL\pN_]*)\^\((-?[0-9/.e+-]+)\)`) })
+	arrowText = sync.OnceValue(func() *regexp.Regexp { return regexp.MustCompile(`([\pL_][\pL\pN_]*) -> 0`) })
+	loneField = sync.OnceValue(func() *regexp.Regexp { return regexp.MustCompile(`\bh\b`) })
 )
 
 // rich is a sentence with its formulas set as such.
@@ -59,7 +61,7 @@ func (n *notation) rich(s string) []Span {
 			return append(append(n.rich(before), inline(f.m)), n.rich(after)...)
 		}
 	}
-	if i := powerText.FindStringSubmatchIndex(s); i != nil {
+	if i := find(powerText, s, "^("); i != nil {
 		if q, ok := new(big.Rat).SetString(s[i[4]:i[5]]); ok {
 			m := power(n.symbol(s[i[2]:i[3]]), q)
 			if !q.IsInt() {
@@ -70,17 +72,25 @@ func (n *notation) rich(s string) []Span {
 			return append(append(n.rich(s[:i[0]]), inline(m)), n.rich(s[i[1]:])...)
 		}
 	}
-	if i := arrowText.FindStringSubmatchIndex(s); i != nil {
+	if i := find(arrowText, s, "-> 0"); i != nil {
 		m := join(n.symbol(s[i[2]:i[3]]), op("→", `\to`), integer(0))
 		return append(append(n.rich(s[:i[0]]), inline(m)), n.rich(s[i[1]:])...)
 	}
-	if i := loneField.FindStringIndex(s); i != nil {
+	if i := find(loneField, s, "h"); i != nil {
 		return append(append(n.rich(s[:i[0]]), inline(n.own("h"))), n.rich(s[i[1]:])...)
 	}
 	if s == "" {
 		return nil
 	}
 	return []Span{text(s)}
+}
+
+// find runs a pattern on a text that holds what every match holds.
+func find(pattern func() *regexp.Regexp, s, part string) []int {
+	if !strings.Contains(s, part) {
+		return nil
+	}
+	return pattern().FindStringSubmatchIndex(s)
 }
 
 // Rich is a sentence about a derivation with its formulas set as such.

@@ -781,7 +781,7 @@ func (t *teller) entry(i, j int) Math {
 }
 
 // long tells coefficients that are better called by their names.
-func (t *teller) long(e algebra.Expr) bool { return len(e.String()) > 60 }
+func (t *teller) long(e algebra.Expr) bool { return len(t.form(e).String()) > 60 }
 
 func dependsOn(e algebra.Expr, names []string) bool {
 	for _, n := range names {
@@ -900,7 +900,7 @@ const tooMuch = 2000
 // long.
 func (t *teller) atMost(e algebra.Expr) []Term {
 	if e.Valid() {
-		if n := len(e.String()); n > tooMuch {
+		if n := len(t.form(e).String()); n > tooMuch {
 			return []Term{{Pre: words(fmt.Sprintf("(%d characters; in full with --format json)", n))}}
 		}
 	}
