@@ -177,3 +177,38 @@ func TestInteriorSingularities(t *testing.T) {
 		check(t, c.name+" under the normal law", m, c.want, 1e-14)
 	}
 }
+
+// The values at distance d from an end, given exactly, against the expansion
+// found at the end: Beta law with exponents 0.02 on [3, 5].
+func TestEndValues(t *testing.T) {
+	ctx := context.Background()
+	f := func(y float64) float64 { return 0.02 * (4 - y) }
+	a := func(y float64) float64 { return (y - 3) * (5 - y) }
+	noise := fast.Func1("a", a)
+	noise.Lower = func(dst, d []float64) {
+		for k, x := range d {
+			dst[k] = x * (2 - x)
+		}
+	}
+	noise.Upper = noise.Lower
+	for name, c := range map[string]fast.Coefficient{"expansion": fast.Func1("a", a), "exact": noise} {
+		p := &fast.Problem{Domains: []fast.Domain{wall(3, 5)}, Drift: []fast.Coefficient{fast.Func1("f", f)}, Diffusion: [][]fast.Coefficient{{c}}}
+		s, err := quadrature.New(ctx, p, quadrature.Settings{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		y := fast.Func1("y", func(y float64) float64 { return y })
+		phi, mean, err := s.Solve(ctx, s.Coefficient(y))
+		if err != nil {
+			t.Fatal(err)
+		}
+		v, err := s.Mean(ctx, s.Apply(fast.Multiply(y), phi))
+		if err != nil {
+			t.Fatal(err)
+		}
+		check(t, name+": mean", mean, 4, 1e-13)
+		// Phi = (y-4)/k and the variance of the Beta law on an interval of
+		// length 2 is 1/(1+2k/g^2) with k = 0.02, g = 1 (Forman, Sorensen 2008).
+		check(t, name+": <y Phi>", v, 1/(1+0.04)/0.02, 1e-11)
+	}
+}
