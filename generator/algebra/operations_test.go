@@ -59,6 +59,17 @@ func checkOperations(r *Ring, e, s Expr) error {
 		}
 		errs = append(errs, agree("Coefficients", sum, e))
 	}
+	if c, fs, ok := e.FactorPowers(); ok && !e.IsZero() {
+		prod := r.Rat(c)
+		for _, f := range fs {
+			p, err := f.Base.powRational(fromBig(f.Exp))
+			if err != nil {
+				return fmt.Errorf("FactorPowers: (%s)^%s: %w", f.Base, f.Exp, err)
+			}
+			prod = prod.Mul(p)
+		}
+		errs = append(errs, agree("FactorPowers", prod, e))
+	}
 	if q, err := e.Mul(e).Sqrt(); err == nil && e.IsReal() {
 		errs = append(errs, agree("sqrt of a square", q.Mul(q), e.Mul(e)))
 		if a, err := r.Call("abs", e); err == nil {
