@@ -30,7 +30,7 @@ type fastPart struct {
 	slope   [][]kernel.Node
 	columns []int           // Wiener processes of the fast variables
 	noise   [][]kernel.Node // rows for index, entries for columns
-	coupled bool            // B is not diagonal
+	coupled bool            // B is not diagonal, or one Wiener process feeds variables of different slopes
 }
 
 // newFastPart finds the linear structure or says what is in its way.
@@ -87,12 +87,31 @@ func newFastPart(m *Model, b *bound, index []int) (*fastPart, error) {
 		}
 		f.a, f.slope, f.noise = append(f.a, a), append(f.slope, slope), append(f.noise, row)
 	}
+	f.coupled = f.coupled || f.mixed()
 	if f.coupled {
 		if _, _, ok := f.numbers(b.graph); !ok {
-			return nil, errors.New("the fast variables are coupled by coefficients that depend on slow variables")
+			return nil, errors.New("the fast variables are coupled, or share noise, with coefficients that depend on slow variables")
 		}
 	}
 	return f, nil
+}
+
+// mixed reports whether one Wiener process feeds two variables of different
+// slopes: their increments are then correlated, but not fully.
+func (f *fastPart) mixed() bool {
+	for n := range f.columns {
+		first := -1
+		for k := range f.index {
+			switch {
+			case f.noise[k][n] == 0:
+			case first < 0:
+				first = k
+			case f.slope[k][k] != f.slope[first][first]:
+				return true
+			}
+		}
+	}
+	return false
 }
 
 func (m *Model) wienerName(j int) string {

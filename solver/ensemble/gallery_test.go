@@ -202,3 +202,23 @@ func nonlinearFast() *Model {
 	m.Drift[1] = m.Graph.Neg(m.Graph.PowInt(y, 3))
 	return m
 }
+
+// patchy has a fast variable whose relaxation and noise depend on the slow one.
+func patchy(eps float64) *Model {
+	g := kernel.NewBuilder("x", "y", "theta")
+	x, y, th := g.Input("x"), g.Input("y"), g.Input("theta")
+	k := g.Add(g.Const(1), g.Scale(0.5, g.Sin(x)))
+	m := &Model{
+		Graph:     g,
+		Variables: []Variable{{Name: "x", Start: 0.4}, {Name: "y", Fast: true, Start: 1}, {Name: "theta", Domain: Domain{Kind: Circle}, Fast: true}},
+		Drift: []kernel.Node{
+			g.Sum(g.Scale(1/eps, y), g.Scale(0.3/eps, g.Cos(th)), g.Neg(x)),
+			g.Scale(1/(eps*eps), g.Sub(g.Scale(0.2, g.Cos(x)), g.Mul(k, y))),
+			g.Scale(1/eps, x),
+		},
+		Noise: [][]kernel.Node{{g.Const(0.3), 0, 0}, {0, g.Scale(1/eps, g.Sqrt(k)), 0}, {0, 0, g.Scale(1/eps, k)}},
+		Eps:   eps,
+	}
+	m.Observables = []Observable{{"x", x}, {"x^2", g.Mul(x, x)}, {"y^2", g.Mul(y, y)}, {"cos", g.Cos(th)}}
+	return m
+}

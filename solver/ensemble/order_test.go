@@ -4,6 +4,8 @@ import (
 	"context"
 	"math"
 	"testing"
+
+	"epslim/solver/kernel"
 )
 
 func run(t *testing.T, m *Model, s Settings) *Result {
@@ -92,6 +94,26 @@ func TestExactFastSteps(t *testing.T) {
 	}
 }
 
+// Two fast variables of different rates on one Wiener process: E y1 y2 =
+// s1 s2 (1 - e^{-(k1+k2)t})/(k1+k2) from 0, which is not the product of the spreads.
+func TestExactStepOfFastVariablesThatShareNoise(t *testing.T) {
+	g := kernel.NewBuilder("p", "q")
+	p, q := g.Input("p"), g.Input("q")
+	m := &Model{
+		Graph:       g,
+		Variables:   []Variable{{Name: "p", Fast: true}, {Name: "q", Fast: true}},
+		Drift:       []kernel.Node{g.Scale(-1, p), g.Scale(-9, q)},
+		Noise:       [][]kernel.Node{{g.Const(1)}, {g.Const(2)}},
+		Observables: []Observable{{"pq", g.Mul(p, q)}, {"p^2", g.Mul(p, p)}, {"q^2", g.Mul(q, q)}},
+	}
+	r := run(t, m, Settings{To: 1 << 16, Time: 0.7, Step: 0.7, Scheme: "splitting", Seed: 6}).Times[0]
+	for i, want := range []float64{2 * (1 - math.Exp(-7)) / 10, (1 - math.Exp(-1.4)) / 2, 4 * (1 - math.Exp(-12.6)) / 18} {
+		if z := (r.Mean[i] - want) / r.StdErr[i]; math.Abs(z) > 4 {
+			t.Errorf("observable %d: %v +- %v, want %v", i, r.Mean[i], r.StdErr[i], want)
+		}
+	}
+}
+
 func TestDefaultSchemeAndItsReason(t *testing.T) {
 	for _, c := range []struct {
 		m    *Model
@@ -121,5 +143,21 @@ func TestDefaultSchemeAndItsReason(t *testing.T) {
 	}
 	if _, err := SchemeByName("eulre"); err == nil {
 		t.Error("an unknown scheme is not refused")
+	}
+}
+
+// Steps of the splitting agree with Euler steps forty times as short, also where
+// the coefficients of the fast variables depend on slow ones.
+func TestSplittingAgreesWithShortEulerSteps(t *testing.T) {
+	turning := crawler(0.2)
+	turning.Observables = []Observable{{"x", turning.Graph.Sin(turning.Graph.Scale(2*math.Pi, turning.Graph.Input("x")))}, {"cos", turning.Graph.Cos(turning.Graph.Input("theta"))}}
+	for _, m := range []*Model{patchy(0.2), turning} {
+		a := run(t, m, Settings{To: 1 << 15, Time: 0.2, Step: 0.008, Scheme: "splitting", Seed: 1}).Times[0]
+		b := run(t, m, Settings{To: 1 << 15, Time: 0.2, Step: 0.0002, Scheme: "euler", Seed: 2}).Times[0]
+		for i := range a.Mean {
+			if z := (a.Mean[i] - b.Mean[i]) / math.Hypot(a.StdErr[i], b.StdErr[i]); math.Abs(z) > 4 {
+				t.Errorf("observable %d: %v +- %v by splitting, %v +- %v by Euler steps", i, a.Mean[i], a.StdErr[i], b.Mean[i], b.StdErr[i])
+			}
+		}
 	}
 }
