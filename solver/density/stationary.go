@@ -218,7 +218,7 @@ const fallbackFlops = 4e10
 // mass at rates near the rounding unit: elimination without subtractions gives
 // the weights of such parts to full relative accuracy.
 func (r *Result) fallBack(s Settings) bool {
-	if r.Outcome != multigrid.IterationLimit && r.Outcome != multigrid.Stagnated {
+	if r.Outcome == multigrid.Converged || r.Outcome == multigrid.Cancelled {
 		return false
 	}
 	flops, bytes := volume.EliminationCost(r.Operator)

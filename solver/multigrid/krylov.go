@@ -106,20 +106,30 @@ func (s *Solver) precondition(z, r []float64, norm float64) {
 // 631-644), preconditioned from the right, restarting from the true residual
 // after a breakdown, a change of the smoother or when the recursive residual
 // has drifted.
-func (s *Solver) iterate(ctx context.Context, x, b []float64, tol, unit float64) Stats {
+func (s *Solver) iterate(ctx context.Context, x, b []float64, rel float64) Stats {
 	start := time.Now()
 	st := Stats{Levels: len(s.h.levels), Setup: s.setup}
 	limit := s.settings.MaxIterations
 	if limit == 0 {
 		limit = 200
 	}
+	// The scale of the residual: of the right-hand side, or of the solution of
+	// the homogeneous problem, which may shrink on the way from a bad guess.
+	scale := func() float64 {
+		if b != nil {
+			return s.scaledNorm(b)
+		}
+		return s.norm(x)
+	}
 	r := s.work[0]
-	norm := s.residual(r, x, b)
+	norm, unit := s.residual(r, x, b), scale()
 	st.Start = norm / unit
+	tol := rel * unit
 	best, futile := norm, 0
 	for norm > tol && st.Iterations < limit && ctx.Err() == nil && futile < 3 {
 		s.bicgstab(ctx, x, r, tol, unit, limit, &st)
-		norm = s.residual(r, x, b)
+		norm, unit = s.residual(r, x, b), scale()
+		tol = rel * unit
 		if norm < 0.5*best {
 			best, futile = norm, 0
 		} else {

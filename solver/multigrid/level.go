@@ -199,7 +199,7 @@ func coarsen(g *grid.Grid) []bool {
 	return merge
 }
 
-const coarsestCells = 300
+const coarsestCells = 100
 
 // assembleLevels builds the operators of all grids from the given one down to
 // the coarsest: by merging links, or from the coefficients where there are

@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"math"
 	"time"
 
 	"epslim/solver/volume"
@@ -18,6 +19,7 @@ const (
 	Stagnated                     // rounding or the method allows no further reduction
 	IterationLimit                // stopped at the largest number of iterations
 	Cancelled                     // stopped by the context; the last iterate is kept
+	Metastable                    // the residual is small but the weights of parts that hardly exchange mass have not settled
 )
 
 var outcomes = [...]struct {
@@ -28,6 +30,7 @@ var outcomes = [...]struct {
 	Stagnated:      {"no further reduction of the residual possible", true},
 	IterationLimit: {"stopped at the iteration limit", false},
 	Cancelled:      {"interrupted; the last iterate is kept", false},
+	Metastable:     {"the weights of parts that hardly exchange mass have not settled", false},
 }
 
 // String returns a sentence fragment for reports.
@@ -68,8 +71,12 @@ type Stats struct {
 	History    []float64 // after every iteration
 	Smoother   Smoother  // the one in use at the end
 	Levels     int
-	Setup      time.Duration // coarse operators and first guess
-	Solve      time.Duration
+	// WeightChange is the L1 change of the weights of blocks of cells in the last
+	// aggregation step, an estimate of the error that a small residual hides
+	// when parts of the density hardly exchange mass.
+	WeightChange float64
+	Setup        time.Duration // coarse operators and first guess
+	Solve        time.Duration
 }
 
 // Solver holds the hierarchy for one operator and one shift.
@@ -145,16 +152,55 @@ func (s *Solver) Stationary(ctx context.Context) ([]float64, Stats) {
 	if tol == 0 {
 		tol = 1e-14
 	}
-	unit := s.norm(p)
-	st := s.iterate(ctx, p, nil, tol*unit, unit)
+	st := s.iterate(ctx, p, nil, tol)
 	if s.m.Report.Monotone {
 		volume.Positive(s.m, p)
+		s.weigh(ctx, p, tol, &st)
 	}
 	mass := s.m.Mass(p)
 	for i := range p {
 		p[i] /= mass
 	}
 	return p, st
+}
+
+// weighRounds bounds the number of aggregation steps.
+const weighRounds = 12
+
+// weighTolerance is the L1 change of the block weights below which they count
+// as settled; weighLimit the one above which they are not known.
+const (
+	weighTolerance = 1e-10
+	weighLimit     = 1e-6
+)
+
+// weigh alternates aggregation with further iterations until the weights of
+// the blocks stay. For densities that hang together the first step changes
+// nothing and costs less than a sweep.
+func (s *Solver) weigh(ctx context.Context, p []float64, tol float64, st *Stats) {
+	keep := append([]float64(nil), p...)
+	for round := 0; round < weighRounds && st.Outcome != Cancelled && st.Outcome != IterationLimit && ctx.Err() == nil; round++ {
+		copy(keep, p)
+		change, err := volume.Rebalance(s.m, p)
+		if err != nil || math.IsNaN(change) {
+			copy(p, keep)
+			return
+		}
+		st.WeightChange = change
+		if change < weighTolerance {
+			copy(p, keep)
+			return
+		}
+		more := s.iterate(ctx, p, nil, tol)
+		volume.Positive(s.m, p)
+		st.Iterations += more.Iterations
+		st.History = append(st.History, more.History...)
+		st.Residual, st.Outcome = more.Residual, more.Outcome
+		st.Solve += more.Solve
+	}
+	if st.WeightChange > weighLimit && st.Outcome == Converged {
+		st.Outcome = Metastable
+	}
 }
 
 // Solve improves x until (M + shift V) x = b, or the transposed system, holds to the
@@ -164,10 +210,9 @@ func (s *Solver) Solve(ctx context.Context, x, b []float64) Stats {
 	if tol == 0 {
 		tol = 1e-12
 	}
-	norm := s.scaledNorm(b)
-	if norm == 0 {
+	if s.scaledNorm(b) == 0 {
 		clear(x)
 		return Stats{Levels: len(s.h.levels)}
 	}
-	return s.iterate(ctx, x, b, tol*norm, norm)
+	return s.iterate(ctx, x, b, tol)
 }
