@@ -56,7 +56,8 @@ func pointOf(d *Diffusion, x []float64) map[string]float64 {
 	return at
 }
 
-// decay follows log p outwards along rays.
+// decay follows log p outwards along rays, and towards the finite ends of
+// half-lines.
 func (d *Diffusion) decay(logp algebra.Expr, unbounded []int) (Truth, string) {
 	n := len(unbounded)
 	worst := math.Inf(-1)
@@ -64,11 +65,23 @@ func (d *Diffusion) decay(logp algebra.Expr, unbounded []int) (Truth, string) {
 		if !d.admissible(ray, unbounded) {
 			continue
 		}
-		slope, err := d.slope(logp, unbounded, ray)
+		slope, err := d.slope(logp, unbounded, ray, []float64{1e3, 1e5, 1e7})
 		if err != nil {
-			return Unknown, "the decay at infinity could not be evaluated: " + err.Error()
+			return Unknown, "the decay at infinity could not be evaluated"
 		}
 		worst = math.Max(worst, slope)
+	}
+	for _, i := range unbounded {
+		if d.Slow[i].Kind != ito.HalfLine {
+			continue
+		}
+		slope, err := d.slope(logp, []int{i}, []float64{1}, []float64{1e-4, 1e-6, 1e-8})
+		if err != nil {
+			return Unknown, "the behaviour at the end of the half-line could not be evaluated"
+		}
+		if slope < -1+1e-6 {
+			return No, fmt.Sprintf("p behaves like %s^(%.4g) at %s = 0, which is not integrable", d.Slow[i].Name, slope, d.Slow[i].Name)
+		}
 	}
 	switch {
 	case worst < -float64(n)-1e-3:
@@ -91,28 +104,50 @@ func (d *Diffusion) admissible(ray []float64, unbounded []int) bool {
 	return true
 }
 
-// slope estimates d log p / d log R far out, where it has settled.
-func (d *Diffusion) slope(logp algebra.Expr, unbounded []int, ray []float64) (float64, error) {
-	value := func(R float64) (float64, error) {
-		at := pointOf(d, nil)
-		for k, i := range unbounded {
-			at[d.Slow[i].Name] = R * ray[k]
+// slope estimates d log p / d log R at the last of the radii, where it has
+// settled. What is in closed form is differenced over a decade, which averages
+// bounded oscillations; integrals are differentiated instead of evaluated.
+func (d *Diffusion) slope(logp algebra.Expr, unbounded []int, ray, radii []float64) (float64, error) {
+	closed, integrals := d.Ring.Int(0), d.Ring.Int(0)
+	for _, t := range logp.Summands() {
+		if t.HasIntegral() {
+			integrals = integrals.Add(t)
+		} else {
+			closed = closed.Add(t)
 		}
-		return logp.EvalFloat(at)
 	}
-	// Averages over a decade wash out bounded oscillations.
+	at := func(R float64) map[string]float64 {
+		p := pointOf(d, nil)
+		for k, i := range unbounded {
+			p[d.Slow[i].Name] = R * ray[k]
+		}
+		return p
+	}
+	radial := d.Ring.Int(0) // R d/dR of the integrals
+	for _, i := range unbounded {
+		x, _ := d.Ring.Symbol(d.Slow[i].Name)
+		radial = radial.Add(x.Mul(integrals.Diff(d.Slow[i].Name)))
+	}
 	best := math.NaN()
-	for _, R := range []float64{1e3, 1e5, 1e7} {
-		a, err := value(R)
+	for _, R := range radii {
+		a, err := closed.EvalFloat(at(R))
 		if err != nil {
 			return 0, err
 		}
-		b, err := value(R * 10)
+		b, err := closed.EvalFloat(at(R * 10))
 		if err != nil {
 			return 0, err
 		}
 		best = (b - a) / math.Ln10
-		if math.IsInf(b, -1) || best < -1e4 {
+		const samples = 7
+		for k := 0; k < samples && !radial.IsZero(); k++ {
+			v, err := radial.EvalFloat(at(R * math.Pow(10, (float64(k)+0.5)/samples)))
+			if err != nil {
+				return 0, err
+			}
+			best += v / samples
+		}
+		if best < -1e4 {
 			return -1e4, nil
 		}
 	}

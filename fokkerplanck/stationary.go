@@ -32,7 +32,7 @@ func (d *Diffusion) solve(ctx context.Context) (*Stationary, error) {
 	}
 	best := first
 	for _, level := range []struct{ formulas, values bool }{{true, false}, {true, true}} {
-		if best.Density.Valid() && !best.integral() && best.Reversible != Unknown && (best.Reversible == Yes || level.values) {
+		if best.Density.Valid() && !best.integral() && best.Reversible == Yes {
 			break
 		}
 		if err := ctx.Err(); err != nil {
@@ -61,6 +61,15 @@ func (d *Diffusion) solve(ctx context.Context) (*Stationary, error) {
 func better(a, b *Stationary) *Stationary {
 	switch {
 	case b.Reversible == Yes && a.Reversible != Yes:
+		which := "for the formulas given"
+		if b.WithValues {
+			which = "for the values of the parameters given"
+		}
+		b.Why += " " + which + ", not in general"
+		if a.Density.Valid() {
+			a.Reversible, a.Why = Yes, b.Why
+			return a
+		}
 		return b
 	case a.Reversible == Unknown && b.Reversible != Unknown:
 		if a.Density.Valid() && b.Reversible != No {
@@ -120,7 +129,7 @@ func (d *Diffusion) attempt(ctx context.Context) (*Stationary, error) {
 // reversible handles a curl-free h: the density is the exponential of its
 // potential, provided that this is single-valued.
 func (d *Diffusion) reversible(ctx context.Context, s *Stationary) {
-	u, err := d.Ring.Potential(s.H, d.names())
+	u, err := d.Ring.PotentialIn(s.H, d.names(), d.inside())
 	how := "potential of h in closed form"
 	if err != nil && len(d.Slow) == 1 {
 		u, how, err = d.integrate(s.H[0])
@@ -153,6 +162,19 @@ func (d *Diffusion) reversible(ctx context.Context, s *Stationary) {
 		return
 	}
 	s.Density, s.How = p, how
+}
+
+// inside is a point in the domain, as far as that has ends.
+func (d *Diffusion) inside() map[string]algebra.Expr {
+	out := map[string]algebra.Expr{}
+	for _, v := range d.Slow {
+		if v.A.Valid() && v.B.Valid() {
+			out[v.Name] = v.A.Add(v.B).Mul(d.Ring.Frac(1, 2))
+		} else if v.Kind == ito.HalfLine {
+			out[v.Name] = d.Ring.Int(1)
+		}
+	}
+	return out
 }
 
 // multivalued decides by numbers when the jump of the potential over a

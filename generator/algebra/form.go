@@ -1131,6 +1131,14 @@ func (p *prod) merge() {
 		}
 		key := f.form.String()
 		i, ok := at[key]
+		if !ok && !f.sym.Valid() && f.e.isInt() && f.form.Op == FormSum {
+			// 1 - y and y - 1 are one base up to a sign
+			if g := flipSum(f.form); g != nil {
+				if i, ok = at[g.String()]; ok && f.e.n%2 != 0 {
+					p.c = p.c.neg()
+				}
+			}
+		}
 		if !ok {
 			at[key] = len(out)
 			out = append(out, f)

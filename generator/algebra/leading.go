@@ -174,3 +174,19 @@ func (e Expr) FactorPowers() (content *big.Rat, fs []FactorPower, ok bool) {
 	}
 	return new(big.Rat).Set(c.rational()), fs, true
 }
+
+// HasIntegral reports whether e contains an integral kept by name.
+func (e Expr) HasIntegral() bool {
+	found := false
+	var visit func(e Expr)
+	visit = func(e Expr) {
+		e.eachKernel(func(k *kernel) {
+			found = found || k.kind == kindIntegral
+			for _, a := range k.args {
+				visit(a)
+			}
+		})
+	}
+	visit(e)
+	return found
+}

@@ -15,6 +15,13 @@ var ErrNoPotential = errors.New("no closed form of the potential was found")
 // that do not depend on vars; the coefficients come from linear algebra and
 // the result is confirmed by differentiation.
 func (r *Ring) Potential(h []Expr, vars []string) (Expr, error) {
+	return r.PotentialIn(h, vars, nil)
+}
+
+// PotentialIn is Potential with a point inside the domain, which decides the
+// sign of the arguments of logarithms where the declared signs do not: log(1-y)
+// rather than log(y-1) on an interval below one.
+func (r *Ring) PotentialIn(h []Expr, vars []string, inside map[string]Expr) (Expr, error) {
 	var u Expr
 	err := Guard(func() error {
 		zero := true
@@ -25,7 +32,7 @@ func (r *Ring) Potential(h []Expr, vars []string) (Expr, error) {
 			u = r.zero
 			return nil
 		}
-		cands := r.potentialCandidates(h, vars)
+		cands := r.potentialCandidates(h, vars, inside)
 		if len(cands) == 0 || len(cands) > 160 {
 			return ErrNoPotential
 		}
@@ -50,8 +57,8 @@ func (r *Ring) Potential(h []Expr, vars []string) (Expr, error) {
 }
 
 // potentialCandidates lists functions whose gradients could make up h.
-func (r *Ring) potentialCandidates(h []Expr, vars []string) []Expr {
-	set := &candidateSet{r: r, vars: vars, seen: map[string]bool{}}
+func (r *Ring) potentialCandidates(h []Expr, vars []string, inside map[string]Expr) []Expr {
+	set := &candidateSet{r: r, vars: vars, inside: inside, seen: map[string]bool{}}
 	den := map[string]denFactor{}
 	for i, e := range h {
 		for _, f := range e.n.den {
@@ -94,10 +101,11 @@ func (r *Ring) potentialCandidates(h []Expr, vars []string) []Expr {
 }
 
 type candidateSet struct {
-	r    *Ring
-	vars []string
-	seen map[string]bool
-	list []Expr
+	r      *Ring
+	vars   []string
+	inside map[string]Expr
+	seen   map[string]bool
+	list   []Expr
 }
 
 func polyDependsOn(p poly, vars []string) bool {
@@ -136,6 +144,10 @@ func (c *candidateSet) add(e Expr) {
 func (c *candidateSet) addLog(e Expr) {
 	if e.Sign() == Negative {
 		e = e.Neg()
+	} else if e.Sign() != Positive && c.inside != nil {
+		if v, err := e.Subs(c.inside); err == nil && v.Sign() == Negative {
+			e = e.Neg()
+		}
 	}
 	l := c.r.call("log", AnyReal, e)
 	if e.Sign() == Positive {
@@ -350,7 +362,7 @@ func (r *Ring) MatchGradient(h []Expr, vars []string) ([]Expr, error) {
 			}
 			return false
 		}
-		for _, w := range r.potentialCandidates(h, vars) {
+		for _, w := range r.potentialCandidates(h, vars, nil) {
 			var c Expr
 			ok := true
 			for i, v := range vars {

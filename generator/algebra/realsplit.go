@@ -79,8 +79,9 @@ func (e Expr) SplitReal(names ...string) ([]RealPart, error) {
 	}
 	groups := map[string]*realGroup{}
 	var order []string
+	both := bothSigns(num.n.num, in)
 	for _, t := range num.n.num {
-		r.realTerm(t, in, groups, &order)
+		r.realTerm(t, in, both, groups, &order)
 	}
 	out := make([]RealPart, 0, len(order))
 	for _, key := range order {
@@ -104,8 +105,30 @@ type realGroup struct {
 	coef  *accumulator
 }
 
+// bothSigns finds the exponentials that occur with exponents of both signs:
+// they are taken apart into hyperbolic functions, which keep parities.
+func bothSigns(p poly, in func(*kernel) bool) map[*kernel]bool {
+	seen := map[*kernel]int{}
+	for _, t := range p {
+		for _, q := range t.m.p {
+			if q.k.kind == kindExp && in(q.k) {
+				if q.e.n > 0 {
+					seen[q.k] |= 1
+				} else {
+					seen[q.k] |= 2
+				}
+			}
+		}
+	}
+	out := map[*kernel]bool{}
+	for k, s := range seen {
+		out[k] = s == 3
+	}
+	return out
+}
+
 // realTerm expands the exp(i m) of one term into cosines and sines.
-func (r *Ring) realTerm(t term, in func(*kernel) bool, groups map[string]*realGroup, order *[]string) {
+func (r *Ring) realTerm(t term, in func(*kernel) bool, both map[*kernel]bool, groups map[string]*realGroup, order *[]string) {
 	var plain, rest []power
 	type angle struct {
 		k   *kernel
@@ -117,7 +140,7 @@ func (r *Ring) realTerm(t term, in func(*kernel) bool, groups map[string]*realGr
 		switch {
 		case !in(q.k):
 			rest = append(rest, q)
-		case q.k.kind == kindCis:
+		case q.k.kind == kindCis || both[q.k]:
 			a := angle{q.k, q.e, q.e.n < 0}
 			if a.neg {
 				a.e = a.e.neg()
@@ -136,21 +159,30 @@ func (r *Ring) realTerm(t term, in func(*kernel) bool, groups map[string]*realGr
 		var atoms []Atom
 		for i, a := range angles {
 			arg := a.k.args[0].Mul(r.ratExpr(a.e.rat()))
-			name := "cos"
-			if mask>>i&1 == 1 {
-				name = "sin"
-				c = c.mul(coefI)
-				if a.neg {
-					c = c.neg()
-				}
+			odd := mask>>i&1 == 1
+			if odd && a.neg {
+				c = c.neg()
 			}
-			v, err := r.trig(name, arg)
+			name, kind := "cos", AtomCos
+			var v Expr
+			var err error
+			if both[a.k] {
+				// e^a = cosh a + sinh a
+				name, kind = "cosh", AtomOther
+				if odd {
+					name = "sinh"
+				}
+				v, err = r.hyperbolic(name, arg)
+			} else {
+				// e^{ia} = cos a + i sin a
+				if odd {
+					name, kind = "sin", AtomSin
+					c = c.mul(coefI)
+				}
+				v, err = r.trig(name, arg)
+			}
 			if err != nil {
 				panic(err)
-			}
-			kind := AtomCos
-			if name == "sin" {
-				kind = AtomSin
 			}
 			fmt.Fprintf(&key, "%s %s^%s;", name, a.k.key, a.e.rat())
 			atoms = append(atoms, Atom{Kind: kind, Frequency: arg, Expr: v})
@@ -211,6 +243,7 @@ type FuncUse struct {
 	Name   string
 	Deriv  []int
 	Symbol string
+	Expr   Expr // the derivative itself
 }
 
 // NameFunctions replaces derivatives of the named functions (all functions
@@ -231,7 +264,7 @@ func (e Expr) NameFunctions(names map[string]bool) (Expr, []FuncUse, error) {
 				return Expr{}, false, nil
 			}
 		}
-		u := FuncUse{Name: k.name, Deriv: append([]int(nil), k.deriv...), Symbol: "#" + k.key}
+		u := FuncUse{Name: k.name, Deriv: append([]int(nil), k.deriv...), Symbol: "#" + k.key, Expr: r.kernelExpr(k)}
 		uses[u.Symbol] = u
 		return r.Declare(u.Symbol, Attr{Sign: k.sign, Parameter: true}), true, nil
 	})

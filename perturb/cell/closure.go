@@ -119,6 +119,9 @@ func (c *Closure) solveBasis(ctx context.Context, n *fnNode) (*Solution, error) 
 	if n.fn.IsOne() {
 		return &Solution{r.Int(0), r.Int(1)}, nil
 	}
+	if fs := n.fn.Functions(); len(fs) > 0 {
+		return nil, doesNotApply("%s is known by name only", fs[0])
+	}
 	set, open := c.close(ctx, []*fnNode{n})
 	if open != nil && !errors.Is(open, ErrDoesNotApply) {
 		return nil, open

@@ -217,11 +217,11 @@ func (p *Process) Check(n Numbers, integrands []algebra.Expr) (*Existence, error
 			density = algebra.Expr{}
 		}
 	}
-	if density.Valid() && p.independent(groups) && p.IsInvariant(density) {
-		x.Density = density
-	} else if d, ok := p.gaussian(); ok {
+	if d, ok := p.gaussian(); ok {
 		x.Density = d
 		names = []string{"Ornstein-Uhlenbeck process"}
+	} else if density.Valid() && p.independent(groups) && p.IsInvariant(density) {
+		x.Density = density
 	}
 	x.Name = strings.Join(dedupe(names), " and ")
 	if err := p.checkRank(x, n); err != nil {

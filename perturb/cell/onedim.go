@@ -432,7 +432,11 @@ func (p *Process) speedDensity(i int) algebra.Expr {
 		}
 		h = h.Sub(l)
 	}
-	u, err := p.Ring.Potential([]algebra.Expr{h}, []string{name})
+	var inside map[string]algebra.Expr
+	if v := p.Fast[i]; v.Kind == Reflecting || v.Kind == Periodic {
+		inside = map[string]algebra.Expr{name: v.A.Add(v.B).Mul(p.Ring.Frac(1, 2))}
+	}
+	u, err := p.Ring.PotentialIn([]algebra.Expr{h}, []string{name}, inside)
 	if err != nil {
 		return algebra.Expr{}
 	}

@@ -105,6 +105,9 @@ func (res *Result) compareNumbers(ctx context.Context, c *ito.Claim, claimed, de
 	worst := 0.0
 	for k := 0; k < 4; k++ {
 		p := res.Route.Sample(k)
+		for i, v := range res.System.Slow {
+			p.Bind(v.Name, big.NewFloat(res.inDomain(v, k, i)))
+		}
 		v, de, err := p.Value(ctx, derived)
 		if err != nil {
 			return Verdict{Claim: c, Verdict: Undecided, Reason: "the derived quantity could not be evaluated: " + err.Error()}
@@ -132,28 +135,94 @@ func (res *Result) compareNumbers(ctx context.Context, c *ito.Claim, claimed, de
 	return Verdict{Claim: c, Verdict: Agrees, Reason: fmt.Sprintf("equal at sample points to %.1g relative", math.Max(worst, 1e-16))}
 }
 
-// witness evaluates both sides at a point where they differ.
+// witness evaluates both sides at a point of the domain where they differ,
+// with the model's values and formulas; a function without a formula takes
+// some value of its own there, which is shown.
 func (res *Result) witness(claimed, derived algebra.Expr) *Witness {
-	w := &Witness{At: map[string]string{}}
-	diff := claimed.Sub(derived)
-	_, at := diff.ZeroWitness()
-	bind := algebra.Binding{Values: at, Arbitrary: true}
-	show := func(e algebra.Expr) string {
-		v, err := e.EvalBig(bind, 120)
-		if err != nil {
-			return "?"
+	var best *Witness
+	for k := 0; k < 6; k++ {
+		w, ok := res.witnessAt(claimed, derived, k)
+		if best == nil {
+			best = w
 		}
-		f, _ := v.Float64()
-		return fmt.Sprintf("%.10g", f)
+		if ok {
+			return w
+		}
 	}
+	return best
+}
+
+func (res *Result) witnessAt(claimed, derived algebra.Expr, k int) (*Witness, bool) {
+	w := &Witness{At: map[string]string{}}
+	p := res.Route.Sample(k)
+	for i, v := range res.System.Slow {
+		p.Bind(v.Name, big.NewFloat(res.inDomain(v, k, i)))
+	}
+	defs := res.System.Definitions()
+	diff := claimed.Sub(derived)
+	var vals [2]float64
+	sides := [2]algebra.Expr{claimed, derived}
+	bind := algebra.Binding{Values: p.Values(), Arbitrary: true, Seed: uint64(k)}
+	for i, e := range sides {
+		f, err := e.SubsFunc(defs)
+		if err != nil {
+			return w, false
+		}
+		v, err := f.EvalBig(bind, 120)
+		if err != nil {
+			return w, false
+		}
+		vals[i], _ = v.Float64()
+	}
+	w.Claimed, w.Derived = fmt.Sprintf("%.10g", vals[0]), fmt.Sprintf("%.10g", vals[1])
 	for _, s := range diff.Symbols() {
-		if v, ok := at[s]; ok {
+		if v, ok := p.Values()[s]; ok && res.System.Small != s {
 			f, _ := v.Float64()
 			w.At[s] = fmt.Sprintf("%.6g", f)
 		}
 	}
-	w.Claimed, w.Derived = show(claimed), show(derived)
-	return w
+	if _, uses, err := diff.NameFunctions(nil); err == nil {
+		for _, u := range uses {
+			if _, ok := defs[u.Name]; ok {
+				continue
+			}
+			e := u.Expr
+			if v, err := e.EvalBig(bind, 120); err == nil {
+				f, _ := v.Float64()
+				w.At[e.String()] = fmt.Sprintf("%.6g", f)
+			}
+		}
+	}
+	return w, math.Abs(vals[0]-vals[1]) > 1e-9*(math.Abs(vals[0])+math.Abs(vals[1]))
+}
+
+// inDomain is a point of the domain of a slow variable, the k-th of a
+// sequence.
+func (res *Result) inDomain(v *ito.Variable, k, i int) float64 {
+	t := math.Mod(0.31+0.382*float64(k)+0.236*float64(i), 1)
+	number := func(e algebra.Expr) (float64, bool) {
+		if !e.Valid() {
+			return 0, false
+		}
+		f, err := e.Subs(res.System.Values())
+		if err != nil {
+			return 0, false
+		}
+		x, err := f.EvalFloat(nil)
+		return x, err == nil
+	}
+	for _, pair := range [][2]algebra.Expr{{v.Domain.A, v.Domain.B}, {v.Domain.WindowA, v.Domain.WindowB}} {
+		a, ok1 := number(pair[0])
+		b, ok2 := number(pair[1])
+		if ok1 && ok2 {
+			x := a + (b-a)*t
+			return math.Round(x*1e4) / 1e4
+		}
+	}
+	if v.Domain.Kind == ito.HalfLine {
+		return 0.2 + 2*t
+	}
+	return math.Round((4*t-2)*1e4) / 1e4
 }
 
 // ratioSlip recognises a wrong constant factor.

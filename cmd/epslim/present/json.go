@@ -5,6 +5,7 @@ package present
 
 import (
 	"bytes"
+	"context"
 	"encoding/json"
 	"fmt"
 	"math/big"
@@ -136,7 +137,28 @@ func full(res *derivation.Result, version string) object {
 		o = append(o, member{"corrections", corrections(res)})
 	}
 	o = append(o, member{"routes_tried", list(lim.WhyNot)})
+	if as := res.Averages(context.Background()); len(as) > 0 {
+		o = append(o, member{"averages", averages(as)})
+	}
 	return append(o, member{"values", values(res)})
+}
+
+// averages are the quantities known by name only, with their numbers.
+func averages(as []derivation.Average) []object {
+	out := []object{}
+	for _, a := range as {
+		o := object{{"name", a.Name}, {"average_of", a.Of.String()}, {"corrector", a.Corrector}}
+		switch {
+		case a.Zero:
+			o = append(o, member{"value", 0}, member{"error", 0})
+		case a.Known:
+			o = append(o, member{"value", a.Value}, member{"error", a.Error})
+		default:
+			o = append(o, member{"value", nil}, member{"error", nil})
+		}
+		out = append(out, o)
+	}
+	return out
 }
 
 // corrections are the operators beyond the limit.

@@ -13,6 +13,7 @@ import (
 	"epslim/perturb/cell/quadrature"
 	"epslim/perturb/cell/quadrature/fast"
 	"epslim/perturb/cell/spectral"
+	"epslim/perturb/cell/spectral/grid"
 )
 
 // Point is a slow point with values for the parameters, ready to evaluate
@@ -142,10 +143,16 @@ func (p *Point) prepare(ctx context.Context) error {
 		prob.Diffusion = append(prob.Diffusion, row)
 	}
 	var err error
+	// Each route says where it does not apply; the next one takes over.
+	var no *fast.Unsupported
 	if n == 1 {
 		p.solver, err = quadrature.New(ctx, prob, quadrature.Settings{Tolerance: p.Tolerance})
-	} else {
+	}
+	if n > 1 || errors.As(err, &no) {
 		p.solver, err = spectral.New(ctx, prob, spectral.Settings{Tolerance: p.Tolerance})
+	}
+	if errors.As(err, &no) && n <= 2 {
+		p.solver, err = grid.New(ctx, prob, grid.Settings{})
 	}
 	return outcome(err)
 }
