@@ -67,6 +67,8 @@ func TestPrinted(t *testing.T) {
 		{"sqrt(1+x^2)*sqrt(1+x^2)", "x^2 + 1"},
 		{"1/(1+sqrt(1+x^2))", "(sqrt(x^2 + 1) - 1)/x^2"},
 		{"diff(sqrt(1+x^2), x)", "x/sqrt(x^2 + 1)"},
+		{"sinh(x)", "sinh(x)"},
+		{"x*cosh(2*x)/3 + 1", "x*cosh(2*x)/3 + 1"},
 		{"sin(sin(x))", "sin(sin(x))"},
 		{"exp(a*cos(theta))*exp(-a*cos(theta)+sin(theta))", "exp(sin(theta))"},
 		{"diff(exp(a*cos(theta)), theta)", "-a*sin(theta)*exp(a*cos(theta))"},

@@ -502,8 +502,9 @@ func (b *former) content(num poly) (rat, *mono, poly) {
 	r := b.r
 	m := r.monoContent(num)
 	var keep []power
+	mixed := bothSigns(num, func(*kernel) bool { return true })
 	for _, q := range m.p {
-		if q.k.kind != kindCis {
+		if q.k.kind != kindCis && !mixed[q.k] {
 			keep = append(keep, q)
 		}
 	}
@@ -599,6 +600,11 @@ func (b *former) factors(q poly) []polyFactor {
 	r := b.r
 	if len(q) > 200 {
 		return []polyFactor{{q, 1}}
+	}
+	for _, mixed := range bothSigns(q, func(*kernel) bool { return true }) {
+		if mixed {
+			return []polyFactor{{q, 1}}
+		}
 	}
 	if !hasCis(q) {
 		fs := r.splitPoly(q)
@@ -702,6 +708,48 @@ func (b *former) expanded(p poly) *Form {
 	if hasCis(p) {
 		return b.trigSum(p)
 	}
+	if q, ok := b.hyperbolic(p); ok {
+		return shorter(b.termwise(p), b.termwise(q))
+	}
+	return b.termwise(p)
+}
+
+// hyperbolic turns exponentials of both signs into hyperbolic sines and
+// cosines.
+func (b *former) hyperbolic(p poly) (poly, bool) {
+	r := b.r
+	found := false
+	for k, mixed := range bothSigns(p, func(*kernel) bool { return true }) {
+		if !mixed {
+			continue
+		}
+		found = true
+		acc := r.accumulate(len(p))
+		for _, t := range p {
+			e := t.m.degree(k)
+			if e.isZero() {
+				acc.add(t.m, t.c)
+				continue
+			}
+			m := r.monoWithout(t.m, k)
+			s := t.c
+			if e.n < 0 {
+				e, s = e.neg(), s.neg()
+			}
+			angle := k.args[0].Mul(r.ratExpr(e.rat()))
+			if angle.leadsNegative() {
+				angle, s = angle.Neg(), s.neg()
+			}
+			acc.add(r.monoMul(m, r.kernelMono(r.trigKernel("cosh", angle), expo{1, 1})), t.c)
+			acc.add(r.monoMul(m, r.kernelMono(r.trigKernel("sinh", angle), expo{1, 1})), s)
+		}
+		p = acc.poly()
+	}
+	return p, found
+}
+
+// termwise prints the terms one by one.
+func (b *former) termwise(p poly) *Form {
 	ts := append(poly(nil), p...)
 	sort.SliceStable(ts, func(i, j int) bool { return displayLess(ts[i].m, ts[j].m) })
 	fs := make([]*Form, len(ts))
