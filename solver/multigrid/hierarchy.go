@@ -62,7 +62,6 @@ func geometryOnly(m *volume.Operator) *volume.Operator {
 
 // setWeights fills the weights with which residuals go to the coarser level.
 func (l *level) setWeights(c *level) {
-	l.weight = volume.Float32s(l.lay.Len)
 	ny := c.lay.Shape(1)
 	l.each(func(_, lo, hi int) {
 		for r := lo; r < hi; r++ {

@@ -34,8 +34,10 @@ type level struct {
 func newLevel(m *volume.Operator) *level {
 	l := &level{grid: m.Grid, op: m, lay: m.Layout}
 	n := 2 * len(m.Links)
+	block := volume.Block32(n+3, m.Layout.Len)
+	l.x, l.b, l.weight = block[n], block[n+1], block[n+2]
 	for c := 0; c < n; c++ {
-		l.coef = append(l.coef, volume.Float32s(m.Layout.Len))
+		l.coef = append(l.coef, block[c])
 		li := c / 2
 		rows := make([]int32, m.Layout.Rows)
 		s := m.Links[li].Step[0]
@@ -51,7 +53,6 @@ func newLevel(m *volume.Operator) *level {
 		}
 		l.shift, l.rows = append(l.shift, s), append(l.rows, rows)
 	}
-	l.x, l.b = volume.Float32s(m.Layout.Len), volume.Float32s(m.Layout.Len)
 	d := m.Grid.Dim()
 	l.slabs = m.Grid.Axis(d - 1).Cells()
 	if d == 1 {

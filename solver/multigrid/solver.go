@@ -129,9 +129,7 @@ func New(ctx context.Context, m *volume.Operator, c volume.Coefficients, shift f
 		}
 	}
 	l.scale = nil
-	for i := range sv.work {
-		sv.work[i] = m.Layout.Vector()
-	}
+	copy(sv.work[:], volume.Block64(len(sv.work), m.Layout.Len))
 	sv.part = make([]float64, 3*m.Layout.Rows)
 	sv.setup = time.Since(start)
 	return sv, nil

@@ -73,10 +73,11 @@ func Assemble(ctx context.Context, g *grid.Grid, c Coefficients, s Settings) (*O
 	}
 	m := &Operator{Grid: g, Layout: NewLayout(g, 1), workers: a.workers}
 	a.m = m
+	block := Block64(2*a.dim, m.Layout.Len)
 	for d := 0; d < a.dim; d++ {
 		var step [grid.MaxDim]int
 		step[d] = 1
-		m.Links = append(m.Links, Link{step, m.Layout.Vector(), m.Layout.Vector()})
+		m.Links = append(m.Links, Link{step, block[2*d], block[2*d+1]})
 	}
 	m.finish()
 	if diagonal {
@@ -374,10 +375,7 @@ func driftDiffusion(g, a, dist float64) (out, back, z float64) {
 // assembleDiagonal builds the links along the axes for a diagonal A.
 func (a *assembly) assembleDiagonal() error {
 	m, l := a.m, &a.m.Layout
-	center := make([][]float64, a.dim) // A_dd at the cell centres
-	for d := range center {
-		center[d] = l.Vector()
-	}
+	center := Block64(a.dim, l.Len) // A_dd at the cell centres
 	err := a.each(func(ev *evaluator, r int) error {
 		if err := ev.row(0, r, l.Nx); err != nil {
 			return err

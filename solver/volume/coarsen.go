@@ -23,8 +23,9 @@ func Coarsen(m *Operator, merge []bool) (*Operator, error) {
 	}
 	g := m.Grid.Coarsen(merge)
 	c := &Operator{Grid: g, Layout: NewLayout(g, m.Layout.Ghost), workers: m.workers, Report: m.Report}
-	for _, link := range m.Links {
-		c.Links = append(c.Links, Link{link.Step, c.Layout.Vector(), c.Layout.Vector()})
+	block := Block64(2*d, c.Layout.Len)
+	for i, link := range m.Links {
+		c.Links = append(c.Links, Link{link.Step, block[2*i], block[2*i+1]})
 	}
 	if m.Kill != nil {
 		c.Kill = c.Layout.Vector()

@@ -25,3 +25,24 @@ func Float64s(n int) []float64 {
 	}
 	return v
 }
+
+// Block32 allocates count vectors of length n in one piece, which large pages
+// cover better than many.
+func Block32(count, n int) [][]float32 {
+	all := Float32s(count * n)
+	v := make([][]float32, count)
+	for i := range v {
+		v[i] = all[i*n : (i+1)*n : (i+1)*n]
+	}
+	return v
+}
+
+// Block64 is Block32 in double precision.
+func Block64(count, n int) [][]float64 {
+	all := Float64s(count * n)
+	v := make([][]float64, count)
+	for i := range v {
+		v[i] = all[i*n : (i+1)*n : (i+1)*n]
+	}
+	return v
+}
