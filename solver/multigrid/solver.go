@@ -174,7 +174,7 @@ const (
 
 // weigh alternates aggregation with further iterations until the weights of
 // the blocks stay. For densities that hang together the first step changes
-// nothing and costs less than a sweep.
+// nothing and costs about a sweep.
 func (s *Solver) weigh(ctx context.Context, p []float64, tol float64, st *Stats) {
 	keep := append([]float64(nil), p...)
 	for round := 0; round < weighRounds && st.Outcome != Cancelled && st.Outcome != IterationLimit && ctx.Err() == nil; round++ {

@@ -107,8 +107,16 @@ func lump(m, c *Operator, p []float64, shift [grid.MaxDim]int) []float64 {
 			}
 			uj, uk := l.RowCoordinates(u)
 			sameRow := uj>>shift[1] == block[1] && uk>>shift[2] == block[2]
+			if sameRow && link.Step[0] == 0 {
+				continue
+			}
 			t := l.Row(u) + link.Step[0]
-			for i := 0; i < l.Nx; i++ {
+			stride := 1
+			if sameRow && link.Step[0] == 1 { // only the last column of every block leaves it
+				stride = 1 << shift[0]
+			}
+			for i := stride - 1; i < l.Nx+stride-1; i += stride {
+				i := min(i, l.Nx-1)
 				x := i + link.Step[0]
 				if x < 0 || x >= l.Nx {
 					if !l.PeriodicX {
