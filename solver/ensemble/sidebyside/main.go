@@ -1,3 +1,5 @@
+//go:build unix
+
 // Command sidebyside measures the ensemble engine beside peer programs on the
 // same work and prints the tables of docs/performance-mc.md as Markdown:
 //
