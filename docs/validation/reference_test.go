@@ -16,10 +16,6 @@ import (
 var notCovered = map[string]string{
 	"a1101-drifting-groove: mean drift": "the mean drift is given by the name of an integral, not by a formula or a number",
 	"b606: mean drift":                  "the mean drift is given by the name of an integral, not by a formula or a number",
-	"b604: formulas":                    "a limit by quadrature: the claimed density is not confirmed",
-	"b604: reversible":                  "a limit by quadrature: the reversibility is not told",
-	"b1305: reversible at a point":      "irreversible for symbolic om, reversible for om = 0: the value of a parameter does not change the verdict",
-	"b1306: reversible at a point":      "irreversible for symbolic rates, reversible for those of the point: the values of parameters do not change the verdict",
 }
 
 // tolerance for numbers, times max(1, |value|). The files hold 16 digits.
