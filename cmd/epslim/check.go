@@ -167,12 +167,42 @@ func gridVerdict(d *numbers.Density) check {
 // ensembleCheck compares means of the full system with those of the limit.
 func (a *app) ensembleCheck(ctx context.Context, res *derivation.Result, run ensembleRun) []check {
 	row := check{Kind: "ensemble", What: "means"}
+	run, left, err := affordable(res, run)
+	if err != nil {
+		row.Verdict, row.Detail = skipped, short(err)
+		return []check{row}
+	}
+	if left != "" {
+		a.remark("%s", left)
+	}
 	c, err := a.runStudy(ctx, res, run)
 	if err != nil {
 		row.Verdict, row.Detail = skipped, short(err)
 		return []check{row}
 	}
 	return studyVerdicts(c)
+}
+
+// checkBudget is the number of path-steps that a check may spend on one system:
+// a few seconds of one processor.
+const checkBudget = 3e8
+
+// affordable leaves out the values of eps that would take too long, and says
+// so.
+func affordable(res *derivation.Result, run ensembleRun) (ensembleRun, string, error) {
+	eps, err := numbers.Affordable(res, run.eps, run.time, run.to-run.from, checkBudget)
+	if err != nil {
+		return run, "", err
+	}
+	if len(eps) == 0 {
+		return run, "", fmt.Errorf("every eps of %v would take more than %.0e steps; use fewer paths, a shorter time or a larger eps", run.eps, checkBudget)
+	}
+	left := ""
+	if len(eps) < len(run.eps) {
+		left = fmt.Sprintf("ensembles at eps = %v only: the others would take more than %.0e steps", eps, checkBudget)
+	}
+	run.eps = eps
+	return run, left, nil
 }
 
 // studyVerdicts are the rows of a study.

@@ -141,7 +141,15 @@ func (a *app) find(ctx context.Context, fs *findings, cells []int, skip map[stri
 		}
 	}
 	if !skip["ensemble"] && ctx.Err() == nil {
-		c, err := a.runStudy(ctx, fs.res, fs.run)
+		run, left, err := affordable(fs.res, fs.run)
+		if left != "" {
+			a.remark("%s", left)
+		}
+		var c *ensemble.Convergence
+		if err == nil {
+			fs.run = run
+			c, err = a.runStudy(ctx, fs.res, fs.run)
+		}
 		if err != nil {
 			fs.checks = append(fs.checks, check{Kind: "ensemble", What: "means", Verdict: skipped, Detail: short(err)})
 		} else {

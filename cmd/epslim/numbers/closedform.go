@@ -24,7 +24,7 @@ func ClosedForm(ctx context.Context, res *derivation.Result, g *grid.Grid) (dens
 	if err != nil {
 		logp = algebra.Expr{}
 	}
-	eval, err := logFormula(ctx, res, p, logp)
+	eval, err := logFormula(ctx, res, g, p, logp)
 	if err != nil {
 		return nil, err
 	}
@@ -44,7 +44,7 @@ func ClosedForm(ctx context.Context, res *derivation.Result, g *grid.Grid) (dens
 }
 
 // logFormula evaluates the logarithm of the density.
-func logFormula(ctx context.Context, res *derivation.Result, p, logp algebra.Expr) (density.Formula, error) {
+func logFormula(ctx context.Context, res *derivation.Result, g *grid.Grid, p, logp algebra.Expr) (density.Formula, error) {
 	for _, e := range []algebra.Expr{logp, p} {
 		if !e.Valid() {
 			continue
@@ -69,12 +69,15 @@ func logFormula(ctx context.Context, res *derivation.Result, p, logp algebra.Exp
 			return prog.Eval(s, points, [][]float64{out}, len(out))
 		}, nil
 	}
-	return pointwise(res, p)
+	if f, ok, err := integratingFactor(ctx, res, g); ok || err != nil {
+		return f, err
+	}
+	return pointwise(ctx, res, p)
 }
 
 // pointwise evaluates what cannot be compiled, such as integrals, point by
 // point.
-func pointwise(res *derivation.Result, p algebra.Expr) (density.Formula, error) {
+func pointwise(ctx context.Context, res *derivation.Result, p algebra.Expr) (density.Formula, error) {
 	if err := res.System.NeedNumbers(nil, p); err != nil {
 		return nil, err
 	}
@@ -89,6 +92,9 @@ func pointwise(res *derivation.Result, p algebra.Expr) (density.Formula, error) 
 	at := map[string]float64{}
 	return func(points [][]float64, out []float64) error {
 		for i := range out {
+			if err := ctx.Err(); err != nil {
+				return err
+			}
 			for d, n := range names {
 				at[n] = points[d][i]
 			}

@@ -117,6 +117,9 @@ func (o DensityOptions) cells(dim int) ([]int, error) {
 // compare finds the distance from the closed form on both grids.
 func (d *Density) compare(ctx context.Context, res *derivation.Result) error {
 	f, err := ClosedForm(ctx, res, d.Result.Grid)
+	if ctx.Err() != nil {
+		return ctx.Err()
+	}
 	if err != nil {
 		d.Warnings = append(d.Warnings, "the closed form could not be evaluated: "+err.Error())
 		return nil

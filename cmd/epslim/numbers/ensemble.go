@@ -217,3 +217,37 @@ func Judge(c *ensemble.Convergence) []Agreement {
 	}
 	return out
 }
+
+// Steps is the number of steps that a path of a model takes with the
+// recommended step.
+func Steps(m *ensemble.Model, time float64) (float64, error) {
+	scheme, _, err := m.DefaultScheme()
+	if err != nil {
+		return 0, err
+	}
+	a, err := m.Advise(scheme, time)
+	if err != nil {
+		return 0, err
+	}
+	return math.Ceil(time / a.Step), nil
+}
+
+// Affordable keeps the values of eps at which the given number of paths costs
+// at most budget steps in all.
+func Affordable(res *derivation.Result, eps []float64, time float64, paths uint64, budget float64) ([]float64, error) {
+	var out []float64
+	for _, e := range eps {
+		m, err := FullModel(res, e)
+		if err != nil {
+			return nil, err
+		}
+		n, err := Steps(m, time)
+		if err != nil {
+			return nil, err
+		}
+		if n*float64(paths) <= budget {
+			out = append(out, e)
+		}
+	}
+	return out, nil
+}
