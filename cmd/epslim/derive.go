@@ -3,6 +3,7 @@ package main
 import (
 	"errors"
 	"fmt"
+	"runtime/debug"
 
 	"github.com/spf13/cobra"
 
@@ -29,6 +30,8 @@ func (a *app) deriveCommand() *cobra.Command {
 			if err != nil {
 				return err
 			}
+			// A derivation is over before collecting garbage pays.
+			defer debug.SetGCPercent(debug.SetGCPercent(800))
 			res, err := derivation.Run(cmd.Context(), sys, opt)
 			if err != nil {
 				return a.deriveError(err)
