@@ -127,6 +127,9 @@ func (c *Closure) enrich(set []*fnNode) []*fnNode {
 		}
 	}
 	add(r.Int(1))
+	if h, ok := c.homogeneous(); ok {
+		add(h)
+	}
 	for _, m := range set {
 		for _, v := range c.p.Fast {
 			if v.Kind != Reflecting && v.Kind != Line && v.Kind != HalfLine {
@@ -142,6 +145,24 @@ func (c *Closure) enrich(set []*fnNode) []*fnNode {
 		}
 	}
 	return out
+}
+
+// homogeneous is the non-constant solution of L0 Phi = 0 between walls, whose
+// slope is exp(-int 2f/a), where that has a closed form.
+func (c *Closure) homogeneous() (algebra.Expr, bool) {
+	if len(c.p.Fast) != 1 || c.p.Fast[0].Kind != Reflecting || c.p.Drift(0).IsZero() {
+		return algebra.Expr{}, false
+	}
+	m := c.p.speedDensity(0)
+	if !m.Valid() {
+		return algebra.Expr{}, false
+	}
+	slope, err := c.p.Ring.Int(1).Div(c.p.Diffusion(0, 0).Mul(m))
+	if err != nil {
+		return algebra.Expr{}, false
+	}
+	h, err := c.p.Ring.Potential([]algebra.Expr{slope}, []string{c.p.Fast[0].Name})
+	return h, err == nil
 }
 
 // twoPointIn returns nil without an error when the set is too small.

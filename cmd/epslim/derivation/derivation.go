@@ -124,7 +124,7 @@ func (res *Result) run(ctx context.Context, opt Options) error {
 	if res.Stationary, err = res.Diffusion.Solve(ctx); err != nil {
 		return err
 	}
-	res.Exact = len(res.Route.Names()) == 0
+	res.method()
 	res.conditions()
 	res.certify()
 	for _, c := range sys.Claims {
@@ -187,6 +187,26 @@ func slowDiffusion(sys *ito.System, lim *perturb.Limit) *fokkerplanck.Diffusion 
 		d.Slow = append(d.Slow, fokkerplanck.Variable{Name: v.Name, Kind: v.Domain.Kind, A: v.Domain.A, B: v.Domain.B})
 	}
 	return d
+}
+
+// method tells whether numbers stand in the limit or were used on the way, and
+// by which route.
+func (res *Result) method() {
+	lim := res.Limit
+	res.Exact = true
+	for i, f := range lim.Drift {
+		res.Exact = res.Exact && !res.Route.IsNumerical(f)
+		for _, a := range lim.Diffusion[i] {
+			res.Exact = res.Exact && !res.Route.IsNumerical(a)
+		}
+	}
+	for _, o := range lim.Orders {
+		res.Exact = res.Exact && o.Note == ""
+	}
+	lim.Method = "closure"
+	if !res.Exact {
+		lim.Method = res.Route.Name()
+	}
 }
 
 // numbers gives the Fokker-Planck side the means to evaluate averages that are
