@@ -111,5 +111,5 @@ else:
     seconds = time.process_time() - start
     its = ksp.getIterationNumber()
     p = (1 + x.getArray()) / a
-eta = np.linalg.norm(M @ p) / np.linalg.norm(M @ (1 / a)) * (1 / a).sum() / p.sum()
+eta = np.linalg.norm(M @ p) / np.linalg.norm(M @ (1 / a)) * (1 / a).sum() / abs(p.sum())
 print(json.dumps(dict(solver=solver, case=case, cells=n, dim=dim, seconds=round(seconds, 3), iterations=its, reduction=float(eta))))
