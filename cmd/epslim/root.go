@@ -52,7 +52,14 @@ func (u *usageError) Error() string { return u.err.Error() }
 func (u *usageError) Unwrap() error { return u.err }
 
 // run is the whole program; it returns the exit status.
-func run(ctx context.Context, args []string, in io.Reader, out, errs io.Writer) int {
+func run(ctx context.Context, args []string, in io.Reader, out, errs io.Writer) (code int) {
+	defer func() {
+		// A fault of the program must not look like one of the model.
+		if x := recover(); x != nil {
+			fmt.Fprintf(errs, "epslim: internal error: %v\nThis is a fault of the program; please report it with the model file.\n", x)
+			code = exitWrong
+		}
+	}()
 	a := &app{in: in, out: out, err: errs}
 	root := a.root()
 	root.SetArgs(args)

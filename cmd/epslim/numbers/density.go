@@ -7,6 +7,7 @@ import (
 	"math"
 
 	"epslim/cmd/epslim/derivation"
+	"epslim/fokkerplanck"
 	"epslim/solver/density"
 	"epslim/solver/volume"
 )
@@ -48,6 +49,10 @@ func StationaryDensity(ctx context.Context, res *derivation.Result, opt DensityO
 	if err != nil {
 		return nil, err
 	}
+	never := res.Stationary.Density.Valid() && res.Stationary.Normal == fokkerplanck.No
+	if never && w.Automatic() {
+		return nil, &NotNormalisable{res.Stationary.NormalWhy}
+	}
 	if err := w.Choose(ctx, res, c, opt.Settings); err != nil {
 		return nil, err
 	}
@@ -82,6 +87,9 @@ func StationaryDensity(ctx context.Context, res *derivation.Result, opt DensityO
 		}
 	}
 	d.Warnings = nil
+	if never {
+		d.Warnings = append(d.Warnings, "the density cannot be normalised on the whole domain; the grid shows what it is in the window")
+	}
 	if d.Result, err = solve(cells); err != nil {
 		return nil, err
 	}
@@ -166,12 +174,22 @@ func (d *Density) Verdict() (ok bool, why string) {
 	return false, fmt.Sprintf("L1 distance %.2g on %s, %.2g on %s: the grid does not converge to the closed form (order %.2f)", d.CoarseL1, d.Coarse.Grid, d.Difference.L1, d.Result.Grid, d.Order)
 }
 
+// NotNormalisable reports a stationary density of infinite mass.
+type NotNormalisable struct{ Why string }
+
+func (e *NotNormalisable) Error() string {
+	return "no stationary density: the solution of the stationary equation cannot be normalised (" + e.Why + "); a window in the model file gives its shape there"
+}
+
 // NoDensity explains an error of the solver that means that there is no
 // stationary density, or returns the empty string.
 func NoDensity(err error) string {
 	var abs *density.AbsorbingError
 	var red *volume.ReducibleError
+	var inf *NotNormalisable
 	switch {
+	case errors.As(err, &inf):
+		return inf.Error()
 	case errors.As(err, &abs):
 		return abs.Error()
 	case errors.As(err, &red):
