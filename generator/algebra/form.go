@@ -127,6 +127,7 @@ func (b *former) arrange(e Expr, depth int) *Form {
 				best = x // a sum of quotients reads better than one long quotient
 			}
 			best = shorter(best, x)
+			best = shorter(best, b.commonFactor(num, depth))
 		}
 		if len(num) <= 400 {
 			best = shorter(best, b.byFunctions(e, depth))
@@ -494,6 +495,37 @@ func (b *former) scaled(c rat, f *Form) *Form {
 		return negForm(g)
 	}
 	return g
+}
+
+// commonFactor takes out only what is a factor of every term as it stands:
+// D/k^2*(1 - 1/c^2) rather than D*(c^2 - 1)/(k^2*c^2).
+func (b *former) commonFactor(num poly, depth int) *Form {
+	r := b.r
+	c, m, _ := b.content(num)
+	var keep []power
+	for _, q := range m.p {
+		all := true
+		for _, t := range num {
+			if e := t.m.degree(q.k); e.n*q.e.n <= 0 {
+				all = false
+			}
+		}
+		if all {
+			keep = append(keep, q)
+		}
+	}
+	if len(keep) == len(m.p) || len(keep) == 0 || hasAlgebraic(num) {
+		return nil
+	}
+	k := r.internMono(keep)
+	p := &prod{b: b, c: c, depth: depth}
+	p.mono(k)
+	s := b.sum(r.divMono(num, k).scale(coefRat(c.inv())), depth, true)
+	if s.Op == FormNeg {
+		p.c, s = p.c.neg(), s.Args[0]
+	}
+	p.form(s, 1)
+	return p.build()
 }
 
 // content splits num into rational content, monomial content without

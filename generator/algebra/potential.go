@@ -210,6 +210,15 @@ func (c *candidateSet) fromTerm(t term, i int) {
 			}
 		}
 		c.add(r.fromPoly(poly{{r.internMono(group), coefOne}}))
+		var plain []power // without the angles: sin(y) exp(cos(y))
+		for _, q := range group {
+			if q.k.kind != kindCis {
+				plain = append(plain, q)
+			}
+		}
+		if len(plain) > 0 {
+			c.add(r.fromPoly(poly{{r.internMono(plain), coefOne}}))
+		}
 		// Polynomial times exponential: lower the powers of x.
 		if n := m.degree(r.symbols[c.vars[i]]); n.isInt() && n.n > 0 && n.n < 8 {
 			f := e

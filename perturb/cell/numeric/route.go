@@ -44,6 +44,7 @@ type Route struct {
 	byPhi   map[string]*Name
 	byMean  map[string]*Name
 	syms    []symmetry
+	circle  *vonMises       // closed averages on a circle, if the law is of that kind
 	closed  map[string]bool // functions for which closure was tried in vain
 }
 
@@ -56,6 +57,7 @@ func New(p *cell.Process, slow []string, n cell.Numbers) *Route {
 	}
 	r.closure.MaxStep, r.closure.MaxSize = 12, 120
 	r.syms = findSymmetries(p)
+	r.circle = findVonMises(p)
 	return r
 }
 
@@ -141,6 +143,9 @@ func (r *Route) part(ctx context.Context, part algebra.RealPart) (cell.Solution,
 	}
 	mean := r.p.Ring.Int(0)
 	if !n.Zero {
+		if closed, ok := r.average(part); ok {
+			return cell.Solution{Phi: phi, Mean: closed}, nil
+		}
 		if mean, err = r.call(n.Mean, n.MeanArgs); err != nil {
 			return cell.Solution{}, err
 		}
