@@ -1,7 +1,6 @@
 // Package present renders derivations: the machine-readable result, text for
 // terminals, Markdown, LaTeX and HTML. It imports cmd/epslim/page,
-// cmd/epslim/derivation and what
-// that is made of.
+// cmd/epslim/derivation and what that is made of.
 package present
 
 import (
