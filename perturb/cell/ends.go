@@ -33,12 +33,15 @@ func (c *Closure) endConditions(phi algebra.Expr) ([]algebra.Expr, error) {
 				if err != nil {
 					return nil, err
 				}
-				if a.IsZero() || c.singularDrift(i, x) {
-					continue // the noise vanishes there, or the end is an entrance
+				if a.IsZero() {
+					continue // the noise vanishes there
 				}
 				s, err := at(slope, v.Name, x)
 				if err != nil {
 					return nil, err
+				}
+				if c.singularDrift(i, x) {
+					continue // an entrance: the slope has to be finite only
 				}
 				out = append(out, s)
 			}

@@ -8,6 +8,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"math"
 	"math/big"
 
 	"epslim/fokkerplanck"
@@ -126,7 +127,7 @@ func (res *Result) run(ctx context.Context, opt Options) error {
 	}
 	res.method()
 	res.conditions()
-	res.certify()
+	res.certify(ctx)
 	for _, c := range sys.Claims {
 		if opt.SkipClaims {
 			break
@@ -282,7 +283,7 @@ func (res *Result) conditions() {
 }
 
 // certify puts the correctors back into their equations.
-func (res *Result) certify() {
+func (res *Result) certify(ctx context.Context) {
 	p := res.Limit.Process
 	for _, o := range res.Limit.Orders {
 		r := p.Residual(o.Sum, cell.Solution{Phi: o.Corrector, Mean: o.Mean})
@@ -299,6 +300,19 @@ func (res *Result) certify() {
 			}
 		case !r.IsZero():
 			c.Status, c.Detail = Failed, "L0 Phi + f - <f> = "+r.String()
+		}
+		res.Certificates = append(res.Certificates, c)
+	}
+	if worst, count, err := res.Route.CheckClosed(ctx); count > 0 || err != nil {
+		c := Certificate{
+			What: "averages in closed form", Status: Numerical,
+			Detail: fmt.Sprintf("they agree with quadrature to %.1g relative", math.Max(worst, 1e-16)),
+		}
+		switch {
+		case err != nil:
+			c.Detail = "the comparison with quadrature failed: " + err.Error()
+		case worst > 1e-8:
+			c.Status = Failed
 		}
 		res.Certificates = append(res.Certificates, c)
 	}

@@ -27,9 +27,10 @@ type Name struct {
 	Phi, Mean string
 	Of        algebra.Expr // function of the fast variables, may contain earlier Phis
 	PhiArgs   []string
-	MeanArgs  []string // slow variables that the average depends on
-	Zero      bool     // the average vanishes by a symmetry of L0
-	parity    []int    // under each symmetry: 1, -1, or 0 for neither
+	MeanArgs  []string     // slow variables that the average depends on
+	Zero      bool         // the average vanishes by a symmetry of L0
+	Closed    algebra.Expr // the average in closed form, if Valid
+	parity    []int        // under each symmetry: 1, -1, or 0 for neither
 }
 
 // Route is the numerical route. It tries closure for every function of the
@@ -144,6 +145,7 @@ func (r *Route) part(ctx context.Context, part algebra.RealPart) (cell.Solution,
 	mean := r.p.Ring.Int(0)
 	if !n.Zero {
 		if closed, ok := r.average(part); ok {
+			n.Closed = closed
 			return cell.Solution{Phi: phi, Mean: closed}, nil
 		}
 		if mean, err = r.call(n.Mean, n.MeanArgs); err != nil {
@@ -289,4 +291,26 @@ func (p *Point) scale(ctx context.Context, e algebra.Expr) float64 {
 		}
 	}
 	return out
+}
+
+// CheckClosed compares the averages in closed form with numbers at a sample
+// point and returns the largest relative difference and how many there are.
+func (r *Route) CheckClosed(ctx context.Context) (worst float64, count int, err error) {
+	p := r.Sample(1)
+	for _, n := range r.names {
+		if !n.Closed.Valid() {
+			continue
+		}
+		want, _, err := p.Value(ctx, n.Closed)
+		if err != nil {
+			return worst, count, err
+		}
+		got, err := p.mean(ctx, n, nil)
+		if err != nil {
+			return worst, count, err
+		}
+		count++
+		worst = math.Max(worst, math.Abs(got.Value-want)/math.Max(math.Abs(want), math.Max(got.Scale, 1e-300)))
+	}
+	return worst, count, nil
 }
