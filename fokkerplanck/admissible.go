@@ -13,6 +13,14 @@ import (
 // single-valued on periodic variables, and in one dimension without a period
 // carry no current.
 func (d *Diffusion) Admissible(ctx context.Context, p algebra.Expr) string {
+	for _, v := range d.Slow {
+		if v.Kind == ito.Absorbing {
+			return fmt.Sprintf("mass leaves through the absorbing sides of %s", v.Name)
+		}
+	}
+	if t, why, _ := d.positive(p); t == No {
+		return why
+	}
 	if t, v, _ := d.singleValued(p); t == No {
 		return fmt.Sprintf("it does not return to its value over a period of %s", v)
 	}

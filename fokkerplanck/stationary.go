@@ -5,16 +5,28 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"strings"
 
 	"epslim/generator/algebra"
 	"epslim/generator/ito"
 )
 
+// solveBudget bounds the search for a closed form, in term operations.
+const solveBudget = 80_000_000
+
 // Solve looks for the stationary law: with functions left as names first,
 // then with their formulas, then with the values of the parameters.
 func (d *Diffusion) Solve(ctx context.Context) (*Stationary, error) {
+	for _, v := range d.Slow {
+		if v.Kind == ito.Absorbing {
+			return &Stationary{
+				Why:    "mass leaves through the absorbing sides of " + v.Name + ": there is no stationary density",
+				Normal: No, NormalWhy: "all mass is absorbed in the end",
+			}, nil
+		}
+	}
 	var out *Stationary
-	err := algebra.Guard(func() error {
+	err := d.Ring.WithBudget(solveBudget, func() error {
 		var err error
 		out, err = d.solve(ctx)
 		return err
@@ -334,7 +346,13 @@ func (d *Diffusion) finish(s *Stationary) {
 		}
 	}
 	s.Current = e.Current(s.Density)
-	s.Normal, s.NormalWhy = d.normalisable(s.Density)
+	positive, why, conds := d.positive(s.Density)
+	s.Conditions = conds
+	if positive == No {
+		s.Normal, s.NormalWhy = No, why
+	} else if s.Normal, s.NormalWhy = d.normalisable(s.Density); s.Normal == Yes && positive == Unknown && len(conds) > 0 {
+		s.Normal, s.NormalWhy = Unknown, "it needs "+strings.Join(conds, ", ")
+	}
 	if s.Normal == No && s.How == "the constant solves the stationary equation" && s.Reversible == No {
 		// On an unbounded domain the constant says nothing then.
 		s.Density, s.How, s.Current = algebra.Expr{}, "", nil

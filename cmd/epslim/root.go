@@ -11,6 +11,7 @@ import (
 	"github.com/spf13/cobra"
 	"github.com/spf13/pflag"
 
+	"epslim/generator/algebra"
 	"epslim/generator/ito"
 	"epslim/generator/ito/diagnostic"
 )
@@ -56,6 +57,16 @@ func run(ctx context.Context, args []string, in io.Reader, out, errs io.Writer) 
 	defer func() {
 		// A fault of the program must not look like one of the model.
 		if x := recover(); x != nil {
+			if e, ok := x.(error); ok && ctx.Err() != nil && errors.Is(e, ctx.Err()) {
+				fmt.Fprintln(errs, "epslim: interrupted")
+				code = exitInterrupted
+				return
+			}
+			if e, ok := x.(error); ok && errors.Is(e, algebra.ErrTooLarge) {
+				fmt.Fprintln(errs, "epslim: the result is too long to be arranged for reading:", e)
+				code = exitWrong
+				return
+			}
 			fmt.Fprintf(errs, "epslim: internal error: %v\nThis is a fault of the program; please report it with the model file.\n", x)
 			code = exitWrong
 		}

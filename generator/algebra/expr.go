@@ -1,6 +1,7 @@
 package algebra
 
 import (
+	"context"
 	"errors"
 	"math/big"
 	"sort"
@@ -53,11 +54,15 @@ type denFactor struct {
 func Guard(f func() error) (err error) {
 	defer func() {
 		if x := recover(); x != nil {
-			if e, ok := x.(error); ok && errors.Is(e, ErrTooLarge) {
+			e, ok := x.(error)
+			switch {
+			case ok && errors.Is(e, ErrTooLarge):
 				err = ErrTooLarge
-				return
+			case ok && (errors.Is(e, context.Canceled) || errors.Is(e, context.DeadlineExceeded)):
+				err = e
+			default:
+				panic(x)
 			}
-			panic(x)
 		}
 	}()
 	return f()
@@ -85,8 +90,20 @@ func (r *Ring) WithBudget(steps int64, f func() error) error {
 	return Guard(f)
 }
 
+// Watch makes long computations in the ring end when the context does: the
+// context's error comes out of Guard. Nil stops watching.
+func (r *Ring) Watch(ctx context.Context) { r.ctx = ctx }
+
 // spend counts n operations against the budget.
 func (r *Ring) spend(n int) {
+	if r.ctx != nil {
+		if r.sinceLook += n; r.sinceLook > 1<<14 {
+			r.sinceLook = 0
+			if err := r.ctx.Err(); err != nil {
+				panic(err)
+			}
+		}
+	}
 	if r.budget == 0 {
 		return
 	}

@@ -1,6 +1,7 @@
 package algebra
 
 import (
+	"context"
 	"encoding/binary"
 	"fmt"
 	"sort"
@@ -62,20 +63,22 @@ type Attr struct {
 // Ring is the kernel table of one derivation. Expressions of different rings
 // must not be mixed. A Ring is not safe for concurrent use.
 type Ring struct {
-	kernels map[string]*kernel
-	symbols map[string]*kernel
-	funcs   map[string]*function
-	monos   map[string]*mono
-	factors map[string]*factorPoly
-	gcds    map[[2]*factorPoly]poly
-	prods   map[[2]*mono]*mono
-	nextID  uint32
-	rank    int
-	budget  int64 // term operations left; 0 is no limit
-	buf     []byte
-	one     *mono
-	zero    Expr
-	unit    Expr
+	kernels   map[string]*kernel
+	symbols   map[string]*kernel
+	funcs     map[string]*function
+	monos     map[string]*mono
+	factors   map[string]*factorPoly
+	gcds      map[[2]*factorPoly]poly
+	prods     map[[2]*mono]*mono
+	nextID    uint32
+	rank      int
+	ctx       context.Context // see Watch
+	sinceLook int             // operations since the context was looked at
+	budget    int64           // term operations left; 0 is no limit
+	buf       []byte
+	one       *mono
+	zero      Expr
+	unit      Expr
 }
 
 type function struct {

@@ -51,11 +51,14 @@ func (c *Closure) Name() string { return "closure" }
 // Conditions implements Route.
 func (c *Closure) Conditions() []algebra.Expr { return c.conds }
 
+// solveBudget bounds the work on one fast problem, in term operations.
+const solveBudget = 60_000_000
+
 // Solve implements Route.
 func (c *Closure) Solve(ctx context.Context, f algebra.Expr) (Solution, error) {
 	r := c.p.Ring
 	out := Solution{r.Int(0), r.Int(0)}
-	err := algebra.Guard(func() error {
+	err := r.WithBudget(solveBudget, func() error {
 		parts := c.split(f)
 		for _, l := range parts {
 			if err := ctx.Err(); err != nil {

@@ -69,6 +69,7 @@ type Certificate struct {
 // without a limit is a Result with Refused set.
 func Run(ctx context.Context, sys *ito.System, opt Options) (*Result, error) {
 	res := &Result{System: sys, Exact: true}
+	sys.Ring.Watch(ctx)
 	err := algebra.Guard(func() error { return res.run(ctx, opt) })
 	if errors.Is(err, algebra.ErrTooLarge) {
 		return nil, fmt.Errorf("the derivation needs expressions beyond the size limit: %w", err)
@@ -279,6 +280,9 @@ func (res *Result) conditions() {
 	}
 	for _, c := range x.Conditions {
 		add(c.String())
+	}
+	for _, c := range res.Stationary.Conditions {
+		add(c)
 	}
 }
 

@@ -247,9 +247,22 @@ func (r *Route) Settle(ctx context.Context, e algebra.Expr) (zero bool, note str
 	if !r.IsNumerical(e) {
 		return e.IsZero(), "", nil
 	}
+	// Named functions are arbitrary here: what vanishes for their formulas
+	// only does not vanish as a formula in their names.
+	zero, note, err = r.settle(ctx, e, true)
+	if err != nil && ctx.Err() == nil {
+		return r.settle(ctx, e, false) // arbitrary values may leave the domain of the model
+	}
+	return zero, note, err
+}
+
+func (r *Route) settle(ctx context.Context, e algebra.Expr, arbitrary bool) (zero bool, note string, err error) {
 	worst := 0.0
 	for k := 0; k < 3; k++ {
 		p := r.Sample(k)
+		if arbitrary {
+			p.defs = nil
+		}
 		v, de, err := p.Value(ctx, e)
 		if err != nil {
 			return false, "", err
