@@ -156,7 +156,7 @@ func (e *expansion) correctors() error {
 	}
 	for _, o := range e.out.Orders {
 		c := o.Corrector
-		if c.IsZero() {
+		if !c.Valid() || c.IsZero() {
 			continue
 		}
 		ts, err := c.Derivatives(e.out.U0)
@@ -201,11 +201,11 @@ func (e *expansion) origins(ctx context.Context, o Order) error {
 	n := len(e.Slow)
 	e.out.Terms = make([][]Term, n)
 	add := func(origin string, op algebra.Expr) error {
-		s, err := e.solve(ctx, op)
+		mean, err := e.mean(ctx, op)
 		if err != nil {
 			return err
 		}
-		mean, _, err := e.settle(ctx, s.Mean)
+		mean, _, err = e.settle(ctx, mean)
 		if err != nil {
 			return err
 		}
@@ -384,15 +384,13 @@ func NegPower(p *big.Rat) string { return new(big.Rat).Neg(p).RatString() }
 
 // Average is the mean of a function over the fast process.
 func (l *Limit) Average(ctx context.Context, f algebra.Expr) (algebra.Expr, error) {
-	var first error
+	var last error
 	for _, r := range l.routes {
-		s, err := r.Solve(ctx, f)
+		m, err := r.Mean(ctx, f)
 		if err == nil {
-			return s.Mean, nil
+			return m, nil
 		}
-		if first == nil {
-			first = err
-		}
+		last = err
 	}
-	return algebra.Expr{}, first
+	return algebra.Expr{}, last
 }

@@ -76,7 +76,7 @@ type Order struct {
 	Source    []Contribution
 	Sum       algebra.Expr // the sum of the sources
 	Mean      algebra.Expr // its average: an operator acting on u0
-	Corrector algebra.Expr // u_J, with L_lead u_J = Mean - Sum
+	Corrector algebra.Expr // u_J, with L_lead u_J = Mean - Sum; not Valid where it was not needed
 	Limit     bool         // the solvability condition is the limit equation
 	Note      string       // how the average was found to vanish, if by numbers
 }
@@ -317,15 +317,27 @@ func (e *expansion) order(ctx context.Context, j int, power *big.Rat) (done bool
 		e.u = append(e.u, e.Ring.Int(0))
 		return false, nil
 	}
-	s, err := e.solve(ctx, o.Sum)
-	if err != nil {
-		return false, fmt.Errorf("at order %s^(%s): %w", e.Gen.Small, power.RatString(), err)
+	at := func(err error) error {
+		return fmt.Errorf("at order %s^(%s): %w", e.Gen.Small, power.RatString(), err)
 	}
-	o.Mean, o.Corrector = s.Mean, s.Phi
+	mean, err := e.mean(ctx, o.Sum)
+	if err != nil {
+		return false, at(err)
+	}
+	o.Mean = mean
 	if o.Mean, o.Note, err = e.settle(ctx, o.Mean); err != nil {
-		return false, fmt.Errorf("at order %s^(%s): %w", e.Gen.Small, power.RatString(), err)
+		return false, at(err)
 	}
 	o.Limit = !o.Mean.IsZero()
+	if !o.Limit || len(e.out.Orders) == 0 {
+		// The corrector of the limit order itself is of no use later, and may
+		// be long; in averaging problems it is the only one.
+		s, err := e.solve(ctx, o.Sum)
+		if err != nil {
+			return false, at(err)
+		}
+		o.Corrector = s.Phi
+	}
 	e.out.Orders = append(e.out.Orders, o)
 	if !o.Limit {
 		e.u = append(e.u, o.Corrector)
@@ -369,21 +381,41 @@ func (e *expansion) derivative(index []int) algebra.Expr {
 
 // solve tries the routes in turn.
 func (e *expansion) solve(ctx context.Context, f algebra.Expr) (cell.Solution, error) {
+	var out cell.Solution
+	err := e.try(func(r cell.Route) (err error) {
+		out, err = r.Solve(ctx, f)
+		return err
+	})
+	return out, err
+}
+
+// mean is the average alone.
+func (e *expansion) mean(ctx context.Context, f algebra.Expr) (algebra.Expr, error) {
+	var out algebra.Expr
+	err := e.try(func(r cell.Route) (err error) {
+		out, err = r.Mean(ctx, f)
+		return err
+	})
+	return out, err
+}
+
+// try runs a task with the first route that applies.
+func (e *expansion) try(task func(cell.Route) error) error {
 	var last error
 	for _, r := range e.Routes {
-		s, err := r.Solve(ctx, f)
+		err := task(r)
 		if err == nil {
 			e.used[r.Name()] = true
 			e.out.Method = r.Name()
-			return s, nil
+			return nil
 		}
 		if !errors.Is(err, cell.ErrDoesNotApply) {
-			return cell.Solution{}, err
+			return err
 		}
 		e.whyNot(r.Name() + ": " + err.Error())
 		last = err
 	}
-	return cell.Solution{}, last
+	return last
 }
 
 func (e *expansion) whyNot(s string) {

@@ -117,6 +117,8 @@ type Route interface {
 	// Solve returns the corrector and the average of f, or ErrDoesNotApply
 	// (wrapped, with the reason) where the route is of no use for f.
 	Solve(ctx context.Context, f algebra.Expr) (Solution, error)
+	// Mean is the average alone, which needs no sum of correctors.
+	Mean(ctx context.Context, f algebra.Expr) (algebra.Expr, error)
 	// Conditions lists what the solutions so far need beyond the declared
 	// assumptions, as quantities that must not vanish.
 	Conditions() []algebra.Expr

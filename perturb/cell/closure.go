@@ -56,11 +56,27 @@ const solveBudget = 60_000_000
 
 // Solve implements Route.
 func (c *Closure) Solve(ctx context.Context, f algebra.Expr) (Solution, error) {
-	r := c.p.Ring
-	out := Solution{r.Int(0), r.Int(0)}
-	err := r.WithBudget(solveBudget, func() error {
-		parts := c.split(f)
-		for _, l := range parts {
+	out := Solution{c.p.Ring.Int(0), c.p.Ring.Int(0)}
+	err := c.eachPart(ctx, f, func(coef algebra.Expr, s *Solution) {
+		out.Phi = out.Phi.Add(coef.Mul(s.Phi))
+		out.Mean = out.Mean.Add(coef.Mul(s.Mean))
+	})
+	return out, err
+}
+
+// Mean implements Route.
+func (c *Closure) Mean(ctx context.Context, f algebra.Expr) (algebra.Expr, error) {
+	out := c.p.Ring.Int(0)
+	err := c.eachPart(ctx, f, func(coef algebra.Expr, s *Solution) {
+		out = out.Add(coef.Mul(s.Mean))
+	})
+	return out, err
+}
+
+// eachPart solves for every function of the fast variables in f.
+func (c *Closure) eachPart(ctx context.Context, f algebra.Expr, use func(coef algebra.Expr, s *Solution)) error {
+	err := c.p.Ring.WithBudget(solveBudget, func() error {
+		for _, l := range c.split(f) {
 			if err := ctx.Err(); err != nil {
 				return err
 			}
@@ -68,15 +84,14 @@ func (c *Closure) Solve(ctx context.Context, f algebra.Expr) (Solution, error) {
 			if err != nil {
 				return err
 			}
-			out.Phi = out.Phi.Add(l.coef.Mul(s.Phi))
-			out.Mean = out.Mean.Add(l.coef.Mul(s.Mean))
+			use(l.coef, s)
 		}
 		return nil
 	})
 	if errors.Is(err, algebra.ErrTooLarge) {
 		err = doesNotApply("the closed set of functions is too large: %v", err)
 	}
-	return out, err
+	return err
 }
 
 // split writes e over basis functions.

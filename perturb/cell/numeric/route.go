@@ -102,24 +102,39 @@ func (r *Route) IsNumerical(e algebra.Expr) bool {
 
 // Solve implements cell.Route.
 func (r *Route) Solve(ctx context.Context, f algebra.Expr) (cell.Solution, error) {
-	ring := r.p.Ring
-	out := cell.Solution{Phi: ring.Int(0), Mean: ring.Int(0)}
+	out := cell.Solution{Phi: r.p.Ring.Int(0), Mean: r.p.Ring.Int(0)}
+	err := r.eachPart(ctx, f, func(coef algebra.Expr, s cell.Solution) {
+		out.Phi = out.Phi.Add(coef.Mul(s.Phi))
+		out.Mean = out.Mean.Add(coef.Mul(s.Mean))
+	})
+	return out, err
+}
+
+// Mean implements cell.Route.
+func (r *Route) Mean(ctx context.Context, f algebra.Expr) (algebra.Expr, error) {
+	out := r.p.Ring.Int(0)
+	err := r.eachPart(ctx, f, func(coef algebra.Expr, s cell.Solution) {
+		out = out.Add(coef.Mul(s.Mean))
+	})
+	return out, err
+}
+
+func (r *Route) eachPart(ctx context.Context, f algebra.Expr, use func(coef algebra.Expr, s cell.Solution)) error {
 	parts, err := r.p.Reduce(f).SplitReal(r.p.Names()...)
 	if err != nil {
-		return out, err
+		return err
 	}
 	for _, part := range parts {
 		if err := ctx.Err(); err != nil {
-			return out, err
+			return err
 		}
 		s, err := r.part(ctx, part)
 		if err != nil {
-			return out, err
+			return err
 		}
-		out.Phi = out.Phi.Add(part.Coef.Mul(s.Phi))
-		out.Mean = out.Mean.Add(part.Coef.Mul(s.Mean))
+		use(part.Coef, s)
 	}
-	return out, nil
+	return nil
 }
 
 func (r *Route) part(ctx context.Context, part algebra.RealPart) (cell.Solution, error) {
