@@ -33,6 +33,7 @@ type Correction struct {
 // derivatives drop out of the solvability condition, since they act on
 // functions of average zero.
 func (e *expansion) corrections(ctx context.Context, top int, upTo *big.Rat) error {
+	e.out.UpTo = upTo
 	w := []algebra.Expr{e.u[0]}
 	eff := []algebra.Expr{}
 	for j := 1; ; j++ {

@@ -107,6 +107,7 @@ type Limit struct {
 	Generator   algebra.Expr // the limit generator on u0
 	Frame       *Frame       // nil unless a mean drift was dealt with
 	Corrections []Correction // beyond the limit, as far as asked for
+	UpTo        *big.Rat     // the power up to which corrections were looked for; nil if none
 	WhyNot      []string     // why earlier routes did not apply
 	routes      []cell.Route
 }

@@ -15,6 +15,10 @@ type Value struct {
 	Drift     []float64
 	Diffusion [][]float64
 	Error     float64 // bound on the absolute error
+	// SmallEnough is the small parameter below which the first correction
+	// changes drift and diffusion by less than one per cent of the largest
+	// entry of each; zero where no correction was derived.
+	SmallEnough float64
 }
 
 // MissingValue reports that a number was asked for where a parameter has no
@@ -53,7 +57,53 @@ func (res *Result) valueAt(ctx context.Context, p *ito.Point) (*Value, error) {
 		v.Diffusion = append(v.Diffusion, row)
 		v.Error = math.Max(v.Error, de)
 	}
-	return v, nil
+	return v, res.smallEnough(v, eval)
+}
+
+// smallEnough compares the first correction with the limit.
+func (res *Result) smallEnough(v *Value, eval func(algebra.Expr) (float64, float64, error)) error {
+	if len(res.Limit.Corrections) == 0 {
+		return nil
+	}
+	c := res.Limit.Corrections[0]
+	p, _ := c.Power.Float64()
+	size := func(xs ...float64) (m float64) {
+		for _, x := range xs {
+			m = math.Max(m, math.Abs(x))
+		}
+		return m
+	}
+	bound := math.Inf(1)
+	add := func(limit float64, es ...algebra.Expr) error {
+		m := 0.0
+		for _, e := range es {
+			x, _, err := eval(e)
+			if err != nil {
+				return err
+			}
+			m = size(m, x)
+		}
+		if m > 0 && limit > 0 {
+			bound = math.Min(bound, math.Pow(0.01*limit/m, 1/p))
+		}
+		return nil
+	}
+	if err := add(size(v.Drift...), c.Drift...); err != nil {
+		return err
+	}
+	limit := 0.0
+	var entries []algebra.Expr
+	for i, row := range v.Diffusion {
+		limit = size(limit, size(row...))
+		entries = append(entries, c.Diffusion[i]...)
+	}
+	if err := add(limit, entries...); err != nil {
+		return err
+	}
+	if !math.IsInf(bound, 1) {
+		v.SmallEnough = bound
+	}
+	return nil
 }
 
 // evaluator evaluates expressions at a point, with formulas for functions and

@@ -366,7 +366,11 @@ func values(res *derivation.Result) []object {
 		for _, k := range sortedKeys(v.At.Parameters) {
 			at = append(at, member{k, v.At.Parameters[k].Float})
 		}
-		out = append(out, object{{"at", at}, {"drift", drift}, {"diffusion", diff}, {"error", v.Error}})
+		o := object{{"at", at}, {"drift", drift}, {"diffusion", diff}, {"error", v.Error}}
+		if v.SmallEnough > 0 {
+			o = append(o, member{"eps_for_one_percent", v.SmallEnough})
+		}
+		out = append(out, o)
 	}
 	return out
 }

@@ -106,6 +106,11 @@ func digits(s, set string) string {
 
 func lowered(s string) string { return digits(s, lowDigits) }
 
+// decimalMath is a decimal number as it is written.
+func decimalMath(s string) Math {
+	return Math{minus(s), s, "<mn>" + minus(s) + "</mn>"}
+}
+
 func integer(n int) Math {
 	s := big.NewInt(int64(n)).String()
 	return Math{s, s, "<mn>" + s + "</mn>"}

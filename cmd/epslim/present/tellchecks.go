@@ -159,6 +159,9 @@ func (t *teller) values() Section {
 			}
 		}
 		sec.Blocks = append(sec.Blocks, Para{text("At " + strings.Join(at, ", ") + " (to " + strconv.FormatFloat(v.Error, 'e', 0, 64) + "):")}, tab)
+		if v.SmallEnough > 0 {
+			sec.Blocks = append(sec.Blocks, Para{text("There the first correction changes drift and diffusion by less than one per cent of their size for "), inline(join(t.eps, op("<", "<"))), text(strconv.FormatFloat(v.SmallEnough, 'g', 2, 64) + ".")})
+		}
 	}
 	return sec
 }

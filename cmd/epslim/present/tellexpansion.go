@@ -1,7 +1,10 @@
 package present
 
 import (
+	"context"
+	"math"
 	"math/big"
+	"strconv"
 
 	"epslim/generator"
 	"epslim/generator/algebra"
@@ -179,8 +182,31 @@ func (t *teller) named() []Block {
 	if len(ls) == 0 {
 		return nil
 	}
-	return []Block{Para{text("These have no closed form and are known by numbers (" + t.res.Route.Name() + "); a name stands for the solution of its fast problem:")},
-		Equations{ID: "named", Lines: ls}}
+	return append([]Block{Para{text("These have no closed form and are known by numbers (" + t.res.Route.Name() + "); a name stands for the solution of its fast problem:")},
+		Equations{ID: "named", Lines: ls}}, t.averageValues()...)
+}
+
+// averageValues gives the numbers behind the names, where they are constants
+// for the declared values of the parameters.
+func (t *teller) averageValues() []Block {
+	var ls []Line
+	for _, a := range t.res.Averages(context.Background()) {
+		if !a.Known || a.Zero {
+			continue
+		}
+		m, ok := t.res.System.Ring.Symbol(a.Name)
+		if !ok {
+			continue
+		}
+		value := strconv.FormatFloat(a.Value, 'g', 12, 64)
+		l := line(t.expr(m), equals, Term{Pre: decimalMath(value)})
+		l.Note = cell(text("to " + strconv.FormatFloat(math.Max(a.Error, 1e-16), 'e', 0, 64)))
+		ls = append(ls, l)
+	}
+	if len(ls) == 0 {
+		return nil
+	}
+	return []Block{Para{text("For the declared values of the parameters:")}, Equations{ID: "averages", Lines: ls}}
 }
 
 func negated(ts []Term) []Term {

@@ -72,9 +72,19 @@ func (t *teller) next() Section {
 		}
 		p := Para{text("At the relative order "), inline(power(t.eps, c.Power)), text(" the generator gains the drift "), inline(t.own("f")), text(" and the diffusion matrix "), inline(t.own("A")), text(":")}
 		sec.Blocks = append(sec.Blocks, p, Equations{Lines: ls})
+		if c.Residual.Valid() && !c.Residual.IsZero() && !t.res.Route.IsNumerical(c.Residual) {
+			sec.Blocks = append(sec.Blocks, Para{text("Its corrector leaves a residual: do not use this correction.")})
+		}
 		if c.Higher.Valid() && !c.Higher.IsZero() {
 			sec.Blocks = append(sec.Blocks, Para{text("It also gains derivatives of third or higher order, so that the corrected equation is not that of a diffusion.")})
 		}
+	}
+	switch up := t.res.Limit.UpTo; {
+	case up == nil:
+	case len(t.res.Limit.Corrections) == 0:
+		sec.Blocks = append(sec.Blocks, Para{text("Up to the relative order "), inline(power(t.eps, up)), text(" the corrections vanish.")})
+	default:
+		sec.Blocks = append(sec.Blocks, Para{text("The corrected operator governs the average of u over the fast process after the initial layer. Its initial value differs from that of the limit at the same order, so stationary averages must not be read off the corrected drift and diffusion alone.")})
 	}
 	return sec
 }

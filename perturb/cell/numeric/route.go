@@ -30,6 +30,7 @@ type Name struct {
 	MeanArgs  []string     // slow variables that the average depends on
 	Zero      bool         // the average vanishes by a symmetry of L0
 	Closed    algebra.Expr // the average in closed form, if Valid
+	square    bool         // the average is <f Phi_f>, which is never negative
 	parity    []int        // under each symmetry: 1, -1, or 0 for neither
 }
 
@@ -183,7 +184,11 @@ func (r *Route) hasPhi(part algebra.RealPart) bool {
 // is a symbol.
 func (r *Route) call(name string, args []string) (algebra.Expr, error) {
 	if len(args) == 0 {
-		return r.p.Ring.Declare(name, algebra.Attr{Parameter: true}), nil
+		sign := algebra.AnyReal
+		if n := r.byMean[name]; n != nil && n.square {
+			sign = algebra.NonNegative
+		}
+		return r.p.Ring.Declare(name, algebra.Attr{Parameter: true, Sign: sign}), nil
 	}
 	as := make([]algebra.Expr, len(args))
 	for i, a := range args {
@@ -219,8 +224,13 @@ func (r *Route) name(key string, part algebra.RealPart) (*Name, error) {
 	if err := r.p.Ring.DeclareFunction(n.Phi, n.PhiArgs, algebra.Attr{Latex: `\Phi_{` + index + `}`}); err != nil {
 		return nil, err
 	}
+	n.square = r.isSquare(part)
 	if len(n.MeanArgs) > 0 {
-		if err := r.p.Ring.DeclareFunction(n.Mean, n.MeanArgs, algebra.Attr{Latex: `M_{` + index + `}`}); err != nil {
+		attr := algebra.Attr{Latex: `M_{` + index + `}`}
+		if n.square {
+			attr.Sign = algebra.NonNegative
+		}
+		if err := r.p.Ring.DeclareFunction(n.Mean, n.MeanArgs, attr); err != nil {
 			return nil, err
 		}
 	}
@@ -234,6 +244,30 @@ func (r *Route) name(key string, part algebra.RealPart) (*Name, error) {
 	r.names = append(r.names, n)
 	r.byKey[key], r.byPhi[n.Phi], r.byMean[n.Mean] = n, n, n
 	return n, nil
+}
+
+// isSquare recognises f times its own corrector: <f Phi_f> is half the
+// intensity of a noise (a Green-Kubo integral).
+func (r *Route) isSquare(part algebra.RealPart) bool {
+	rest := r.p.Ring.Int(1)
+	var phi *Name
+	for _, a := range part.Atoms {
+		n := r.byPhi[a.Func]
+		if a.Kind != algebra.AtomFunc || n == nil {
+			rest = rest.Mul(a.Expr)
+			continue
+		}
+		for _, d := range a.Deriv {
+			if d != 0 {
+				return false
+			}
+		}
+		if phi != nil {
+			return false
+		}
+		phi = n
+	}
+	return phi != nil && rest.Equal(phi.Of)
 }
 
 // free makes a name unknown to the ring.
