@@ -6,6 +6,7 @@ import (
 	"github.com/spf13/cobra"
 
 	"epslim/generator/ito"
+	"epslim/solver/ensemble"
 )
 
 // completeModels completes the names of model files.
@@ -84,10 +85,23 @@ func completions(root *cobra.Command) {
 		if c.Flags().Lookup("without") != nil {
 			_ = c.RegisterFlagCompletionFunc("without", fixed("grid", "ensemble"))
 		}
-		for _, name := range []string{"eps", "paths", "time", "step", "seed", "workers", "cells"} {
+		for _, name := range []string{"scheme", "limit-scheme"} {
+			if c.Flags().Lookup(name) != nil {
+				_ = c.RegisterFlagCompletionFunc(name, fixed(schemeNames()...))
+			}
+		}
+		for _, name := range []string{"times", "long", "histogram", "target", "budget", "checkpoint-every", "eps", "paths", "time", "step", "seed", "workers", "cells"} {
 			if c.Flags().Lookup(name) != nil {
 				_ = c.RegisterFlagCompletionFunc(name, fixed())
 			}
 		}
 	}
+}
+
+func schemeNames() []string {
+	var out []string
+	for _, s := range ensemble.Schemes() {
+		out = append(out, s.Name)
+	}
+	return out
 }

@@ -18,290 +18,332 @@ import (
 	"epslim/solver/ensemble"
 )
 
-// ensembleFlags are the options of a run as typed.
-type ensembleFlags struct {
-	eps, paths string
-	time, step float64
-	seed       uint64
-	workers    int
-	scheme     string
-	bias       bool
+// ensembleOutput is where the results of an ensemble go.
+type ensembleOutput struct {
+	format, figure, csv, npz string
+	force                    bool
 }
 
-func (f *ensembleFlags) bind(cmd *cobra.Command, paths string) {
-	cmd.Flags().StringVar(&f.eps, "eps", "0.2,0.1,0.05", "values of the scale parameter, decreasing")
-	cmd.Flags().StringVar(&f.paths, "paths", paths, "number of paths, or a range such as 1000:2000")
-	cmd.Flags().Float64Var(&f.time, "time", 1, "length of the simulated time, in the limit's unit")
-	cmd.Flags().Float64Var(&f.step, "step", 0, "largest time step (0: chosen from eps and the rates of the system)")
-	cmd.Flags().Uint64Var(&f.seed, "seed", 1, "seed of all random numbers")
-	cmd.Flags().IntVar(&f.workers, "workers", 0, "goroutines (0: one a processor); results do not depend on it")
-	cmd.Flags().StringVar(&f.scheme, "scheme", "", "time-stepping scheme (default: chosen to suit the system)")
-	cmd.Flags().BoolVar(&f.bias, "bias", false, "estimate the bias of the step with two steps on common noise")
+func (o *ensembleOutput) bind(cmd *cobra.Command) {
+	cmd.Flags().StringVar(&o.format, "format", "text", "text or json")
+	cmd.Flags().StringVar(&o.figure, "figure", "", "draw the convergence in eps to a file that ends in .svg, .png, .pdf or .tex")
+	cmd.Flags().StringVar(&o.csv, "csv", "", "write means, differences and rates to a table")
+	cmd.Flags().StringVar(&o.npz, "npz", "", "write moments, covariances and histograms as NumPy arrays")
+	cmd.Flags().BoolVar(&o.force, "force", false, "replace files that exist")
 }
 
-// ensembleRun is a run that has been checked.
-type ensembleRun struct {
-	eps        []float64
-	from, to   uint64
-	time, step float64
-	seed       uint64
-	workers    int
-	scheme     string
-	bias       bool
-}
-
-// Limits of what a run accepts.
-const (
-	maxTime = 1e9
-	maxEps  = 10
-)
-
-func (f *ensembleFlags) settings() (ensembleRun, error) {
-	r := ensembleRun{time: f.time, step: f.step, seed: f.seed, workers: f.workers, scheme: f.scheme, bias: f.bias}
-	for _, s := range strings.Split(f.eps, ",") {
-		v, err := strconv.ParseFloat(strings.TrimSpace(s), 64)
-		if err != nil || !(v > 0) || v > maxEps {
-			return r, fmt.Errorf("--eps is %q; it takes positive numbers of at most %d, such as 0.2,0.1,0.05", f.eps, maxEps)
-		}
-		r.eps = append(r.eps, v)
+func (o ensembleOutput) check(a *app) error {
+	if err := oneOf("--format", o.format, "text", "json"); err != nil {
+		return err
 	}
-	from, to, isRange := strings.Cut(f.paths, ":")
-	if !isRange {
-		from, to = "0", f.paths
-	}
-	var e1, e2 error
-	r.from, e1 = strconv.ParseUint(from, 10, 64)
-	r.to, e2 = strconv.ParseUint(to, 10, 64)
-	if e1 != nil || e2 != nil || r.to <= r.from {
-		return r, fmt.Errorf("--paths is %q; it takes a positive number or a range such as 1000:2000", f.paths)
-	}
-	if r.to > ensemble.MaxPaths {
-		return r, fmt.Errorf("--paths is %q; at most %d are possible", f.paths, uint64(ensemble.MaxPaths))
-	}
-	if !(f.time > 0) || f.time > maxTime {
-		return r, fmt.Errorf("--time is %g; it must be positive and at most %g", f.time, float64(maxTime))
-	}
-	if f.step < 0 || f.step > f.time || math.IsNaN(f.step) {
-		return r, fmt.Errorf("--step is %g; it must be positive and at most the time of %g, or 0 for the recommended one", f.step, f.time)
-	}
-	if f.scheme != "" {
-		if _, err := ensemble.SchemeByName(f.scheme); err != nil {
-			return r, fmt.Errorf("--scheme: %w", err)
+	if o.figure != "" {
+		if err := figureName(o.figure); err != nil {
+			return err
 		}
 	}
-	return r, nil
+	return a.targets(o.force, o.figure, o.csv, o.npz)
 }
 
 func (a *app) ensembleCommand() *cobra.Command {
 	var f ensembleFlags
-	var format, figureFile, csv string
-	var force bool
+	var o ensembleOutput
+	var schemes bool
 	cmd := &cobra.Command{
 		Use:   "ensemble FILE",
 		Short: "Paths of the full system and of its limit, and the rate in eps",
 		Long: `Simulate the full system at several values of the scale parameter and its limit,
 and compare the means of the observables, with standard errors and the observed rate.`,
 		Example: `  epslim ensemble crawler.ito
-  epslim ensemble crawler.ito --eps 0.4,0.2,0.1 --paths 100000 --time 2 --figure rate.svg`,
-		Args: oneFile,
+  epslim ensemble crawler.ito --eps 0.4,0.2,0.1 --paths 100000 --time 2 --figure rate.svg
+  epslim ensemble crawler.ito --target 1e-3 --budget 60s --checkpoint run
+  epslim ensemble crawler.ito --time 50 --long 10 --histogram 64`,
+		Args: func(cmd *cobra.Command, args []string) error {
+			if schemes && len(args) == 0 {
+				return nil
+			}
+			return oneFile(cmd, args)
+		},
 		RunE: func(cmd *cobra.Command, args []string) error {
-			if err := oneOf("--format", format, "text", "json"); err != nil {
+			if schemes {
+				return a.schemes()
+			}
+			if err := o.check(a); err != nil {
 				return err
+			}
+			if f.Target > 0 && !cmd.Flags().Changed("paths") {
+				f.Paths = "1024" // the size of the first round
 			}
 			run, err := f.settings()
 			if err != nil {
 				return err
 			}
-			if figureFile != "" {
-				if err := figureName(figureFile); err != nil {
-					return err
-				}
-			}
-			if err := a.targets(force, figureFile, csv); err != nil {
-				return err
-			}
-			return a.ensemble(cmd, args[0], run, format, figureFile, csv, force)
+			return a.ensemble(cmd.Context(), args[0], f, run, o)
 		},
 	}
 	f.bind(cmd, "20000")
-	cmd.Flags().StringVar(&format, "format", "text", "text or json")
-	cmd.Flags().StringVar(&figureFile, "figure", "", "draw the convergence in eps to a file that ends in .svg, .png, .pdf or .tex")
-	cmd.Flags().StringVar(&csv, "csv", "", "write means and differences to a table")
-	cmd.Flags().BoolVar(&force, "force", false, "replace files that exist")
+	f.bindMore(cmd)
+	o.bind(cmd)
+	cmd.Flags().BoolVar(&schemes, "schemes", false, "print the fact sheets of the time-stepping schemes")
 	return cmd
 }
 
-func (a *app) ensemble(cmd *cobra.Command, file string, run ensembleRun, format, figureFile, csv string, force bool) error {
+func (a *app) ensemble(ctx context.Context, file string, f ensembleFlags, run ensembleRun, o ensembleOutput) error {
 	sys, err := a.read(file)
 	if err != nil {
 		return err
 	}
-	ctx := cmd.Context()
 	res, err := derivation.Run(ctx, sys, derivation.Options{SkipClaims: true})
 	if err != nil {
 		return a.deriveError(err)
 	}
-	prov := a.provenance(cmd, sys, file)
+	camp := newCampaign(sys, file, a.set, f)
+	prov := camp.provenance(run)
 	if res.Refused != nil {
-		return a.refused(res, prov, format)
+		return a.refused(res, prov, o.format)
 	}
-	c, err := a.runStudy(ctx, res, run)
-	if err != nil && (c == nil || c.Limit == nil) {
+	st, s, law, err := a.study(ctx, res, run)
+	if err != nil {
 		return a.deriveError(err)
 	}
-	interrupted := err
-	for _, r := range append([]*ensemble.Result{c.Limit}, c.Full...) {
-		for _, w := range r.Warnings {
-			a.remark("%s", w)
-		}
-	}
-	if figureFile != "" && len(c.Points) > 0 {
-		files, err := plots.Encode(plots.EpsConvergence(res, c, plots.Meta(prov)), figureFile)
-		if err != nil {
-			return err
-		}
-		for _, x := range files {
-			if err := write(filepath.Join(filepath.Dir(figureFile), x.Name), x.Data, force); err != nil {
-				return err
-			}
-		}
-	}
-	if csv != "" {
-		var b bytes.Buffer
-		if err := c.WriteCSV(&b, prov.OneLine()); err != nil {
-			return err
-		}
-		if err := write(csv, b.Bytes(), force); err != nil {
+	if run.checkpoint != "" {
+		if err := camp.begin(run.checkpoint, run.resume, o.force, len(run.eps)+1); err != nil {
 			return err
 		}
 	}
-	if format == "json" {
-		err = a.printJSON(ensembleJSON(run, c))
-	} else {
-		_, err = a.out.Write(present.StoryText(ensembleStory(res, run, c), present.TextSettings{Colour: colour(a.out)}))
+	c, interrupted := a.simulate(ctx, res, run, st, s)
+	if interrupted != nil && (c == nil || c.Limit == nil) {
+		return a.deriveError(interrupted)
 	}
-	if err != nil {
+	if err := a.tell(res, run, c, law, prov, o); err != nil {
 		return err
+	}
+	if interrupted != nil && run.checkpoint != "" {
+		a.remark("what is finished is kept; go on with --resume")
 	}
 	return interrupted
 }
 
-// runStudy simulates limit and full systems with a progress line.
-func (a *app) runStudy(ctx context.Context, res *derivation.Result, run ensembleRun) (*ensemble.Convergence, error) {
+// provenance names the options that shape the result and nothing else, so
+// that slices, resumed runs and merged ones give the bytes of an unbroken run.
+func (c campaign) provenance(run ensembleRun) present.Provenance {
+	p := present.Provenance{Version: version, SHA256: c.SHA256, Model: c.Model}
+	words := []string{"epslim", "ensemble", quote(c.File)}
+	opt := func(name, value, usual string) {
+		p.Options = append(p.Options, present.Option{Name: name, Value: value})
+		if value != usual {
+			words = append(words, "--"+name, quote(value))
+		}
+	}
+	f := c.Run
+	for _, s := range c.Set {
+		opt("set", s, "")
+	}
+	opt("eps", f.Eps, "")
+	opt("paths", pathsText(run.from, run.to), "")
+	opt("time", float(f.Time), "1")
+	opt("step", float(f.Step), "0")
+	opt("seed", strconv.FormatUint(f.Seed, 10), "")
+	for _, x := range []struct {
+		name, value string
+		set         bool
+	}{
+		{"scheme", f.Scheme, f.Scheme != ""}, {"limit-scheme", f.LimitScheme, f.LimitScheme != ""},
+		{"times", f.Times, f.Times != ""}, {"long", float(f.Long), f.Long >= 0},
+		{"histogram", strconv.Itoa(f.Histogram), f.Histogram > 0},
+		{"target", float(f.Target), f.Target > 0}, {"budget", f.Budget, f.Budget != ""},
+	} {
+		if x.set {
+			opt(x.name, x.value, "")
+		}
+	}
+	if f.Bias {
+		p.Options = append(p.Options, present.Option{Name: "bias", Value: "true"})
+		words = append(words, "--bias")
+	}
+	p.Command = strings.Join(words, " ")
+	return p
+}
+
+func float(x float64) string { return strconv.FormatFloat(x, 'g', -1, 64) }
+
+// study prepares the systems, the settings and, where histograms are wanted,
+// the law they are compared with.
+func (a *app) study(ctx context.Context, res *derivation.Result, run ensembleRun) (*ensemble.Study, ensemble.Settings, *numbers.Law, error) {
+	s := ensemble.Settings{
+		From: run.from, To: run.to, Time: run.time, Times: run.times, Seed: run.seed, Workers: workers(run.workers),
+		Checkpoint: run.checkpoint, CheckpointEvery: run.every, Resume: run.resume,
+	}
 	st, err := numbers.Study(ctx, res, run.eps)
 	if err != nil {
-		return nil, err
+		return nil, s, nil, err
 	}
-	st.FullScheme, st.Bias = run.scheme, run.bias
+	st.FullScheme, st.LimitScheme, st.Bias, st.Target = run.scheme, run.limitScheme, run.bias, run.target
 	if run.step > 0 {
 		st.LimitStep = run.step
 		for range run.eps {
 			st.Steps = append(st.Steps, run.step)
 		}
 	}
+	if run.long >= 0 {
+		s.LongTime = &ensemble.LongTime{Burn: run.long}
+	}
+	if run.histogram == 0 {
+		return st, s, nil, nil
+	}
+	law, err := numbers.StationaryLaw(ctx, res, st.Limit.ObservableNames(), run.histogram, workers(run.workers))
+	if err != nil {
+		return nil, s, nil, fmt.Errorf("--histogram: %w", err)
+	}
+	if s.LongTime != nil {
+		s.LongTime.Histograms = law.Specs
+	} else {
+		s.Histograms = law.Specs
+	}
+	return st, s, law, nil
+}
+
+// runStudy simulates limit and full systems.
+func (a *app) runStudy(ctx context.Context, res *derivation.Result, run ensembleRun) (*ensemble.Convergence, error) {
+	st, s, _, err := a.study(ctx, res, run)
+	if err != nil {
+		return nil, err
+	}
+	return a.simulate(ctx, res, run, st, s)
+}
+
+// simulate runs a study with a progress line.
+func (a *app) simulate(ctx context.Context, res *derivation.Result, run ensembleRun, st *ensemble.Study, s ensemble.Settings) (*ensemble.Convergence, error) {
 	p := a.progress()
 	defer p.clear()
-	return st.Run(ctx, ensemble.Settings{
-		From: run.from, To: run.to, Time: run.time, Seed: run.seed, Workers: workers(run.workers),
-		Progress: func(q ensemble.Progress) {
-			p.show("paths %d of %d, %.3g path-steps a second, %s left", q.Done, q.Total, q.StepsPerSec, q.Remaining.Round(1e9))
-		},
-	})
-}
-
-// ensembleResult is the machine-readable result of the ensemble command.
-type ensembleResult struct {
-	Format      string             `json:"format"`
-	Seed        uint64             `json:"seed"`
-	Observables []ensembleObserved `json:"observables"`
-	Speed       float64            `json:"path_steps_per_second"`
-}
-
-type ensembleObserved struct {
-	Name  string          `json:"name"`
-	Limit ensembleMoments `json:"limit"`
-	Full  []ensembleFull  `json:"full"`
-	Rate  *float64        `json:"rate"`
-}
-
-type ensembleMoments struct {
-	Mean     *float64 `json:"mean"`
-	StdErr   *float64 `json:"stderr"`
-	Variance *float64 `json:"variance"`
-}
-
-type ensembleFull struct {
-	Eps float64 `json:"eps"`
-	ensembleMoments
-}
-
-func momentsOf(r *ensemble.Result, i int) ensembleMoments {
-	m := r.Times[len(r.Times)-1].Moments
-	return ensembleMoments{finite(m.Mean[i]), finite(m.StdErr[i]), finite(m.Variance(i))}
-}
-
-func ensembleJSON(run ensembleRun, c *ensemble.Convergence) ensembleResult {
-	out := ensembleResult{Format: present.Format, Seed: run.seed, Observables: []ensembleObserved{}}
-	for i, n := range c.Limit.Observables {
-		o := ensembleObserved{Name: n, Limit: momentsOf(c.Limit, i), Full: []ensembleFull{}}
-		for k, r := range c.Full {
-			o.Full = append(o.Full, ensembleFull{run.eps[k], momentsOf(r, i)})
-		}
-		if i < len(c.Rates) && c.Rates[i].Status == ensemble.RateOK {
-			o.Rate = finite(c.Rates[i].Exponent)
-		}
-		out.Observables = append(out.Observables, o)
+	st.Progress = func(system int, q ensemble.Progress) {
+		p.show("%s: paths %d of %d, %.3g path-steps a second, %s left", systemName(res, run, system), q.Done, q.Total, q.StepsPerSec, q.Remaining.Round(1e9))
 	}
-	for _, r := range c.Full {
-		out.Speed = math.Max(out.Speed, r.PathStepsPerSecond)
-	}
-	return out
+	return st.Run(ctx, s)
 }
 
-// ensembleStory is the table for readers.
-func ensembleStory(res *derivation.Result, run ensembleRun, c *ensemble.Convergence) *present.Story {
-	st := &present.Story{Title: res.System.Title}
-	cell := func(format string, args ...any) []present.Span {
-		return []present.Span{{Text: fmt.Sprintf(format, args...)}}
+func systemName(res *derivation.Result, run ensembleRun, system int) string {
+	if system == 0 {
+		return "limit"
 	}
-	for i, n := range c.Limit.Observables {
-		t := present.Table{Head: []string{"system", "mean", "standard error", "variance", "difference from the limit"}}
-		row := func(name string, r *ensemble.Result, diff string) {
-			m := r.Times[len(r.Times)-1].Moments
-			t.Rows = append(t.Rows, [][]present.Span{cell("%s", name), cell("%.6g", m.Mean[i]), cell("%.2g", m.StdErr[i]), cell("%.6g", m.Variance(i)), cell("%s", diff)})
+	return fmt.Sprintf("%s = %g", res.System.Small, run.eps[system-1])
+}
+
+// tell writes everything that is wanted of a study.
+func (a *app) tell(res *derivation.Result, run ensembleRun, c *ensemble.Convergence, law *numbers.Law, prov present.Provenance, o ensembleOutput) error {
+	for k, r := range systems(c) {
+		for _, w := range r.Warnings {
+			a.remark("%s: %s", systemName(res, run, k), w)
 		}
-		row("limit", c.Limit, "")
-		for k, r := range c.Full {
-			diff := ""
-			if i < len(c.Points) && k < len(c.Points[i]) {
-				p := c.Points[i][k]
-				diff = fmt.Sprintf("%+.3g ± %.2g (z = %.1f)", p.Value, p.StdErr, p.Value/p.StdErr)
+	}
+	if len(c.Points) > 0 {
+		if err := a.ensembleFiles(res, c, prov, o); err != nil {
+			return err
+		}
+	}
+	if o.format == "json" {
+		return a.printJSON(ensembleJSON(run, c))
+	}
+	st := ensembleStory(res, run, c)
+	st.Sections = append(st.Sections, moreSections(res, run, c, law)...)
+	_, err := a.out.Write(present.StoryText(st, present.TextSettings{Colour: colour(a.out)}))
+	return err
+}
+
+func systems(c *ensemble.Convergence) []*ensemble.Result {
+	return append([]*ensemble.Result{c.Limit}, c.Full...)
+}
+
+func (a *app) ensembleFiles(res *derivation.Result, c *ensemble.Convergence, prov present.Provenance, o ensembleOutput) error {
+	if o.figure != "" {
+		files, err := plots.Encode(plots.EpsConvergence(res, c, plots.Meta(prov)), o.figure)
+		if err != nil {
+			return err
+		}
+		for _, x := range files {
+			if err := write(filepath.Join(filepath.Dir(o.figure), x.Name), x.Data, o.force); err != nil {
+				return err
 			}
-			row(fmt.Sprintf("%s = %g", res.System.Small, run.eps[k]), r, diff)
 		}
-		blocks := []present.Block{t}
-		if i < len(c.Rates) {
-			blocks = append(blocks, present.Para{{Text: "Rate in " + res.System.Small + ": " + c.Rates[i].String() + "."}})
-		}
-		st.Sections = append(st.Sections, present.Section{ID: "observable", Title: fmt.Sprintf("%s at time %g", n, run.time), Blocks: blocks})
 	}
-	t := present.Table{Head: []string{"system", "scheme", "step", "paths", "steps of a path", "blown up"}}
-	for k, r := range append([]*ensemble.Result{c.Limit}, c.Full...) {
-		name := "limit"
-		if k > 0 {
-			name = fmt.Sprintf("%s = %g", res.System.Small, run.eps[k-1])
+	if o.csv != "" {
+		if err := write(o.csv, ensembleCSV(c, prov.OneLine()), o.force); err != nil {
+			return err
 		}
-		t.Rows = append(t.Rows, [][]present.Span{cell("%s", name), cell("%s", r.Scheme), cell("%.3g", r.Step), cell("%d", r.Paths), cell("%d", r.Steps), cell("%d", r.BlowUp)})
 	}
-	blocks := []present.Block{t}
-	for _, r := range append([]*ensemble.Result{c.Limit}, c.Full...) {
-		for k, e := range r.Events {
-			if k == 3 {
-				break
+	if o.npz == "" {
+		return nil
+	}
+	var b bytes.Buffer
+	var arrays []ensemble.Array
+	eps := ensemble.Array{Name: "eps", Shape: []int{len(c.Full)}}
+	for i := range c.Full {
+		eps.Data = append(eps.Data, c.Points[0][i].Eps)
+	}
+	arrays = append(arrays, eps)
+	for k, r := range systems(c) {
+		for _, x := range r.Arrays() {
+			x.Name = fmt.Sprintf("system%d_%s", k, x.Name)
+			arrays = append(arrays, x)
+		}
+	}
+	meta := prov.OneLine() + "\n" + strings.Join(c.Limit.Observables, ",") + "\n" + prov.Model
+	if err := ensemble.WriteNPZ(&b, meta, arrays...); err != nil {
+		return err
+	}
+	return write(o.npz, b.Bytes(), o.force)
+}
+
+// ensembleCSV is one row for each observable, system and time; eps is 0 for
+// the limit. Differences are from the limit at the same time; their errors hold
+// both systems.
+func ensembleCSV(c *ensemble.Convergence, header string) []byte {
+	var b bytes.Buffer
+	fmt.Fprintf(&b, "# %s\n", header)
+	b.WriteString("observable,eps,time,n,mean,stderr,variance,difference,difference_stderr,rate,rate_lower,rate_upper\n")
+	cell := func(x *float64) string {
+		if x == nil {
+			return ""
+		}
+		return float(*x)
+	}
+	for i, name := range c.Limit.Observables {
+		q := c.Rates[i]
+		for k, r := range systems(c) {
+			e := 0.0
+			if k > 0 {
+				e = c.Points[i][k-1].Eps
 			}
-			blocks = append(blocks, present.Para{{Text: "Stopped: " + e.String()}})
+			for t, m := range r.Times {
+				l := c.Limit.Times[t]
+				row := []string{name, float(e), float(m.Time), strconv.FormatUint(m.N, 10), cell(finite(m.Mean[i])), cell(finite(m.StdErr[i])), cell(finite(m.Variance(i)))}
+				if k == 0 {
+					row = append(row, "", "", "", "", "")
+				} else {
+					row = append(row, cell(finite(m.Mean[i]-l.Mean[i])), cell(finite(math.Hypot(m.StdErr[i], l.StdErr[i]))), cell(finite(q.Exponent)), cell(finite(q.Lower)), cell(finite(q.Upper)))
+				}
+				b.WriteString(strings.Join(row, ",") + "\n")
+			}
 		}
 	}
-	st.Sections = append(st.Sections, present.Section{ID: "runs", Title: fmt.Sprintf("Runs (seed %d)", run.seed), Blocks: blocks})
-	return st
+	return b.Bytes()
+}
+
+// schemes prints the fact sheets.
+func (a *app) schemes() error {
+	st := &present.Story{Title: "Time-stepping schemes"}
+	for _, s := range ensemble.Schemes() {
+		strong := "laws only"
+		if s.StrongOrder > 0 {
+			strong = float(s.StrongOrder)
+		}
+		t := present.Table{}
+		for _, r := range [][2]string{
+			{"weak order", float(s.WeakOrder)}, {"strong order", strong}, {"noise", s.Noise}, {"interpretation", s.Interpretation}, {"source", s.Source},
+		} {
+			t.Rows = append(t.Rows, [][]present.Span{{{Text: r[0]}}, {{Text: r[1]}}})
+		}
+		st.Sections = append(st.Sections, present.Section{ID: s.Name, Title: s.Name, Blocks: []present.Block{present.Para{{Text: s.Description}}, t}})
+	}
+	_, err := a.out.Write(present.StoryText(st, present.TextSettings{Colour: colour(a.out)}))
+	return err
 }

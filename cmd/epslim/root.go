@@ -115,7 +115,7 @@ derivation shown and checked.`,
 	})
 	root.PersistentFlags().StringArrayVar(&a.set, "set", nil, "set a parameter (D=1.5) or a function (\"v(x,y)=1+x^2\"); repeatable")
 	root.PersistentFlags().BoolVar(&a.quiet, "quiet", false, "print results only")
-	root.AddCommand(a.deriveCommand(), a.densityCommand(), a.checkCommand(), a.ensembleCommand(), a.reportCommand(), a.newCommand(), a.formatCommand())
+	root.AddCommand(a.deriveCommand(), a.densityCommand(), a.checkCommand(), a.ensembleCommand(), a.mergeCommand(), a.reportCommand(), a.newCommand(), a.formatCommand())
 	root.SetUsageTemplate(usage)
 	root.SetHelpTemplate(help)
 	completions(root)

@@ -11,6 +11,7 @@ import (
 	"strconv"
 	"strings"
 	"testing"
+	"time"
 
 	"github.com/rogpeppe/go-internal/testscript"
 )
@@ -41,6 +42,7 @@ func TestScripts(t *testing.T) {
 			"exits":   exits,
 			"widest":  widest,
 			"largest": largestFile,
+			"killed":  killed,
 		},
 	})
 }
@@ -62,6 +64,35 @@ func exits(ts *testscript.TestScript, neg bool, args []string) {
 	}
 	if got != want {
 		ts.Fatalf("exit status %d, want %d", got, want)
+	}
+}
+
+// killed starts a command, kills it without warning as soon as a file exists,
+// and fails when the command was done before that.
+func killed(ts *testscript.TestScript, _ bool, args []string) {
+	if len(args) < 2 {
+		ts.Fatalf("usage: killed FILE COMMAND...")
+	}
+	name, err := exec.LookPath(args[1])
+	ts.Check(err)
+	cmd := exec.Command(name, args[2:]...)
+	cmd.Dir = ts.MkAbs(".")
+	ts.Check(cmd.Start())
+	ended := make(chan error, 1)
+	go func() { ended <- cmd.Wait() }()
+	for {
+		if _, err := os.Stat(ts.MkAbs(args[0])); err == nil {
+			ts.Check(cmd.Process.Kill())
+			if err := <-ended; err == nil {
+				ts.Fatalf("the command was done before it could be killed")
+			}
+			return
+		}
+		select {
+		case err := <-ended:
+			ts.Fatalf("the command ended (%v) before %s existed", err, args[0])
+		case <-time.After(5 * time.Millisecond):
+		}
 	}
 }
 
