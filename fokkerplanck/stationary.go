@@ -214,23 +214,29 @@ func (d *Diffusion) jump(ctx context.Context, h []algebra.Expr, closed algebra.E
 	if x, err := numeric(closed); err == nil {
 		return x, nil
 	}
-	if d.Number == nil || len(d.Slow) != 1 {
+	if len(d.Slow) != 1 {
 		return 0, errors.New("no numbers")
 	}
+	number := d.Number
+	if number == nil {
+		number = func(_ context.Context, e algebra.Expr, at map[string]float64) (float64, error) {
+			return e.EvalFloat(at)
+		}
+	}
 	v := d.Slow[0]
-	period, err := d.Number(ctx, d.periods()[v.Name], nil)
+	period, err := number(ctx, d.periods()[v.Name], nil)
 	if err != nil {
 		return 0, err
 	}
 	start := 0.0
 	if v.A.Valid() {
-		if start, err = d.Number(ctx, v.A, nil); err != nil {
+		if start, err = number(ctx, v.A, nil); err != nil {
 			return 0, err
 		}
 	}
 	sum := func(n int) (s, size float64, err error) {
 		for k := 0; k < n; k++ {
-			y, err := d.Number(ctx, h[0], map[string]float64{v.Name: start + period*(float64(k)+0.5)/float64(n)})
+			y, err := number(ctx, h[0], map[string]float64{v.Name: start + period*(float64(k)+0.5)/float64(n)})
 			if err != nil {
 				return 0, 0, err
 			}
@@ -266,7 +272,11 @@ func (d *Diffusion) integrate(h algebra.Expr) (algebra.Expr, string, error) {
 	r := d.Ring
 	v := d.Slow[0]
 	u, rest := r.Int(0), r.Int(0)
-	for _, t := range h.SplitBy(v.Name) {
+	parts, err := h.SplitReal(v.Name)
+	if err != nil {
+		return u, "", err
+	}
+	for _, t := range parts {
 		g := t.Coef.Mul(t.Fn)
 		w, err := r.Potential([]algebra.Expr{g}, []string{v.Name})
 		if err != nil {

@@ -457,14 +457,23 @@ func (r *Ring) Integral(f Expr, dummy string, lo, hi Expr) Expr {
 		return r.zero
 	}
 	out := r.zero
-	// Take factors that do not contain the dummy out of each term.
-	for _, g := range f.splitBy(func(k *kernel) bool { return k.dependsOn(dummy) }) {
-		if g.fn.IsOne() {
-			out = out.Add(g.coef.Mul(hi.Sub(lo)))
-			continue
+	add := func(coef, fn Expr) {
+		if fn.IsOne() {
+			out = out.Add(coef.Mul(hi.Sub(lo)))
+			return
 		}
-		k := r.intern(&kernel{kind: kindIntegral, name: dummy, args: []Expr{g.fn, lo, hi}})
-		out = out.Add(g.coef.Mul(r.kernelExpr(k)))
+		k := r.intern(&kernel{kind: kindIntegral, name: dummy, args: []Expr{fn, lo, hi}})
+		out = out.Add(coef.Mul(r.kernelExpr(k)))
+	}
+	// Sines and cosines stay real.
+	if parts, err := f.SplitReal(dummy); err == nil {
+		for _, p := range parts {
+			add(p.Coef, p.Fn)
+		}
+		return out
+	}
+	for _, g := range f.splitBy(func(k *kernel) bool { return k.dependsOn(dummy) }) {
+		add(g.coef, g.fn)
 	}
 	return out
 }
