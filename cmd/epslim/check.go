@@ -24,7 +24,7 @@ const (
 
 // check is one row of the table of verdicts.
 type check struct {
-	Kind    string `json:"kind"` // "certificate", "claim", "grid", "ensemble"
+	Kind    string `json:"kind"` // "certificate", "claim", "grid", "full", "ensemble"
 	What    string `json:"what"`
 	Verdict string `json:"verdict"`
 	Detail  string `json:"detail"`
@@ -45,7 +45,7 @@ func (a *app) checkCommand() *cobra.Command {
 		Short: "Certificates, claims, grid and ensembles: a table of verdicts",
 		Long: `Put every result to the test: the exact certificates of the derivation, the
 claims of the model, the stationary density on two grids against its closed form,
-and ensembles of the full system at decreasing eps against the limit.
+the slow marginal of the full Fokker-Planck equation at decreasing eps, and ensembles of the full system at decreasing eps against the limit.
 The exit status is 1 when something fails.`,
 		Example: `  epslim check crawler.ito
   epslim check crawler.ito --without ensemble --format json`,
@@ -54,7 +54,7 @@ The exit status is 1 when something fails.`,
 	}
 	cmd.Flags().StringVar(&f.format, "format", "text", "text or json")
 	cmd.Flags().StringVar(&f.cells, "cells", "", "cells along each axis of the grid")
-	cmd.Flags().StringSliceVar(&f.without, "without", nil, "leave out: grid, ensemble")
+	cmd.Flags().StringSliceVar(&f.without, "without", nil, "leave out: grid, full, ensemble")
 	f.run.bind(cmd, "8192")
 	return cmd
 }
@@ -65,7 +65,7 @@ func (a *app) check(cmd *cobra.Command, file string, f checkFlags) error {
 	}
 	skip := map[string]bool{}
 	for _, w := range f.without {
-		if err := oneOf("--without", w, "grid", "ensemble"); err != nil {
+		if err := oneOf("--without", w, "grid", "full", "ensemble"); err != nil {
 			return err
 		}
 		skip[w] = true
@@ -93,6 +93,9 @@ func (a *app) check(cmd *cobra.Command, file string, f checkFlags) error {
 	rows := algebraChecks(res)
 	if !skip["grid"] && ctx.Err() == nil {
 		rows = append(rows, a.gridCheck(ctx, res, cells, run.workers)...)
+	}
+	if !skip["full"] && ctx.Err() == nil {
+		rows = append(rows, a.fullCheck(ctx, res, run)...)
 	}
 	if !skip["ensemble"] && ctx.Err() == nil {
 		rows = append(rows, a.ensembleCheck(ctx, res, run)...)
@@ -162,6 +165,35 @@ func gridVerdict(d *numbers.Density) check {
 		row.Verdict, row.fails = failed, true
 	}
 	return row
+}
+
+// fullCheck compares the slow marginal of the full Fokker-Planck equation with
+// the limit's density.
+func (a *app) fullCheck(ctx context.Context, res *derivation.Result, run ensembleRun) []check {
+	row := check{Kind: "full", What: "slow marginal at finite " + res.System.Small, Verdict: skipped}
+	f, err := numbers.SolveFull(ctx, res, run.eps, workers(run.workers))
+	switch {
+	case err != nil && ctx.Err() != nil:
+		row.Detail = "interrupted"
+		return []check{row}
+	case err != nil && numbers.NoDensity(err) != "":
+		row.Detail = numbers.NoDensity(err)
+		return []check{row}
+	case err != nil:
+		row.Detail = short(err)
+		return []check{row}
+	}
+	v, why := f.Verdict()
+	row.Detail = why
+	switch v {
+	case numbers.FullAgrees:
+		row.Verdict = passed
+	case numbers.FullOpen:
+		row.Verdict = derivation.Undecided
+	case numbers.FullDiffers:
+		row.Verdict, row.fails = failed, true
+	}
+	return []check{row}
 }
 
 // ensembleCheck compares means of the full system with those of the limit.

@@ -83,7 +83,7 @@ func completions(root *cobra.Command) {
 			_ = c.RegisterFlagCompletionFunc("at", completeAt)
 		}
 		if c.Flags().Lookup("without") != nil {
-			_ = c.RegisterFlagCompletionFunc("without", fixed("grid", "ensemble"))
+			_ = c.RegisterFlagCompletionFunc("without", fixed("grid", "full", "ensemble"))
 		}
 		for _, name := range []string{"scheme", "limit-scheme"} {
 			if c.Flags().Lookup(name) != nil {
