@@ -21,9 +21,9 @@ import (
 )
 
 type densityFlags struct {
-	format, cells, figure, csv string
-	force                      bool
-	workers                    int
+	format, cells, figure, csv, npz string
+	force, exit                     bool
+	workers, decay                  int
 }
 
 func (a *app) densityCommand() *cobra.Command {
@@ -34,7 +34,8 @@ func (a *app) densityCommand() *cobra.Command {
 		Long: `Solve the stationary Fokker-Planck equation of the limit by finite volumes, and
 compare with the closed form on two grids where there is one.`,
 		Example: `  epslim density crawler.ito
-  epslim density crawler.ito --cells 256 --figure density.svg --csv density.csv`,
+  epslim density crawler.ito --cells 256 --figure density.svg --csv density.csv
+  epslim density crawler.ito --decay 4`,
 		Args: oneFile,
 		RunE: func(cmd *cobra.Command, args []string) error { return a.density(cmd, args[0], f) },
 	}
@@ -42,6 +43,9 @@ compare with the closed form on two grids where there is one.`,
 	cmd.Flags().StringVar(&f.cells, "cells", "", "cells along each axis, such as 256 or 256,128 (default by dimension: 1024, 128, 40)")
 	cmd.Flags().StringVar(&f.figure, "figure", "", "draw the density to a file that ends in .svg, .png, .pdf or .tex")
 	cmd.Flags().StringVar(&f.csv, "csv", "", "write the density and the current to a table")
+	cmd.Flags().StringVar(&f.npz, "npz", "", "write the density and the current as NumPy arrays")
+	cmd.Flags().IntVar(&f.decay, "decay", 0, "print this many of the slowest decay rates, the spectral gap first")
+	cmd.Flags().BoolVar(&f.exit, "exit", false, "print the mean exit time through absorbing sides instead of the stationary density")
 	cmd.Flags().BoolVar(&f.force, "force", false, "replace files that exist")
 	cmd.Flags().IntVar(&f.workers, "workers", 0, "goroutines (0: one a processor); results do not depend on it")
 	return cmd
@@ -55,13 +59,16 @@ func (a *app) density(cmd *cobra.Command, file string, f densityFlags) error {
 	if err != nil {
 		return err
 	}
-	if err := a.targets(f.force, f.figure, f.csv); err != nil {
+	if err := a.targets(f.force, f.figure, f.csv, f.npz); err != nil {
 		return err
 	}
 	if f.figure != "" {
 		if err := figureName(f.figure); err != nil {
 			return err
 		}
+	}
+	if err := f.check(); err != nil {
+		return err
 	}
 	sys, err := a.read(file)
 	if err != nil {
@@ -75,6 +82,13 @@ func (a *app) density(cmd *cobra.Command, file string, f densityFlags) error {
 	if res.Refused != nil {
 		return a.refused(res, prov, f.format)
 	}
+	relax, err := a.relax(cmd.Context(), res, cells, f)
+	if err != nil {
+		return a.densityError(err)
+	}
+	if f.exit {
+		return a.tellRelaxation(res, relax, f.format)
+	}
 	d, err := a.solveDensity(cmd.Context(), res, cells, f.workers)
 	if err != nil {
 		return a.densityError(err)
@@ -86,10 +100,12 @@ func (a *app) density(cmd *cobra.Command, file string, f densityFlags) error {
 		return err
 	}
 	if f.format == "json" {
-		if err := a.printJSON(densityJSON(res, d)); err != nil {
+		out := densityJSON(res, d)
+		out.Rates = decayJSON(relax)
+		if err := a.printJSON(out); err != nil {
 			return err
 		}
-	} else if _, err := a.out.Write(present.StoryText(densityStory(res, d), present.TextSettings{Colour: colour(a.out)})); err != nil {
+	} else if _, err := a.out.Write(present.StoryText(withRelaxation(densityStory(res, d), relax), present.TextSettings{Colour: colour(a.out)})); err != nil {
 		return err
 	}
 	return densityOutcome(cmd.Context(), d)
@@ -208,9 +224,19 @@ func (a *app) densityFiles(res *derivation.Result, d *numbers.Density, prov pres
 		}
 	}
 	if f.csv != "" {
-		return write(f.csv, plots.DensityCSV(d.Result, d.Difference, d.Current, prov.OneLine()), f.force)
+		if err := write(f.csv, plots.DensityCSV(d.Result, d.Difference, d.Current, prov.OneLine()), f.force); err != nil {
+			return err
+		}
 	}
-	return nil
+	if f.npz == "" {
+		return nil
+	}
+	var b bytes.Buffer
+	meta := map[string]string{"provenance": prov.OneLine(), "model": prov.Model}
+	if err := density.WriteNPZ(&b, meta, d.Result, d.Result.Columns(d.Current, d.Difference)); err != nil {
+		return err
+	}
+	return write(f.npz, b.Bytes(), f.force)
 }
 
 // printJSON writes an object, indented.
@@ -251,6 +277,8 @@ type densityResult struct {
 	Entropy    *float64 `json:"entropy_production"`
 	Seconds    float64  `json:"seconds"`
 	Iterations int      `json:"iterations"`
+
+	Rates []decayRate `json:"decay_rates,omitempty"`
 }
 
 func densityJSON(res *derivation.Result, d *numbers.Density) densityResult {
