@@ -37,7 +37,7 @@ type Form struct {
 	text  string
 }
 
-func (f *Form) isOne() bool  { return f.Op == FormNumber && f.Num.Cmp(big.NewRat(1, 1)) == 0 }
+func (f *Form) isOne() bool { return f.Op == FormNumber && f.Num.Cmp(big.NewRat(1, 1)) == 0 }
 
 func (f *Form) isZero() bool { return f.Op == FormNumber && f.Num.Sign() == 0 }
 
