@@ -42,7 +42,7 @@ as one self-contained HTML page, or as a LaTeX article.`,
 	cmd.Flags().StringVar(&f.out, "out", "", "folder to write (default: the name of the model and -report)")
 	cmd.Flags().StringVar(&f.format, "format", "html", "html or article")
 	cmd.Flags().StringVar(&f.cells, "cells", "", "cells along each axis of the grid")
-	cmd.Flags().StringSliceVar(&f.without, "without", nil, "leave out: grid, ensemble")
+	cmd.Flags().StringSliceVar(&f.without, "without", nil, "leave out: grid, full, ensemble")
 	cmd.Flags().BoolVar(&f.force, "force", false, "replace files in a folder that exists")
 	f.run.bind(cmd, "20000")
 	return cmd
@@ -65,7 +65,7 @@ func (a *app) report(cmd *cobra.Command, file string, f reportFlags) error {
 	}
 	skip := map[string]bool{}
 	for _, w := range f.without {
-		if err := oneOf("--without", w, "grid", "ensemble"); err != nil {
+		if err := oneOf("--without", w, "grid", "full", "ensemble"); err != nil {
 			return err
 		}
 		skip[w] = true
@@ -139,6 +139,9 @@ func (a *app) find(ctx context.Context, fs *findings, cells []int, skip map[stri
 			fs.grid = d
 			fs.checks = append(fs.checks, gridVerdict(d))
 		}
+	}
+	if !skip["full"] && ctx.Err() == nil {
+		fs.checks = append(fs.checks, a.fullCheck(ctx, fs.res, fs.run)...)
 	}
 	if !skip["ensemble"] && ctx.Err() == nil {
 		run, left, err := affordable(fs.res, fs.run)
