@@ -141,11 +141,13 @@ func (a *app) merge(ctx context.Context, files []string, o ensembleOutput) error
 		return err
 	}
 	done := parts[0].Tally.Done
-	if len(done) == 0 {
-		return fmt.Errorf("no paths are finished")
-	}
 	for k := 1; k < len(done); k++ {
 		a.remark("the paths %d to %d are missing", done[k-1].To, done[k].From-1)
+	}
+	for k, p := range parts[1:] {
+		if p.Tally.Paths() < parts[0].Tally.Paths() && run.target == nil {
+			a.remark("eps = %g has %d paths only; --resume finishes its runs", run.eps[k], p.Tally.Paths())
+		}
 	}
 	run.from, run.to = done[0].From, done[len(done)-1].To
 	if run.bias {
@@ -192,11 +194,8 @@ func mergeParts(files []string, systems int) ([]*ensemble.Part, error) {
 		if err != nil {
 			return nil, err
 		}
-		if k > 0 && fmt.Sprint(p.Tally.Done) != fmt.Sprint(out[0].Tally.Done) && len(out) > 0 {
-			// A run that was interrupted has fewer paths of the later systems.
-			if p.Tally.Paths() == 0 {
-				return nil, fmt.Errorf("%s has no finished paths; finish the run with --resume", partName(files[0], k))
-			}
+		if p.Tally.Paths() == 0 {
+			return nil, fmt.Errorf("%s has no finished paths; finish the run with --resume", partName(files[0], k))
 		}
 		out = append(out, p)
 	}
