@@ -32,6 +32,7 @@ type fnNode struct {
 	image    []link // L0 fn, once computed
 	expanded bool
 	sol      *Solution
+	mean     algebra.Expr // the average alone, if it was asked for
 	err      error
 }
 
@@ -64,13 +65,107 @@ func (c *Closure) Solve(ctx context.Context, f algebra.Expr) (Solution, error) {
 	return out, err
 }
 
-// Mean implements Route.
+// Mean implements Route. Without ends the averages follow from the closed set
+// alone: the stationary law gives <L0 b> = 0 for each of its functions.
 func (c *Closure) Mean(ctx context.Context, f algebra.Expr) (algebra.Expr, error) {
 	out := c.p.Ring.Int(0)
+	if !c.hasEnds() {
+		err := c.p.Ring.WithBudget(solveBudget, func() error {
+			for _, l := range c.split(f) {
+				m, err := c.basisMean(ctx, l.to)
+				if err != nil {
+					return err
+				}
+				out = out.Add(l.coef.Mul(m))
+			}
+			return nil
+		})
+		if err == nil {
+			return out, nil
+		}
+		out = c.p.Ring.Int(0)
+	}
 	err := c.eachPart(ctx, f, func(coef algebra.Expr, s *Solution) {
 		out = out.Add(coef.Mul(s.Mean))
 	})
 	return out, err
+}
+
+// basisMean is the average of one basis function, block by block, without
+// correctors: M <b> + N <d> = 0.
+func (c *Closure) basisMean(ctx context.Context, n *fnNode) (algebra.Expr, error) {
+	if n.sol != nil {
+		return n.sol.Mean, nil
+	}
+	if n.mean.Valid() {
+		return n.mean, nil
+	}
+	if fs := n.fn.Functions(); len(fs) > 0 {
+		return n.mean, doesNotApply("%s is known by name only", fs[0])
+	}
+	set, err := c.close(ctx, []*fnNode{n})
+	if err != nil {
+		return n.mean, err
+	}
+	for _, block := range components(set) {
+		if err := c.meanBlock(block); err != nil {
+			return n.mean, err
+		}
+	}
+	return n.mean, nil
+}
+
+func (c *Closure) meanBlock(block []*fnNode) error {
+	r := c.p.Ring
+	if len(block) == 1 && block[0].fn.IsOne() {
+		block[0].mean = r.Int(1)
+		return nil
+	}
+	at := map[*fnNode]int{}
+	done := true
+	for i, n := range block {
+		at[n] = i
+		if n.sol != nil {
+			n.mean = n.sol.Mean
+		}
+		done = done && n.mean.Valid()
+	}
+	if done {
+		return nil
+	}
+	k := len(block)
+	m := make([][]algebra.Expr, k)
+	rhs := make([]algebra.Expr, k)
+	for i, n := range block {
+		m[i] = make([]algebra.Expr, k)
+		for j := range m[i] {
+			m[i][j] = r.Int(0)
+		}
+		rhs[i] = r.Int(0)
+		for _, l := range n.image {
+			if j, ok := at[l.to]; ok {
+				m[i][j] = m[i][j].Add(l.coef)
+			} else {
+				rhs[i] = rhs[i].Sub(l.coef.Mul(l.to.mean))
+			}
+		}
+	}
+	sol, err := algebra.SolveLinear(m, rhs)
+	if err != nil || len(sol.Free) > 0 {
+		return errSingular
+	}
+	for i, n := range block {
+		n.mean = sol.X[i]
+		// Put back: the average of L0 b must vanish.
+		sum := rhs[i].Neg()
+		for j := range block {
+			sum = sum.Add(m[i][j].Mul(sol.X[j]))
+		}
+		if !sum.IsZero() {
+			return fmt.Errorf("internal error: the average of L0 %s is %s", n.fn, sum)
+		}
+	}
+	return nil
 }
 
 // eachPart solves for every function of the fast variables in f.

@@ -4,10 +4,12 @@ import (
 	"epslim/generator/algebra"
 )
 
-// hasEnds reports whether some variable has walls or a seam where the
+func (c *Closure) hasEnds() bool { return c.p.HasEnds() }
+
+// HasEnds reports whether some variable has walls or a seam where the
 // corrector must satisfy a condition of its own.
-func (c *Closure) hasEnds() bool {
-	for _, v := range c.p.Fast {
+func (p *Process) HasEnds() bool {
+	for _, v := range p.Fast {
 		switch v.Kind {
 		case Reflecting, Circle, Periodic:
 			return true

@@ -306,6 +306,10 @@ func (res *Result) certify(ctx context.Context) {
 				What:   fmt.Sprintf("corrector at order %s^(%s)", res.System.Small, o.Power.RatString()),
 				Status: Exact, Detail: "L0 Phi + f - <f> = 0 identically",
 			}
+			if !p.HasEnds() {
+				c.What = fmt.Sprintf("average at order %s^(%s)", res.System.Small, o.Power.RatString())
+				c.Detail = "<L0 f> = 0 for every function f that was averaged"
+			}
 			if res.Route.IsNumerical(o.Sum) {
 				c.Status = Numerical
 				c.Detail = "the named correctors are defined by their fast problems, solved by the " + res.Route.Name() + " route"
